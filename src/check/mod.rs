@@ -1,0 +1,1 @@
+//! From syntax to model.

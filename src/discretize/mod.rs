@@ -1,0 +1,1 @@
+//! From model to scheme.

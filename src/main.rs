@@ -1,0 +1,5 @@
+//! The program's entry: the exit status and nothing else.
+
+fn main() -> std::process::ExitCode {
+    rimstone::cli::main()
+}

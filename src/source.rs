@@ -1,0 +1,1 @@
+//! Source files, spans, lines and columns.
