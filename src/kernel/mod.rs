@@ -32,13 +32,15 @@
 //! A **stage** is a list of passes at one time. A **step** is the list of stages, then the swaps of `rotation`.
 
 pub mod build;
+pub mod operator;
 pub mod validate;
 
 pub use build::Builder;
+pub use operator::{ClosureRow, ConstantOperator, LineOperator, Parity, VaryingEntry, VaryingOperator};
 
 use crate::exact::Rational;
 use crate::model::{Function, Relation};
-use crate::scheme::LineOperator;
+
 
 macro_rules! index {
     ($($(#[$doc:meta])* $name:ident;)*) => {$(
