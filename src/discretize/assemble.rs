@@ -9,7 +9,7 @@ use super::split::split_first;
 use super::NotAvailable;
 use crate::exact::Rational;
 use crate::model::calculus::{DerivativeTerm, dependence, derivative_terms};
-use crate::model::expression::DerivativeKind;
+use crate::model::expression::{Derivative, DerivativeKind};
 use crate::model::{AxisId, Equation, Expression, FieldId, Model};
 use crate::scheme::{Application, OperatorRule, Scheme, SchemeAxis, SchemeOperator};
 
@@ -21,6 +21,10 @@ pub fn assemble(model: &Model) -> Result<Scheme, Vec<NotAvailable>> {
     let mut rates = Vec::new();
     for equation in &model.equations {
         rates.push(assembly.rate(equation)?);
+    }
+    let mut outputs = Vec::new();
+    for output in &model.outputs {
+        outputs.push(assembly.replace(&observed(&output.value))?);
     }
     let corrections = face::corrections(model, &plans);
     let injections = face::injections(model);
@@ -36,7 +40,7 @@ pub fn assemble(model: &Model) -> Result<Scheme, Vec<NotAvailable>> {
             solution_order: plan.solution_order,
         })
         .collect();
-    Ok(Scheme { axes, operators, applications, rates, corrections, injections, choices })
+    Ok(Scheme { axes, operators, applications, rates, outputs, corrections, injections, choices })
 }
 
 /// Operators and applications found so far.
@@ -195,6 +199,22 @@ impl Assembly<'_> {
             .unwrap_or(1)
             .max(if self.model.axes[axis.0].periodic { 1 } else { 2 })
     }
+}
+
+/// Second derivatives as two first derivatives: what is observed has no condition to replace its boundary flux with, and the
+/// first derivative is consistent at every node.
+fn observed(value: &Expression) -> Expression {
+    value.rewrite(&mut |node| {
+        let Expression::Derivative(derivative) = &node else { return node };
+        let DerivativeKind::Second { axis, coefficient, of } = &derivative.kind else { return node };
+        let first = |of: Expression| {
+            Expression::Derivative(Box::new(Derivative {
+                kind: DerivativeKind::First { axis: *axis, of },
+                order: derivative.order,
+            }))
+        };
+        first(coefficient.clone().times(first(of.clone())))
+    })
 }
 
 /// 1/spacingᵈ.

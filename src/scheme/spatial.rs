@@ -16,6 +16,8 @@ pub struct Scheme {
     pub applications: Vec<Application>,
     /// The explicit right side for each field, with `Applied` in the place of derivatives.
     pub rates: Vec<Expression>,
+    /// The expression of each output, likewise.
+    pub outputs: Vec<Expression>,
     /// In the order in which they act: additions first, then settings of values.
     pub corrections: Vec<Correction>,
     pub injections: Vec<Injection>,
