@@ -40,8 +40,8 @@ pub enum StencilFault {
     UnequalLengths { nodes: usize, weights: usize },
     /// Nodes are not strictly increasing at this index.
     NotIncreasing { index: usize },
-    /// Σ wⱼ (xⱼ − at)ᵐ is not what the derivative and the claimed order need at this degree m.
-    Moment { degree: usize, found: Rational, needed: Rational },
+    /// Σ wⱼ (xⱼ − at)ᵐ at this degree m is neither m! for the derivative itself nor nought below the order.
+    Moment { degree: usize, found: Box<Rational> },
 }
 
 impl Stencil {
@@ -75,7 +75,7 @@ impl Stencil {
             let needed = if degree == derivative { factorial(degree) } else { Rational::zero() };
             if found != needed {
                 if degree < derivative + claimed_order.max(1) {
-                    return Err(StencilFault::Moment { degree, found, needed });
+                    return Err(StencilFault::Moment { degree, found: Box::new(found) });
                 }
                 first_failing = Some((degree, found));
                 break;
@@ -159,9 +159,9 @@ impl fmt::Display for StencilFault {
             StencilFault::NotIncreasing { index } => {
                 write!(formatter, "node {} is not to the right of the one before it", index + 1)
             }
-            StencilFault::Moment { degree, found, needed } => write!(
+            StencilFault::Moment { degree, found } => write!(
                 formatter,
-                "the weights applied to the monomial of degree {degree} give {found}, but {needed} is needed"
+                "the weights applied to the monomial of degree {degree} give {found}, which the claimed order rules out"
             ),
         }
     }
