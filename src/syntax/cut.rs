@@ -256,7 +256,9 @@ impl<'a> Cutter<'a> {
 /// Whether a line holds one word and nothing else but perhaps a colon.
 fn is_lone_word(code: &str) -> bool {
     let word = code.trim_end_matches(':').trim_end();
-    !word.is_empty() && word.chars().all(|letter| letter.is_alphanumeric() || letter == '_' || letter == '-')
+    !word.is_empty()
+        && word != "model"
+        && word.chars().all(|letter| letter.is_alphanumeric() || letter == '_' || letter == '-')
 }
 
 /// Sections by the words that others would use.
@@ -301,7 +303,8 @@ mod tests {
 
     #[test]
     fn statements_go_on_where_they_must() {
-        let (statements, faults) = cut_of("equations\n a = b +  # more\n\n c\n d = e\n  - f\n g = h(1,\n 2)\n i =\n j");
+        let (statements, faults) =
+            cut_of("equations\n a = b +  # more\n\n c\n d = e\n  - f\n g = h(1,\n 2)\n i =\n j");
         assert_eq!(statements.len(), 4, "{statements:?}");
         assert!(faults.is_empty());
     }
@@ -311,7 +314,8 @@ mod tests {
         let (statements, faults) = cut_of("constants\n  a = (1\n  b = 2)\n  c = 3\nfields\n  u on x");
         assert_eq!(statements, ["a = (1\n  b = 2)", "c = 3", "u on x"]);
         assert!(faults.is_empty());
-        let (statements, faults) = cut_of("axes\n  x: 0 to (1, 9 nodes\n  y: 0 to 1, 9 nodes\nfields\n  u on x");
+        let (statements, faults) =
+            cut_of("axes\n  x: 0 to (1, 9 nodes\n  y: 0 to 1, 9 nodes\nfields\n  u on x");
         assert_eq!(statements, ["x: 0 to (1, 9 nodes", "y: 0 to 1, 9 nodes", "u on x"]);
         assert!(faults.len() == 1 && faults.has(codes::OPEN_BRACKET));
     }

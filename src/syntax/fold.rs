@@ -9,6 +9,7 @@ use unicode_normalization::char::canonical_combining_class;
 use unicode_normalization::{IsNormalized, UnicodeNormalization, is_nfc_quick};
 
 use super::control;
+use super::names::raised_digit;
 use crate::diagnostic::{Diagnostic, Diagnostics, codes, safe::safe};
 use crate::source::Span;
 
@@ -96,7 +97,11 @@ pub(super) fn fold(text: &str, diagnostics: &mut Diagnostics) -> Folded {
         at: 0,
         mode: Mode::Formula,
         text_start: 0,
-        folded: Folded { text: String::with_capacity(text.len()), map: OffsetMap::default(), refused: Vec::new() },
+        folded: Folded {
+            text: String::with_capacity(text.len()),
+            map: OffsetMap::default(),
+            refused: Vec::new(),
+        },
         diagnostics,
     };
     if text.starts_with('\u{feff}') {
@@ -143,7 +148,11 @@ impl Folder<'_> {
         if letter == '"' {
             self.mode = Mode::Formula;
         } else if letter.is_control() && letter != '\t' {
-            self.refuse(letter.len_utf8(), &format!("the control character `{}` in a text", safe(&letter.to_string())), "remove it");
+            self.refuse(
+                letter.len_utf8(),
+                &format!("the control character `{}` in a text", safe(&letter.to_string())),
+                "remove it",
+            );
         }
         self.copy(letter);
     }
@@ -157,7 +166,11 @@ impl Folder<'_> {
             }
             '\\' => return self.control_word(),
             '_' if self.braced_subscript() => return,
+            '^' if self.order_after_sign() => return,
             _ => {}
+        }
+        if !self.normal && self.compose(letter) {
+            return;
         }
         if letter.is_ascii() {
             match letter {
@@ -167,7 +180,6 @@ impl Folder<'_> {
             }
         } else if let Some(plain) = look_alike(letter) {
             self.replace(letter.len_utf8(), plain);
-        } else if !self.normal && self.compose(letter) {
         } else if is_allowed(letter) {
             self.copy(letter);
         } else {
@@ -193,7 +205,9 @@ impl Folder<'_> {
     /// `_{…}` after a name: the braces of TeX.
     fn braced_subscript(&mut self) -> bool {
         let rest = &self.text[self.at..];
-        let Some(inner) = rest.strip_prefix("_{").and_then(|inner| inner.split_once('}')).map(|(inner, _)| inner) else {
+        let Some(inner) =
+            rest.strip_prefix("_{").and_then(|inner| inner.split_once('}')).map(|(inner, _)| inner)
+        else {
             return false;
         };
         if inner.is_empty() || !inner.chars().all(|letter| is_xid_continue(letter) && is_allowed(letter)) {
@@ -204,6 +218,18 @@ impl Folder<'_> {
         true
     }
 
+    /// `∂^2` and `∇^2`: the order stands where TeX puts it, and a name may follow without a space.
+    fn order_after_sign(&mut self) -> bool {
+        let rest = &self.text[self.at + 1..];
+        let digits = rest.bytes().take_while(u8::is_ascii_digit).count();
+        if digits == 0 || digits > 3 || !self.folded.text.ends_with(['∂', '∇']) {
+            return false;
+        }
+        let order = rest[..digits].chars().map(raised_digit).collect::<String>();
+        self.replace(digits + 1, &order);
+        true
+    }
+
     fn control_word(&mut self) {
         let rest = &self.text[self.at + 1..];
         let length = rest.bytes().take_while(u8::is_ascii_alphabetic).count();
@@ -211,13 +237,15 @@ impl Folder<'_> {
         match control::symbol(word) {
             Some(symbol) => {
                 // TeX would multiply `k\rho`; here a name must not swallow the control word.
-                let joins = self.folded.text.chars().next_back().is_some_and(|last| is_xid_continue(last) && last != '_' && last != '·' && last != 'Δ')
-                    && symbol.starts_with(is_xid_start);
+                let joins =
+                    self.folded.text.chars().next_back().is_some_and(|last| {
+                        is_xid_continue(last) && last != '_' && last != '·' && last != 'Δ'
+                    }) && symbol.starts_with(is_xid_start);
                 if joins {
                     self.replace(0, " ");
                 }
-                self.replace(length + 1, symbol);
-                // In `\sin x` and `\rho c` the space ends the word; two symbols side by side stay apart.
+                let blanks = self.swallowed_blanks(symbol, length + 1);
+                self.replace(length + 1 + blanks, symbol);
             }
             None => {
                 let span = Span::new(self.at as u32, (self.at + 1 + length) as u32);
@@ -233,17 +261,35 @@ impl Folder<'_> {
         }
     }
 
+    /// Blanks after a control word that end it only, as in TeX: in units, which have no space in them, `m\cdot K`
+    /// and `5 \mu m` would fall apart.
+    fn swallowed_blanks(&self, symbol: &str, length: usize) -> usize {
+        let before = self.folded.text.as_bytes();
+        let joins = match symbol {
+            "·" => before.last().is_some_and(|last| *last != b' '),
+            "μ" => matches!(before, [.., digit, b' '] if digit.is_ascii_digit()),
+            _ => false,
+        };
+        let rest = &self.text[self.at + length..];
+        if joins { rest.len() - rest.trim_start_matches(' ').len() } else { 0 }
+    }
+
     fn refuse_and_copy(&mut self, letter: char) {
         let (what, remedy) = named(letter);
         let what = if what.is_empty() { "this character".to_string() } else { what.to_string() };
-        self.refuse(letter.len_utf8(), &format!("`{}`, {what}, has no place here", safe(&letter.to_string())), remedy);
+        self.refuse(
+            letter.len_utf8(),
+            &format!("`{}`, {what}, has no place here", safe(&letter.to_string())),
+            remedy,
+        );
         self.replace(letter.len_utf8(), "?");
     }
 
     fn refuse(&mut self, length: usize, message: &str, remedy: &str) {
         let span = Span::new(self.at as u32, (self.at + length) as u32);
         self.folded.refused.push(self.folded.text.len() as u32);
-        let code = if matches!(self.text[self.at..].chars().next(), Some('\'' | '′' | '’' | '‘' | '´')) {
+        let code = if matches!(self.text[self.at..].chars().next(), Some('\'' | '′' | '’' | '‘' | '´'))
+        {
             codes::PRIME
         } else {
             codes::STRAY_CHARACTER
@@ -319,13 +365,15 @@ fn named(letter: char) -> (&'static str, &'static str) {
         '÷' | '∕' | '⁄' | '／' => ("a division sign", "write `/`"),
         '∗' | '•' | '∘' => ("a sign that looks like a multiplication", "write `*`"),
         '“' | '”' | '„' | '«' | '»' => ("a typographic quote", "write `\"`"),
-        '\'' | '′' | '’' | '‘' | '´' => {
-            ("a prime", "a derivative is written `∂u/∂x` or `∂u/∂t`; a second variable needs a name of its own")
-        }
+        '\'' | '′' | '’' | '‘' | '´' => (
+            "a prime",
+            "a derivative is written `∂u/∂x` or `∂u/∂t`; a second variable needs a name of its own",
+        ),
         '[' | ']' | '{' | '}' => ("a bracket of another kind", "use round brackets `( )`"),
-        '!' | '≠' | '&' | '|' | '∧' | '∨' => {
-            ("a logical sign", "comparisons are `<`, `≤`, `>`, `≥`; several are joined by further cases or by `and`")
-        }
+        '!' | '≠' | '&' | '|' | '∧' | '∨' => (
+            "a logical sign",
+            "comparisons are `<`, `≤`, `>`, `≥`; several are joined by further cases or by `and`",
+        ),
         '%' | '‰' => ("a percent sign", "write the number, `0.05` for 5 %"),
         '$' => ("a dollar sign", "formulas need no `$`"),
         '~' | '≈' | '≡' => ("a sign of likeness", "an equality is written `=`"),
@@ -334,7 +382,9 @@ fn named(letter: char) -> (&'static str, &'static str) {
         '∞' => ("an infinity", "give a number"),
         '℃' | '℉' => ("a temperature scale with an offset", "give temperatures in kelvin, `293.15 K`"),
         'ⁿ' | 'ⁱ' => ("a raised letter", "write the exponent after `^`, as in `x^n`"),
-        _ if is_raised_or_lowered(letter) => ("a raised or lowered letter", "write an index after `_`, an exponent after `^`"),
+        _ if is_raised_or_lowered(letter) => {
+            ("a raised or lowered letter", "write an index after `_`, an exponent after `^`")
+        }
         _ if letter.is_numeric() => ("a digit that is not 0 to 9", "write the digits 0 to 9"),
         _ if letter.is_whitespace() => ("a space of an unusual kind", "write an ordinary space"),
         '?' | '@' | '`' => ("", "remove it"),

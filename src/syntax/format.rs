@@ -164,7 +164,8 @@ fn aligned(rows: &[Row]) -> Vec<String> {
     let mut codes: Vec<String> = vec![String::new(); rows.len()];
     let most = rows.iter().map(|row| row.cells.len()).max().unwrap_or(0);
     for column in 0..most {
-        let widths = rows.iter().filter(|row| row.cells.len() > column + 1).map(|row| width(&row.cells[column]));
+        let widths =
+            rows.iter().filter(|row| row.cells.len() > column + 1).map(|row| width(&row.cells[column]));
         let widest = widths.filter(|width| *width <= LONGEST_ALIGNED).max().unwrap_or(0);
         for (row, code) in rows.iter().zip(&mut codes) {
             let Some(cell) = row.cells.get(column) else { continue };
@@ -207,6 +208,10 @@ struct Spacing {
 
 impl Spacing {
     fn line(&mut self, code: &str) -> String {
+        if code.starts_with("method ") && !code.contains('=') {
+            // Names of methods may have a hyphen.
+            return code.split_whitespace().collect::<Vec<_>>().join(" ");
+        }
         let mut out = String::with_capacity(code.len() + 16);
         let mut rest = code;
         while let Some(token) = next_token(rest.trim_start()) {
@@ -234,7 +239,9 @@ impl Spacing {
             "," | ";" | ":" => (false, Before::Separator),
             "(" => (spaced && self.before == Before::Operand || wants_gap(self.before), Before::Tight),
             ")" => (false, Before::Operand),
-            "∂" | "∇" => (spaced && self.before == Before::Operand || wants_gap(self.before), Before::Tight),
+            "∂" | "∇" => {
+                (spaced && self.before == Before::Operand || wants_gap(self.before), Before::Tight)
+            }
             _ => (spaced && self.before == Before::Operand || wants_gap(self.before), Before::Operand),
         };
         if gap && !begins {
@@ -261,10 +268,13 @@ fn next_token(text: &str) -> Option<&str> {
         '0'..='9' | '.' => number_length(text),
         '<' | '>' if text[1..].starts_with('=') => 2,
         _ if is_sign(first) => first.len_utf8(),
-        _ => HYPHENATED
-            .iter()
-            .find(|word| text.starts_with(**word))
-            .map_or_else(|| text.find(|letter: char| letter == ' ' || letter == '"' || is_sign(letter)).unwrap_or(text.len()), |word| word.len()),
+        _ => HYPHENATED.iter().find(|word| text.starts_with(**word)).map_or_else(
+            || {
+                text.find(|letter: char| letter == ' ' || letter == '"' || is_sign(letter))
+                    .unwrap_or(text.len())
+            },
+            |word| word.len(),
+        ),
     };
     Some(&text[..length])
 }
