@@ -477,7 +477,21 @@ fn a_file_of_faults_ends() {
     let text = format!("model a\nconstants\n{}", "  = (\n".repeat(100_000));
     assert!(codes(&text).len() <= 502);
     let text = format!("model a\nconstants\n{}", "  a $ b\n".repeat(100_000));
-    assert!(!codes(&text).is_empty());
+    assert_eq!(codes(&text).last(), Some(&"E0110"));
+    for (part, count) in [
+        ("_{", 400_000),
+        ("e\u{301}\u{301}", 200_000),
+        ("\"", 900_000),
+        ("a_x = b_x\n", 90_000),
+        ("(\n", 400_000),
+        ("$", 900_000),
+    ] {
+        let text = format!("model a\nfields\n{}", part.repeat(count));
+        let found = codes(&text);
+        assert!(!found.is_empty() && found.len() < 2_000, "{part:?}: {}", found.len());
+    }
+    let marks = format!("model a\nconstants\n  e{} = 1", "\u{301}\u{302}".repeat(200_000));
+    codes(&marks);
 }
 
 #[test]

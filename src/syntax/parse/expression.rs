@@ -427,8 +427,10 @@ impl Reader<'_> {
                 remedy,
             );
         } else if self.declared.section(&name.text).is_none() {
-            let (fields, axes) = (self.declared.of(Section::Fields), self.declared.of(Section::Axes));
-            if let Some(derivative) = subscript_derivative(&name.text, &fields, &axes) {
+            let declared = self.declared;
+            let is = |section: Section| move |name: &str| declared.section(name) == Some(section);
+            if let Some(derivative) = subscript_derivative(&name.text, is(Section::Fields), is(Section::Axes))
+            {
                 let message = format!(
                     "`{}` is a name that is not declared; a derivative is written as a fraction",
                     name.text
