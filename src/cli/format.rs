@@ -1,6 +1,6 @@
 //! `rimstone format MODEL`: a model file in canonical layout.
 
-use std::io::Write;
+use std::io::{ErrorKind, Write};
 use std::path::{Path, PathBuf};
 use std::process::ExitCode;
 
@@ -77,6 +77,8 @@ fn format_file(path: &Path, arguments: &Arguments) -> Outcome {
     };
     match written {
         Ok(()) => Outcome::Done,
+        // A reader that has seen enough and left.
+        Err(error) if !arguments.write && error.kind() == ErrorKind::BrokenPipe => Outcome::Done,
         Err(error) => {
             eprintln!("error: cannot write {}: {error}", path.display());
             Outcome::Environment

@@ -135,6 +135,9 @@ fn every_slip_in_a_formula_is_named() {
         ("2 x", "E0129", "2 * x"),
         ("k x", "E0120", "k * x"),
         ("3 W/m·K", "E0128", "W/(m·K)"),
+        ("3 W/m·K", "E0128", "W·K/m"),
+        ("3 W/(m*K)", "E0137", "3 W/(m·K)"),
+        ("3 N*m", "E0137", "3 N·m"),
         ("3 W/m/K", "E0128", "W/(m·K)"),
         ("3 kg m/s²", "E0120", "3 kg·m"),
         ("Δt", "E0132", "dt"),
@@ -363,6 +366,7 @@ fn units_keep_their_factors() {
     let ExpressionKind::Quantity { unit, .. } = formula("0.8 1/d").kind else { panic!("no quantity") };
     assert_eq!(unit.factors[0].exponent, rimstone::exact::Rational::from(-1));
     assert!(matches!(formula("30 °").kind, ExpressionKind::Quantity { .. }));
+    assert!(matches!(formula("8 K * B").kind, ExpressionKind::Product(_)));
     assert!(matches!(formula("8 K*x").kind, ExpressionKind::Product(_)));
 }
 
@@ -389,6 +393,23 @@ fn slips_outside_formulas_are_named() {
         ("model a\naxes\n  x: 0 to (1, 11 nodes\nfields\n  u on x\n", "E0115"),
     ] {
         assert_eq!(codes(text), [code], "{}", shown(text));
+    }
+}
+
+#[test]
+fn what_often_goes_wrong_has_a_remedy() {
+    for (text, remedy) in [
+        ("axes\n  x: 0 to 1 11 nodes\n", "a comma before"),
+        ("conditions\n  at low: u = 0\n", "`at x = low"),
+        ("conditions\n  at start: u = 0\n", "`at t = start"),
+        ("conditions\n  x = low: u = 0\n", "begins with `at`"),
+        ("equations\n  u\n", "an equality"),
+        ("equations\n  u = v\n  -w = z\n", "begin it with its operand"),
+    ] {
+        let model = std::format!("model a\n{text}");
+        let (_, faults) = parse(&model);
+        let remedies: Vec<_> = faults.iter().filter_map(|fault| fault.remedy.as_deref()).collect();
+        assert!(remedies.len() == 1 && remedies[0].contains(remedy), "{}", shown(&model));
     }
 }
 

@@ -90,6 +90,7 @@ pub(super) fn read(
             folded,
             declared: &declared,
             offset: statement.start,
+            home: statement.home,
             diagnostics,
             file: &mut file,
         };
@@ -139,6 +140,7 @@ struct Reader<'a> {
     declared: &'a Declared,
     /// Where the statement begins in the folded text.
     offset: usize,
+    home: Home,
     diagnostics: &'a mut Diagnostics,
     file: &'a mut ModelFile,
 }
