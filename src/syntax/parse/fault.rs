@@ -182,7 +182,7 @@ fn rule_words(rule: Rule) -> String {
         | Rule::vector_operation => "a formula",
         Rule::equality => "an equality",
         Rule::comparison => "a comparison",
-        Rule::variables => "`∂x`",
+        Rule::variables | Rule::variables_higher => "`∂x`",
         Rule::comma => "`,`",
         Rule::colon => "`:`",
         Rule::semicolon => "`;`",
