@@ -228,6 +228,11 @@ impl Reader<'_> {
                     "a unit has no space in it: write `{left}·{right}`; a product of names is `{left} * {right}`"
                 )
             }
+            (ExpressionKind::Quantity { .. }, ExpressionKind::Number(_))
+                if before.span.end == after.span.start =>
+            {
+                format!("exponents in units are written `{left}^{right}` or with superscripts")
+            }
             (_, ExpressionKind::Name(name)) if !self.is_declared(after) => {
                 format!(
                     "write `{left} * {right}`; a unit follows a number literal only, as in `{left} * 1 {name}`"
