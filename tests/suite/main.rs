@@ -1,1 +1,2 @@
 //! The one test binary.
+mod syntax;
