@@ -351,8 +351,8 @@ pub enum OutputKind {
     /// A coordinate for each axis, fixed.
     Gauge(Vec<ValueId>),
     Integral,
-    /// `sweep` keeps the largest value so far in `buffer`; `begin` sets it at the start.
+    /// `sweeps` keep the largest value so far in `buffer`; `begin` set it at the start.
     Maximum {
-        begin: Sweep,
+        begin: Vec<Sweep>,
     },
 }

@@ -99,7 +99,14 @@ impl Lowering<'_> {
         }
         for correction in &scheme.corrections {
             let rate = rate_index(components, correction.field);
-            let term = self.face_term(correction.face, &correction.patch, rate, Action::Add, &correction.value, binding);
+            let term = self.face_term(
+                correction.face,
+                &correction.patch,
+                rate,
+                Action::Add,
+                &correction.value,
+                binding,
+            );
             main.face_terms.push(term);
         }
         for injection in &scheme.injections {
@@ -110,7 +117,8 @@ impl Lowering<'_> {
                 let slope = if component.velocity { &injection.second_rate } else { &injection.rate };
                 let zero = Expression::zero();
                 let slope = slope.as_ref().unwrap_or(&zero);
-                let term = self.face_term(injection.face, &injection.patch, rate, Action::Replace, slope, binding);
+                let term =
+                    self.face_term(injection.face, &injection.patch, rate, Action::Replace, slope, binding);
                 main.face_terms.push(term);
             }
         }
@@ -168,7 +176,11 @@ impl Lowering<'_> {
             Method::Euler => {
                 let next = self.level(&components, "next");
                 self.fused(&mut step, &components, "forward Euler", 0, &present, |_| {
-                    vec![Update { target: next.clone(), from: vec![(present.clone(), Rational::from(1))], rate: Rational::from(1) }]
+                    vec![Update {
+                        target: next.clone(),
+                        from: vec![(present.clone(), Rational::from(1))],
+                        rate: Rational::from(1),
+                    }]
                 });
                 self.close(&mut step, &components, &next);
                 rotation = present.iter().copied().zip(next).collect();
@@ -189,8 +201,22 @@ impl Lowering<'_> {
         let one = Rational::from(1);
         let plan: [(&str, Rational, &Level, &Level, Vec<(Level, Rational)>, Rational); 3] = [
             ("stage 1 of 3", r(0, 1), present, &first, vec![(present.clone(), one.clone())], one.clone()),
-            ("stage 2 of 3", r(1, 1), &first, &second, vec![(present.clone(), r(3, 4)), (first.clone(), r(1, 4))], r(1, 4)),
-            ("stage 3 of 3", r(1, 2), &second, present, vec![(present.clone(), r(1, 3)), (second.clone(), r(2, 3))], r(2, 3)),
+            (
+                "stage 2 of 3",
+                r(1, 1),
+                &first,
+                &second,
+                vec![(present.clone(), r(3, 4)), (first.clone(), r(1, 4))],
+                r(1, 4),
+            ),
+            (
+                "stage 3 of 3",
+                r(1, 2),
+                &second,
+                present,
+                vec![(present.clone(), r(1, 3)), (second.clone(), r(2, 3))],
+                r(2, 3),
+            ),
         ];
         let ends = [r(1, 1), r(1, 2), r(1, 1)];
         for ((label, fraction, source, target, from, rate), end) in plan.into_iter().zip(ends) {
@@ -208,7 +234,11 @@ impl Lowering<'_> {
         let r = Rational::ratio;
         let one = || Rational::from(1);
         let from = |level: &Level| vec![(level.clone(), one())];
-        let update = |target: &Level, source: &Level, rate: Rational| Update { target: target.clone(), from: from(source), rate };
+        let update = |target: &Level, source: &Level, rate: Rational| Update {
+            target: target.clone(),
+            from: from(source),
+            rate,
+        };
         let plan = [
             (r(0, 1), present, vec![update(&total, present, r(1, 6)), update(&odd, present, r(1, 2))]),
             (r(1, 2), &odd, vec![update(&total, &total, r(1, 3)), update(&even, present, r(1, 2))]),
@@ -325,8 +355,12 @@ impl Lowering<'_> {
     }
 
     fn leapfrog(&mut self) -> Marching {
-        let components: Vec<Component> =
-            self.model.equations.iter().map(|equation| Component { field: equation.field, velocity: false }).collect();
+        let components: Vec<Component> = self
+            .model
+            .equations
+            .iter()
+            .map(|equation| Component { field: equation.field, velocity: false })
+            .collect();
         let present = self.level(&components, "");
         let past = self.level(&components, "before");
         let start = vec![self.initial(&components, &present)];
@@ -340,7 +374,10 @@ impl Lowering<'_> {
                 main.writes.push(Write { buffer: past[index], value });
             }
         }
-        step.push(Stage { fraction: Rational::from(0), passes: sweeps.into_iter().map(Pass::Sweep).collect() });
+        step.push(Stage {
+            fraction: Rational::from(0),
+            passes: sweeps.into_iter().map(Pass::Sweep).collect(),
+        });
         self.close(&mut step, &components, &past);
         let rotation: Vec<_> = present.iter().copied().zip(past.iter().copied()).collect();
         let state = present.iter().chain(&past).copied().collect();
@@ -390,7 +427,8 @@ impl Lowering<'_> {
             let inside = self.stored(&inside, binding);
             main.rates.push(inside);
             for (correction, slope) in faces {
-                let term = self.face_term(correction.face, &correction.patch, slot, Action::Add, &slope, binding);
+                let term =
+                    self.face_term(correction.face, &correction.patch, slot, Action::Add, &slope, binding);
                 added.push((slot, term));
             }
         }

@@ -1,5 +1,6 @@
 //! From a scheme to its kernel. Total: what can go wrong went wrong before.
 
+mod line;
 mod method;
 mod output;
 mod stage;
@@ -82,7 +83,10 @@ pub fn lower(model: &Model, scheme: &Scheme, law: &LimitLaw, notes: Vec<String>)
     let operators = scheme
         .operators
         .iter()
-        .map(|operator| NamedOperator { name: operator.name.clone(), operator: operator.rule.line_operator() })
+        .map(|operator| NamedOperator {
+            name: operator.name.clone(),
+            operator: line::operator(&operator.rule),
+        })
         .collect();
     let Lowering { builder, buffers, .. } = lowering;
     let (values, tables) = builder.finish();
@@ -106,7 +110,11 @@ pub fn lower(model: &Model, scheme: &Scheme, law: &LimitLaw, notes: Vec<String>)
         time,
         outputs,
         interpolation_nodes: interpolation_nodes(scheme),
-        quadrature: scheme.axes.iter().map(|axis| axis.norm.as_ref().map_or_else(Vec::new, |norm| norm.left().to_vec())).collect(),
+        quadrature: scheme
+            .axes
+            .iter()
+            .map(|axis| axis.norm.as_ref().map_or_else(Vec::new, |norm| norm.left().to_vec()))
+            .collect(),
     }
 }
 

@@ -215,7 +215,9 @@ impl Translation<'_> {
 fn signed(term: &Expression) -> (bool, Expression) {
     let leads_negative = match term {
         Expression::Number(number) => number.is_negative(),
-        Expression::Product(items) => matches!(items.first(), Some(Expression::Number(number)) if number.is_negative()),
+        Expression::Product(items) => {
+            matches!(items.first(), Some(Expression::Number(number)) if number.is_negative())
+        }
         Expression::Quotient(above, _) => signed(above).0,
         _ => false,
     };
@@ -226,7 +228,9 @@ impl Expression {
     /// −expression, taken into the numerator of a quotient so that no new factor appears.
     fn negative_through(self) -> Expression {
         match self {
-            Expression::Quotient(above, below) => Expression::Quotient(Box::new(above.negative_through()), below),
+            Expression::Quotient(above, below) => {
+                Expression::Quotient(Box::new(above.negative_through()), below)
+            }
             other => other.negative(),
         }
     }
