@@ -3,6 +3,7 @@
 
 pub mod closure;
 pub mod interior;
+pub mod weights;
 
 pub use closure::{ClosureFault, Impossible};
 pub use interior::{LargestRequest, NodeFamily, WeightsFault};
