@@ -48,7 +48,7 @@ pub enum RequestFault {
 }
 
 /// Binary digits that listed nodes and the point may have in all.
-const MOST_BITS: u64 = 8_192;
+const MOST_BITS: u64 = 4_096;
 /// Most characters of a faulty word that a message repeats.
 const QUOTED: usize = 40;
 
