@@ -47,8 +47,9 @@ pub enum RequestFault {
     Weights(WeightsFault),
 }
 
-/// Binary digits that listed nodes and the point may have in all.
-const MOST_BITS: u64 = 4_096;
+/// Bound on (number of nodes) · (binary digits of the nodes and the point in all): the size to which the
+/// fractions of the weights can grow. 64 nodes of five decimals each keep it.
+const MOST_WORK: u64 = 200_000;
 /// Most characters of a faulty word that a message repeats.
 const QUOTED: usize = 40;
 
@@ -200,12 +201,10 @@ fn check_digits(nodes: &NodeChoice, at: &Rational) -> Result<(), Vec<RequestFaul
     };
     let size = |value: &Rational| value.numerator().bits() + value.denominator().bits();
     // Every node's distance from the point enters, so the point's digits count once for each node.
-    let bits =
-        listed.iter().map(size).sum::<u64>() + size(at) * listed.len().max(LargestRequest::ORDER) as u64;
-    if bits > MOST_BITS {
-        return Err(vec![RequestFault::TooManyDigits { bits, most: MOST_BITS }]);
-    }
-    Ok(())
+    let count = listed.len().max(LargestRequest::ORDER) as u64;
+    let bits = listed.iter().map(size).sum::<u64>() + size(at) * count;
+    let most = MOST_WORK / count;
+    if bits > most { Err(vec![RequestFault::TooManyDigits { bits, most }]) } else { Ok(()) }
 }
 
 fn as_table(stencil: &Stencil) -> WeightsTable {
