@@ -276,3 +276,72 @@ impl fmt::Display for RequestFault {
 }
 
 impl std::error::Error for RequestFault {}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn written(options: &[(&str, &str)]) -> WrittenRequest {
+        let word = |name: &str| {
+            options.iter().find(|(option, _)| *option == name).map(|(_, word)| (*word).to_string())
+        };
+        WrittenRequest {
+            derivative: word("derivative"),
+            order: word("order"),
+            from: word("from"),
+            halfway: word("halfway").is_some(),
+            nodes: word("nodes"),
+            at: word("at"),
+        }
+    }
+
+    fn codes(options: &[(&str, &str)]) -> Vec<&'static str> {
+        match table(&written(options)) {
+            Ok(table) => panic!("accepted: {table:?}"),
+            Err(faults) => faults.iter().map(RequestFault::code).collect(),
+        }
+    }
+
+    #[test]
+    fn all_faults_are_told_at_once() {
+        assert_eq!(codes(&[]), ["W001", "W003"]);
+        let several = [("order", "x"), ("nodes", "1,z,1"), ("at", "y")];
+        assert_eq!(codes(&several), ["W001", "W005", "W004", "W005", "W011"]);
+        assert_eq!(codes(&[("derivative", "-1"), ("order", "2.5"), ("from", "")]), ["W002", "W002", "W002"]);
+        assert_eq!(codes(&[("derivative", "99"), ("order", "0")]), ["W009", "W010"]);
+        assert_eq!(codes(&[("derivative", "2"), ("nodes", "0,1")]), ["W007"]);
+        assert_eq!(codes(&[("derivative", "1"), ("order", "2"), ("from", "64")]), ["W008"]);
+    }
+
+    #[test]
+    fn hostile_words_cost_nothing() {
+        let many = vec!["0"; 100_000].join(",");
+        assert_eq!(codes(&[("derivative", "1"), ("nodes", &many)]), ["W008"]);
+        assert_eq!(codes(&[("derivative", "1"), ("nodes", "0,1e999999999")]), ["W005"]);
+        let long = format!("0.{}", "3".repeat(1990));
+        assert_eq!(codes(&[("derivative", "1"), ("order", "4"), ("at", &long)]), ["W006"]);
+        let endless = "9".repeat(10_000);
+        assert_eq!(codes(&[("derivative", &endless), ("order", &endless)]), ["W009", "W010"]);
+    }
+
+    #[test]
+    fn nodes_are_read_exactly_and_put_into_order() {
+        let options = [("derivative", "1"), ("nodes", "0.5, -1/2,1e0,-1"), ("at", "1/4")];
+        let table = table(&written(&options)).expect("a good request");
+        let expected: Vec<Rational> =
+            [(-1, 1), (-1, 2), (1, 2), (1, 1)].map(|(top, bottom)| Rational::ratio(top, bottom)).to_vec();
+        assert_eq!((table.nodes, table.at), (expected, Rational::ratio(1, 4)));
+        assert_eq!(table.order, 3);
+    }
+
+    #[test]
+    fn families_follow_the_options() {
+        let nodes = |options: &[(&str, &str)]| -> Vec<String> {
+            let table = table(&written(options)).expect("a good request");
+            table.nodes.iter().map(Rational::to_string).collect()
+        };
+        assert_eq!(nodes(&[("derivative", "2"), ("order", "2")]), ["-1", "0", "1"]);
+        assert_eq!(nodes(&[("derivative", "1"), ("order", "2"), ("from", "0")]), ["0", "1", "2"]);
+        assert_eq!(nodes(&[("derivative", "1"), ("order", "2"), ("halfway", "")]), ["-1/2", "1/2"]);
+    }
+}

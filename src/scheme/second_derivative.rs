@@ -15,7 +15,7 @@ use crate::exact::{Matrix, Rational};
 
 use super::{ClosedRow, DifferenceOperator, Norm, OperatorFault, Stencil, StencilFault, SumOfSquares};
 
-/// A linear form in the nodal coefficients: Σ factor · b[node].
+/// A linear form in the nodal coefficients: Σ factor · b at that node.
 pub type LinearForm = Vec<(usize, Rational)>;
 
 /// One closed row at the left end, the norm already divided out: (−H⁻¹M(b)u)_i = Σ_l form_l(b) u_l.
