@@ -33,14 +33,12 @@
 
 pub mod build;
 pub mod operator;
-pub mod validate;
 
 pub use build::Builder;
 pub use operator::{ClosureRow, ConstantOperator, LineOperator, Parity, VaryingEntry, VaryingOperator};
 
 use crate::exact::Rational;
 use crate::model::{Function, Relation};
-
 
 macro_rules! index {
     ($($(#[$doc:meta])* $name:ident;)*) => {$(
@@ -165,7 +163,12 @@ pub enum Operation {
     /// The table at this node.
     Table(TableId),
     /// An operator applied along an axis, in units of the spacing.
-    Apply { operator: OperatorId, axis: usize, source: Source, coefficient: Option<Source> },
+    Apply {
+        operator: OperatorId,
+        axis: usize,
+        source: Source,
+        coefficient: Option<Source>,
+    },
     /// The rate k of the sweep, after its face terms; only in writes.
     Rate(usize),
     Negate(ValueId),
@@ -182,7 +185,13 @@ pub enum Operation {
     /// a > b ? a : b
     Maximum(ValueId, ValueId),
     /// left RELATION right ? then : otherwise
-    Select { left: ValueId, relation: Relation, right: ValueId, then: ValueId, otherwise: ValueId },
+    Select {
+        left: ValueId,
+        relation: Relation,
+        right: ValueId,
+        then: ValueId,
+        otherwise: ValueId,
+    },
 }
 
 /// An array that an operator reads along a line. A table always holds the operator's axis.
@@ -342,5 +351,7 @@ pub enum OutputKind {
     Gauge(Vec<ValueId>),
     Integral,
     /// `sweep` keeps the largest value so far in `buffer`; `begin` sets it at the start.
-    Maximum { begin: Sweep },
+    Maximum {
+        begin: Sweep,
+    },
 }
