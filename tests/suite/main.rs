@@ -2,4 +2,6 @@
 
 mod exactness;
 mod layering;
+mod lowering;
 mod published;
+mod reference;
