@@ -5,3 +5,4 @@ mod layering;
 mod lowering;
 mod published;
 mod reference;
+mod syntax;
