@@ -77,7 +77,8 @@ mod tests {
     #[test]
     fn every_key_is_there() {
         let source = SourceFile::new("w.rim", "ρ = 1\nk = = 2\n");
-        let fault = Diagnostic::error(codes::UNEXPECTED, Span::new(11, 12), "m \"q\" \u{1b}").with_remedy("r");
+        let fault =
+            Diagnostic::error(codes::UNEXPECTED, Span::new(11, 12), "m \"q\" \u{1b}").with_remedy("r");
         let line = render_one(&fault.with_label(Span::new(0, 2), "here"), &source);
         assert!(!line.contains('\n') && !line.contains('\u{1b}'));
         let value: serde_json::Value = serde_json::from_str(&line).expect("the line is JSON");

@@ -56,7 +56,8 @@ fn summary(diagnostics: &Diagnostics, source: &SourceFile) -> String {
         1 => Some(format!("1 {word}")),
         _ => Some(format!("{number} {word}s")),
     };
-    let counts: Vec<String> = [count(errors, "error"), count(warnings, "warning")].into_iter().flatten().collect();
+    let counts: Vec<String> =
+        [count(errors, "error"), count(warnings, "warning")].into_iter().flatten().collect();
     format!("{}: {}\n", safe(source.name()), counts.join(", "))
 }
 
@@ -120,7 +121,8 @@ fn snippet<'a>(diagnostic: &Diagnostic, source: &SourceFile) -> Snippet<'a, Anno
     let end = clipped_end(source, start, stretch);
     let shown = Shown::new(text, start, end, primary);
     let line = source.position(shown.start as u32).line as usize;
-    let marks = diagnostic.labels.iter().filter(|label| shown.holds(label.span)).map(|label| shown.mark(label));
+    let marks =
+        diagnostic.labels.iter().filter(|label| shown.holds(label.span)).map(|label| shown.mark(label));
     Snippet::source(shown.text.clone()).line_start(line).annotations(marks.collect::<Vec<_>>())
 }
 
@@ -133,7 +135,8 @@ fn clipped_end(source: &SourceFile, start: usize, stretch: Span) -> usize {
     let text = source.text();
     let last = floor(text, stretch.end as usize).max(start);
     let wanted = text[last..].find('\n').map_or(text.len(), |end| last + end);
-    let most = text[start..].match_indices('\n').nth(MOST_LINES - 1).map_or(text.len(), |(end, _)| start + end);
+    let most =
+        text[start..].match_indices('\n').nth(MOST_LINES - 1).map_or(text.len(), |(end, _)| start + end);
     wanted.min(most)
 }
 
@@ -187,11 +190,14 @@ impl Shown {
 
 /// The stretch itself, or a window around the mark where it is one very long line or more.
 fn window(source: &str, start: usize, end: usize, primary: Span) -> (usize, usize) {
-    if end - start <= LONGEST_LINE * MOST_LINES && source[start..end].lines().all(|line| line.len() <= LONGEST_LINE) {
+    if end - start <= LONGEST_LINE * MOST_LINES
+        && source[start..end].lines().all(|line| line.len() <= LONGEST_LINE)
+    {
         return (start, end);
     }
     let from = floor(source, (primary.start as usize).saturating_sub(LONGEST_LINE / 4)).max(start);
-    let from = source[from..(primary.start as usize).max(from)].rfind('\n').map_or(from, |line| from + line + 1);
+    let from =
+        source[from..(primary.start as usize).max(from)].rfind('\n').map_or(from, |line| from + line + 1);
     let to = floor(source, from + LONGEST_LINE).min(end).max(from);
     let to = source[from..to].find('\n').map_or(to, |line| from + line);
     (from, to)
@@ -224,7 +230,9 @@ mod tests {
     fn no_span_and_no_text_makes_it_stumble() {
         let long = format!("{}\u{1b}é\r\n{}", "x".repeat(5000), "y\n".repeat(50));
         for source in [SourceFile::new("a", ""), SourceFile::new("a", "é"), SourceFile::new("a", long)] {
-            for (start, end) in [(0, 0), (0, 1), (1, 2), (5000, 5003), (4000, 5100), (9, 99999), (77777, 99999)] {
+            for (start, end) in
+                [(0, 0), (0, 1), (1, 2), (5000, 5003), (4000, 5100), (9, 99999), (77777, 99999)]
+            {
                 let text = render_one(&fault(start, end), &source, Colour::Plain);
                 assert!(text.contains("E0101") && text.len() < 20_000);
             }

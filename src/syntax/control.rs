@@ -75,8 +75,12 @@ pub fn symbol(word: &str) -> Option<&'static str> {
 pub fn remedy(word: &str) -> String {
     match word {
         "" => return "a control word is a backslash and letters, such as \\partial".into(),
-        "frac" | "dfrac" | "tfrac" => return "write a fraction as `(a) / (b)`, a derivative as `∂u/∂x`".into(),
-        "left" | "right" | "big" | "Big" => return "write the bracket alone, without \\left and \\right".into(),
+        "frac" | "dfrac" | "tfrac" => {
+            return "write a fraction as `(a) / (b)`, a derivative as `∂u/∂x`".into();
+        }
+        "left" | "right" | "big" | "Big" => {
+            return "write the bracket alone, without \\left and \\right".into();
+        }
         "dot" | "ddot" | "prime" => return "write a time derivative as `∂u/∂t` or `∂²u/∂t²`".into(),
         "ln" => return "the natural logarithm is `log(…)`".into(),
         "mathrm" | "text" | "mathbf" | "vec" | "hat" | "bar" | "tilde" => {
@@ -91,7 +95,9 @@ pub fn remedy(word: &str) -> String {
     let prefix = TABLE.iter().filter(|(known, _)| known.len() > 1 && word.starts_with(known));
     if let Some((known, _)) = prefix.max_by_key(|(known, _)| known.len()) {
         let rest = &word[known.len()..];
-        return format!("a control word is the longest run of letters: put a space after it, `\\{known} {rest}`");
+        return format!(
+            "a control word is the longest run of letters: put a space after it, `\\{known} {rest}`"
+        );
     }
     match crate::diagnostic::nearest::nearest(word, TABLE.iter().map(|(known, _)| *known)) {
         Some(near) => format!("did you mean `\\{near}`?"),

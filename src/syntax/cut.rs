@@ -301,7 +301,8 @@ mod tests {
 
     #[test]
     fn statements_go_on_where_they_must() {
-        let (statements, faults) = cut_of("equations\n a = b +  # more\n\n c\n d = e\n  - f\n g = h(1,\n 2)\n i =\n j");
+        let (statements, faults) =
+            cut_of("equations\n a = b +  # more\n\n c\n d = e\n  - f\n g = h(1,\n 2)\n i =\n j");
         assert_eq!(statements.len(), 4, "{statements:?}");
         assert!(faults.is_empty());
     }
@@ -311,7 +312,8 @@ mod tests {
         let (statements, faults) = cut_of("constants\n  a = (1\n  b = 2)\n  c = 3\nfields\n  u on x");
         assert_eq!(statements, ["a = (1\n  b = 2)", "c = 3", "u on x"]);
         assert!(faults.is_empty());
-        let (statements, faults) = cut_of("axes\n  x: 0 to (1, 9 nodes\n  y: 0 to 1, 9 nodes\nfields\n  u on x");
+        let (statements, faults) =
+            cut_of("axes\n  x: 0 to (1, 9 nodes\n  y: 0 to 1, 9 nodes\nfields\n  u on x");
         assert_eq!(statements, ["x: 0 to (1, 9 nodes", "y: 0 to 1, 9 nodes", "u on x"]);
         assert!(faults.len() == 1 && faults.has(codes::OPEN_BRACKET));
     }

@@ -96,7 +96,11 @@ pub(super) fn fold(text: &str, diagnostics: &mut Diagnostics) -> Folded {
         at: 0,
         mode: Mode::Formula,
         text_start: 0,
-        folded: Folded { text: String::with_capacity(text.len()), map: OffsetMap::default(), refused: Vec::new() },
+        folded: Folded {
+            text: String::with_capacity(text.len()),
+            map: OffsetMap::default(),
+            refused: Vec::new(),
+        },
         diagnostics,
     };
     if text.starts_with('\u{feff}') {
@@ -143,7 +147,11 @@ impl Folder<'_> {
         if letter == '"' {
             self.mode = Mode::Formula;
         } else if letter.is_control() && letter != '\t' {
-            self.refuse(letter.len_utf8(), &format!("the control character `{}` in a text", safe(&letter.to_string())), "remove it");
+            self.refuse(
+                letter.len_utf8(),
+                &format!("the control character `{}` in a text", safe(&letter.to_string())),
+                "remove it",
+            );
         }
         self.copy(letter);
     }
@@ -193,7 +201,9 @@ impl Folder<'_> {
     /// `_{…}` after a name: the braces of TeX.
     fn braced_subscript(&mut self) -> bool {
         let rest = &self.text[self.at..];
-        let Some(inner) = rest.strip_prefix("_{").and_then(|inner| inner.split_once('}')).map(|(inner, _)| inner) else {
+        let Some(inner) =
+            rest.strip_prefix("_{").and_then(|inner| inner.split_once('}')).map(|(inner, _)| inner)
+        else {
             return false;
         };
         if inner.is_empty() || !inner.chars().all(|letter| is_xid_continue(letter) && is_allowed(letter)) {
@@ -211,8 +221,10 @@ impl Folder<'_> {
         match control::symbol(word) {
             Some(symbol) => {
                 // TeX would multiply `k\rho`; here a name must not swallow the control word.
-                let joins = self.folded.text.chars().next_back().is_some_and(|last| is_xid_continue(last) && last != '_' && last != '·' && last != 'Δ')
-                    && symbol.starts_with(is_xid_start);
+                let joins =
+                    self.folded.text.chars().next_back().is_some_and(|last| {
+                        is_xid_continue(last) && last != '_' && last != '·' && last != 'Δ'
+                    }) && symbol.starts_with(is_xid_start);
                 if joins {
                     self.replace(0, " ");
                 }
@@ -236,14 +248,19 @@ impl Folder<'_> {
     fn refuse_and_copy(&mut self, letter: char) {
         let (what, remedy) = named(letter);
         let what = if what.is_empty() { "this character".to_string() } else { what.to_string() };
-        self.refuse(letter.len_utf8(), &format!("`{}`, {what}, has no place here", safe(&letter.to_string())), remedy);
+        self.refuse(
+            letter.len_utf8(),
+            &format!("`{}`, {what}, has no place here", safe(&letter.to_string())),
+            remedy,
+        );
         self.replace(letter.len_utf8(), "?");
     }
 
     fn refuse(&mut self, length: usize, message: &str, remedy: &str) {
         let span = Span::new(self.at as u32, (self.at + length) as u32);
         self.folded.refused.push(self.folded.text.len() as u32);
-        let code = if matches!(self.text[self.at..].chars().next(), Some('\'' | '′' | '’' | '‘' | '´')) {
+        let code = if matches!(self.text[self.at..].chars().next(), Some('\'' | '′' | '’' | '‘' | '´'))
+        {
             codes::PRIME
         } else {
             codes::STRAY_CHARACTER
@@ -319,13 +336,15 @@ fn named(letter: char) -> (&'static str, &'static str) {
         '÷' | '∕' | '⁄' | '／' => ("a division sign", "write `/`"),
         '∗' | '•' | '∘' => ("a sign that looks like a multiplication", "write `*`"),
         '“' | '”' | '„' | '«' | '»' => ("a typographic quote", "write `\"`"),
-        '\'' | '′' | '’' | '‘' | '´' => {
-            ("a prime", "a derivative is written `∂u/∂x` or `∂u/∂t`; a second variable needs a name of its own")
-        }
+        '\'' | '′' | '’' | '‘' | '´' => (
+            "a prime",
+            "a derivative is written `∂u/∂x` or `∂u/∂t`; a second variable needs a name of its own",
+        ),
         '[' | ']' | '{' | '}' => ("a bracket of another kind", "use round brackets `( )`"),
-        '!' | '≠' | '&' | '|' | '∧' | '∨' => {
-            ("a logical sign", "comparisons are `<`, `≤`, `>`, `≥`; several are joined by further cases or by `and`")
-        }
+        '!' | '≠' | '&' | '|' | '∧' | '∨' => (
+            "a logical sign",
+            "comparisons are `<`, `≤`, `>`, `≥`; several are joined by further cases or by `and`",
+        ),
         '%' | '‰' => ("a percent sign", "write the number, `0.05` for 5 %"),
         '$' => ("a dollar sign", "formulas need no `$`"),
         '~' | '≈' | '≡' => ("a sign of likeness", "an equality is written `=`"),
@@ -334,7 +353,9 @@ fn named(letter: char) -> (&'static str, &'static str) {
         '∞' => ("an infinity", "give a number"),
         '℃' | '℉' => ("a temperature scale with an offset", "give temperatures in kelvin, `293.15 K`"),
         'ⁿ' | 'ⁱ' => ("a raised letter", "write the exponent after `^`, as in `x^n`"),
-        _ if is_raised_or_lowered(letter) => ("a raised or lowered letter", "write an index after `_`, an exponent after `^`"),
+        _ if is_raised_or_lowered(letter) => {
+            ("a raised or lowered letter", "write an index after `_`, an exponent after `^`")
+        }
         _ if letter.is_numeric() => ("a digit that is not 0 to 9", "write the digits 0 to 9"),
         _ if letter.is_whitespace() => ("a space of an unusual kind", "write an ordinary space"),
         '?' | '@' | '`' => ("", "remove it"),

@@ -55,7 +55,9 @@ fn parse_here(source: &SourceFile) -> (ModelFile, Diagnostics) {
 fn unreadable(fault: &SourceFault) -> Diagnostic {
     let (code, remedy) = match fault {
         SourceFault::NotUtf8 { .. } => (codes::NOT_UTF8, "save the file as UTF-8"),
-        SourceFault::TooLarge(_) => (codes::TOO_LARGE, "put data into files of their own and read them with `from`"),
+        SourceFault::TooLarge(_) => {
+            (codes::TOO_LARGE, "put data into files of their own and read them with `from`")
+        }
     };
     Diagnostic::error(code, Span::default(), fault.to_string()).with_remedy(remedy)
 }

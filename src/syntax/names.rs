@@ -40,7 +40,9 @@ pub fn reserved(name: &str) -> Option<Reserved> {
         "π" => Some(Reserved::Pi),
         "δ" => Some(Reserved::PointSource),
         _ if Section::from_word(name).is_some() => Some(Reserved::SectionWord),
-        _ if Function::from_name(name).is_some() || SPECIAL_FUNCTIONS.contains(&name) => Some(Reserved::Function),
+        _ if Function::from_name(name).is_some() || SPECIAL_FUNCTIONS.contains(&name) => {
+            Some(Reserved::Function)
+        }
         _ => None,
     }
 }
@@ -93,7 +95,8 @@ pub fn subscript_derivative(name: &str, fields: &[&str], axes: &[&str]) -> Optio
         }
     }
     let order: usize = variables.iter().map(|(_, power)| power).sum();
-    let below: String = variables.iter().map(|(variable, power)| format!("∂{variable}{}", raised(*power))).collect();
+    let below: String =
+        variables.iter().map(|(variable, power)| format!("∂{variable}{}", raised(*power))).collect();
     Some(format!("∂{}{field}/{below}", raised(order)))
 }
 
@@ -117,15 +120,20 @@ fn raised_digit(digit: char) -> char {
 
 /// The whole number that superscripts spell; nothing if there are none or too many.
 pub(super) fn lowered(superscripts: &str) -> Option<i64> {
-    let plain: String = superscripts.chars().filter_map(|letter| Some(match letter {
-        '⁻' => '-',
-        '⁺' => return None,
-        '¹' => '1',
-        '²' => '2',
-        '³' => '3',
-        '⁰' => '0',
-        _ => char::from_digit(u32::from(letter).checked_sub(u32::from('⁰'))?, 10)?,
-    })).collect();
+    let plain: String = superscripts
+        .chars()
+        .filter_map(|letter| {
+            Some(match letter {
+                '⁻' => '-',
+                '⁺' => return None,
+                '¹' => '1',
+                '²' => '2',
+                '³' => '3',
+                '⁰' => '0',
+                _ => char::from_digit(u32::from(letter).checked_sub(u32::from('⁰'))?, 10)?,
+            })
+        })
+        .collect();
     plain.parse().ok()
 }
 
@@ -135,9 +143,14 @@ mod tests {
 
     #[test]
     fn subscript_digits_have_one_spelling() {
-        for (written, name) in
-            [("u₀", "u_0"), ("u_0", "u_0"), ("u₁₂", "u_12"), ("T_room", "T_room"), ("u_₀", "u_0"), ("a₁b₂", "a_1b_2")]
-        {
+        for (written, name) in [
+            ("u₀", "u_0"),
+            ("u_0", "u_0"),
+            ("u₁₂", "u_12"),
+            ("T_room", "T_room"),
+            ("u_₀", "u_0"),
+            ("a₁b₂", "a_1b_2"),
+        ] {
             assert_eq!(canonical(written), name);
         }
     }

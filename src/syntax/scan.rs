@@ -17,8 +17,18 @@ const MOST_TOKENS: usize = 20_000;
 /// Scans a statement (`text` begins at `offset` of the folded text); tells whether it may be parsed.
 pub(super) fn scan(text: &str, offset: usize, folded: &Folded, diagnostics: &mut Diagnostics) -> bool {
     let before = diagnostics.len();
-    let mut scanner =
-        Scanner { text, offset, folded, diagnostics, at: 0, tokens: 0, depth: 0, run: 0, open: Vec::new(), operand: false };
+    let mut scanner = Scanner {
+        text,
+        offset,
+        folded,
+        diagnostics,
+        at: 0,
+        tokens: 0,
+        depth: 0,
+        run: 0,
+        open: Vec::new(),
+        operand: false,
+    };
     while scanner.at < text.len() && scanner.step() {}
     scanner.diagnostics.len() == before
 }
@@ -69,7 +79,13 @@ impl Scanner<'_> {
             '+' | '-' | 'Δ' | '∇' => return self.prefix(letter),
             '∂' => self.partial(),
             '°' => self.degree(),
-            '_' => self.report(codes::BAD_NAME, 0, 1, "a name begins with a letter".into(), "write a letter before `_`"),
+            '_' => self.report(
+                codes::BAD_NAME,
+                0,
+                1,
+                "a name begins with a letter".into(),
+                "write a letter before `_`",
+            ),
             _ if letter.is_alphabetic() => self.word(),
             _ => self.operator(letter),
         }
@@ -202,7 +218,10 @@ impl Scanner<'_> {
             let exponent = digits(end + 1 + sign);
             if exponent > 0 {
                 end += 1 + sign + exponent;
-                if end > LONGEST_LITERAL || rest[mantissa + 1..end].parse::<i64>().is_ok_and(|e| e.abs() > LARGEST_EXPONENT) || exponent > 6 {
+                if end > LONGEST_LITERAL
+                    || rest[mantissa + 1..end].parse::<i64>().is_ok_and(|e| e.abs() > LARGEST_EXPONENT)
+                    || exponent > 6
+                {
                     return self.too_large(end);
                 }
             } else if sign == 1 || !rest[end + 1..].starts_with(is_name_part) {
@@ -231,7 +250,13 @@ impl Scanner<'_> {
         let message = format!(
             "this number cannot be kept exactly: exponents go to ±{LARGEST_EXPONENT}, digits to {LONGEST_LITERAL}"
         );
-        self.report(codes::NUMBER_TOO_LARGE, 0, end, message, "choose units in which the number is of ordinary size");
+        self.report(
+            codes::NUMBER_TOO_LARGE,
+            0,
+            end,
+            message,
+            "choose units in which the number is of ordinary size",
+        );
     }
 
     fn comma(&mut self, end: usize, whole: usize) {
@@ -249,7 +274,9 @@ impl Scanner<'_> {
 
     fn joined(&mut self, end: usize) {
         let rest = &self.text[self.at..];
-        let word = rest[end..].find(|letter: char| !is_name_part(letter) && letter != '°').map_or(rest.len(), |length| end + length);
+        let word = rest[end..]
+            .find(|letter: char| !is_name_part(letter) && letter != '°')
+            .map_or(rest.len(), |length| end + length);
         let (number, name) = (&rest[..end], &rest[end..word]);
         let remedy = if name.starts_with('_') {
             format!("digits are not grouped; write `{}`", rest[..word].replace('_', ""))
@@ -276,5 +303,7 @@ impl Scanner<'_> {
 
 /// Whether a letter can stand in a name after its first.
 fn is_name_part(letter: char) -> bool {
-    letter == '_' || ('₀'..='₉').contains(&letter) || (letter != 'Δ' && letter != '·' && unicode_ident::is_xid_continue(letter))
+    letter == '_'
+        || ('₀'..='₉').contains(&letter)
+        || (letter != 'Δ' && letter != '·' && unicode_ident::is_xid_continue(letter))
 }

@@ -10,6 +10,8 @@ fn look() {
         let source = SourceFile::from_bytes(path, std::fs::read(path).unwrap());
         let (file, faults) = syntax::parse(&source);
         println!("{}\n{}", render(&faults, &source, Colour::Plain), file.faulty.len());
-        if std::env::var("TREE").is_ok() { println!("{file:#?}"); }
+        if std::env::var("TREE").is_ok() {
+            println!("{file:#?}");
+        }
     }
 }

@@ -48,13 +48,21 @@ impl Reader<'_> {
             match part.as_rule() {
                 Rule::name => of = Some(self.word(&part)),
                 Rule::bracket => of = Some(self.bracket(part)),
-                Rule::trap_power => self.report_power(part.as_str().trim(), span, of.as_ref(), whole, above.is_some()),
+                Rule::trap_power => {
+                    self.report_power(part.as_str().trim(), span, of.as_ref(), whole, above.is_some())
+                }
                 Rule::variables => below = Some(self.variables(part)),
                 Rule::trap_bracket => {
                     let bracket = self.excerpt(span);
-                    let fault = Diagnostic::error(codes::DERIVATIVE_APPLIED, span, "a derivative stands before a bracket")
-                        .with_text("is this a factor, or what the derivative is taken of?")
-                        .with_remedy(format!("write `∂u/∂x * {bracket}` for a product, `∂/∂x{bracket}` for the derivative of it"));
+                    let fault = Diagnostic::error(
+                        codes::DERIVATIVE_APPLIED,
+                        span,
+                        "a derivative stands before a bracket",
+                    )
+                    .with_text("is this a factor, or what the derivative is taken of?")
+                    .with_remedy(format!(
+                        "write `∂u/∂x * {bracket}` for a product, `∂/∂x{bracket}` for the derivative of it"
+                    ));
                     self.diagnostics.push(fault);
                 }
                 _ => {}
@@ -125,7 +133,13 @@ impl Reader<'_> {
             Some(order) => order,
             None => {
                 let message = format!("`{}` is no order of a derivative", pair.as_str().trim());
-                self.report(codes::DERIVATIVE_RANGE, span, message, "", format!("orders are 1 to {HIGHEST_ORDER}"));
+                self.report(
+                    codes::DERIVATIVE_RANGE,
+                    span,
+                    message,
+                    "",
+                    format!("orders are 1 to {HIGHEST_ORDER}"),
+                );
                 1
             }
         }
@@ -135,7 +149,13 @@ impl Reader<'_> {
         let total = below.variables.iter().fold(0u32, |total, variable| total.saturating_add(variable.power));
         if above > HIGHEST_ORDER || total > HIGHEST_ORDER {
             let message = format!("derivatives have orders 1 to {HIGHEST_ORDER}, not {}", above.max(total));
-            self.report(codes::DERIVATIVE_RANGE, span, message, "", "write it as derivatives of a further field");
+            self.report(
+                codes::DERIVATIVE_RANGE,
+                span,
+                message,
+                "",
+                "write it as derivatives of a further field",
+            );
             return;
         }
         if above == total {
@@ -145,7 +165,9 @@ impl Reader<'_> {
         let remedy = match below.variables.as_slice() {
             [only] if above == 1 => {
                 let (name, order) = (&only.name.text, raised_order(only.power));
-                format!("write `∂{order}{of}/∂{name}{order}` for the derivative of order {total}, `(∂{of}/∂{name})^{total}` for the power")
+                format!(
+                    "write `∂{order}{of}/∂{name}{order}` for the derivative of order {total}, `(∂{of}/∂{name})^{total}` for the power"
+                )
             }
             [only] => {
                 let (name, order) = (&only.name.text, raised_order(above));

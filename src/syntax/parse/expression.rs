@@ -9,7 +9,8 @@ use crate::exact::Rational;
 use crate::source::Span;
 use crate::syntax::names::{lowered, subscript_derivative};
 use crate::syntax::tree::{
-    Branch, Comparison, Expression, ExpressionKind, Factor, Function, Operation, Relation, Section, Sign, Term,
+    Branch, Comparison, Expression, ExpressionKind, Factor, Function, Operation, Relation, Section, Sign,
+    Term,
 };
 
 /// A product and whether a minus sign stands before it.
@@ -97,7 +98,14 @@ impl Reader<'_> {
     }
 
     /// Adds a factor to a product; `before` and `written` are the texts of the last and of this one.
-    fn factor(&mut self, factors: &mut Vec<Factor>, operation: &str, before: &str, written: &str, value: Expression) {
+    fn factor(
+        &mut self,
+        factors: &mut Vec<Factor>,
+        operation: &str,
+        before: &str,
+        written: &str,
+        value: Expression,
+    ) {
         if operation == "/" {
             self.refuse_quotient(before, written, factors, &value);
             factors.push(Factor { operation: Operation::Over, value });
@@ -119,7 +127,8 @@ impl Reader<'_> {
     fn refuse_quotient(&mut self, before: &str, written: &str, factors: &[Factor], value: &Expression) {
         let Some(last) = factors.last() else { return };
         let plain = before.trim_start().starts_with(|letter: char| letter.is_ascii_digit() || letter == '.');
-        let quantity = written.trim_start().starts_with(|letter: char| letter.is_ascii_digit() || letter == '.');
+        let quantity =
+            written.trim_start().starts_with(|letter: char| letter.is_ascii_digit() || letter == '.');
         if let (ExpressionKind::Number(above), ExpressionKind::Quantity { value: below, unit }) =
             (&last.value.kind, &value.kind)
             && plain
@@ -138,7 +147,9 @@ impl Reader<'_> {
                 "is the unit above or below the line?",
                 format!("write `{above} {unit} / {number}`{decimal}, or `{above} / ({number} {unit})`"),
             );
-        } else if let (ExpressionKind::Name(above), ExpressionKind::Name(below)) = (&last.value.kind, &value.kind) {
+        } else if let (ExpressionKind::Name(above), ExpressionKind::Name(below)) =
+            (&last.value.kind, &value.kind)
+        {
             let (above, below) = (above.clone(), below.clone());
             self.refuse_plain_derivative(&above, &below, last.value.span.to(value.span));
         }
@@ -146,7 +157,9 @@ impl Reader<'_> {
 
     /// `du/dx` where neither is declared but `u` and `x` are.
     fn refuse_plain_derivative(&mut self, above: &str, below: &str, span: Span) {
-        let (Some(field), Some(variable)) = (above.strip_prefix('d'), below.strip_prefix('d')) else { return };
+        let (Some(field), Some(variable)) = (above.strip_prefix('d'), below.strip_prefix('d')) else {
+            return;
+        };
         let known = self.declared.section(field) == Some(Section::Fields)
             && (variable == "t" || self.declared.section(variable) == Some(Section::Axes))
             && self.declared.section(above).is_none()
@@ -164,10 +177,14 @@ impl Reader<'_> {
         let message = format!("nothing stands between `{left}` and `{right}`");
         let remedy = match (&before.kind, &after.kind) {
             (ExpressionKind::Quantity { .. }, ExpressionKind::Name(_)) if !self.is_declared(after) => {
-                format!("a unit has no space in it: write `{left}·{right}`; a product of names is `{left} * {right}`")
+                format!(
+                    "a unit has no space in it: write `{left}·{right}`; a product of names is `{left} * {right}`"
+                )
             }
             (_, ExpressionKind::Name(name)) if !self.is_declared(after) => {
-                format!("a unit follows a number literal only: write `{left} * 1 {name}`; a product is `{left} * {right}`")
+                format!(
+                    "a unit follows a number literal only: write `{left} * 1 {name}`; a product is `{left} * {right}`"
+                )
             }
             _ => format!("write `{left} * {right}`"),
         };
@@ -221,15 +238,34 @@ impl Reader<'_> {
             self.report_chain(span, &written, &base, &exponents);
         }
         let Some((text, exponent)) = exponents.into_iter().next() else { return base };
-        if matches!(base.kind, ExpressionKind::Quantity { .. }) && !self.source.slice(base.span).starts_with('(') {
+        if matches!(base.kind, ExpressionKind::Quantity { .. })
+            && !self.source.slice(base.span).starts_with('(')
+        {
             let quantity = self.excerpt(base.span);
-            let remedy = format!("write `({quantity}){text}` for the power of the quantity, `{quantity}{text}` without a space for that of the unit");
-            self.report(codes::POWER_OF_QUANTITY, span, "is the number raised too, or the unit alone?", "", remedy);
+            let remedy = format!(
+                "write `({quantity}){text}` for the power of the quantity, `{quantity}{text}` without a space for that of the unit"
+            );
+            self.report(
+                codes::POWER_OF_QUANTITY,
+                span,
+                "is the number raised too, or the unit alone?",
+                "",
+                remedy,
+            );
         }
-        Expression { kind: ExpressionKind::Power { base: Box::new(base), exponent: Box::new(exponent) }, span }
+        Expression {
+            kind: ExpressionKind::Power { base: Box::new(base), exponent: Box::new(exponent) },
+            span,
+        }
     }
 
-    fn report_chain(&mut self, span: Span, written: &str, base: &Expression, exponents: &[(String, Expression)]) {
+    fn report_chain(
+        &mut self,
+        span: Span,
+        written: &str,
+        base: &Expression,
+        exponents: &[(String, Expression)],
+    ) {
         let base = self.excerpt(base.span);
         let tail: String = exponents.iter().skip(1).map(|(text, _)| text.as_str()).collect();
         let first = &exponents[0].0;
@@ -240,7 +276,13 @@ impl Reader<'_> {
             format!("write `({base}{first}){tail}`")
         };
         let message = format!("`{}` can be read in two ways", excerpt(written, 40));
-        self.report(codes::POWER_CHAIN, span, message, "a power of a power needs a bracket", excerpt(&readings, 120));
+        self.report(
+            codes::POWER_CHAIN,
+            span,
+            message,
+            "a power of a power needs a bracket",
+            excerpt(&readings, 120),
+        );
     }
 
     fn exponent(&mut self, pair: Pair<'_, Rule>) -> Expression {
@@ -252,7 +294,13 @@ impl Reader<'_> {
             match part.as_rule() {
                 Rule::superscript => {
                     let number = lowered(part.as_str()).unwrap_or_else(|| {
-                        self.report(codes::NUMBER_TOO_LARGE, span, "this exponent is too large", "", "write a smaller one");
+                        self.report(
+                            codes::NUMBER_TOO_LARGE,
+                            span,
+                            "this exponent is too large",
+                            "",
+                            "write a smaller one",
+                        );
                         1
                     });
                     let magnitude = Rational::from(number.saturating_abs());
@@ -304,7 +352,9 @@ impl Reader<'_> {
         let ExpressionKind::Name(name) = &value.kind else { return };
         let coordinate = name == "t" || self.declared.section(name) == Some(Section::Axes);
         if sign == "Δ" && coordinate {
-            let remedy = format!("`Δ` is the Laplace operator and stands in no name; call a step `d{name}` or the like");
+            let remedy = format!(
+                "`Δ` is the Laplace operator and stands in no name; call a step `d{name}` or the like"
+            );
             let message = format!("`Δ{name}` is the Laplace operator applied to a coordinate");
             self.report(codes::DELTA_IN_NAME, place.to(value.span), message, "", remedy);
         }
@@ -350,7 +400,10 @@ impl Reader<'_> {
 
     /// All formulas directly within a rule.
     pub(super) fn formulas(&mut self, pair: Pair<'_, Rule>) -> Vec<Expression> {
-        pair.into_inner().filter(|part| part.as_rule() == Rule::formula).map(|part| self.formula(part)).collect()
+        pair.into_inner()
+            .filter(|part| part.as_rule() == Rule::formula)
+            .map(|part| self.formula(part))
+            .collect()
     }
 
     pub(super) fn word(&mut self, pair: &Pair<'_, Rule>) -> Expression {
@@ -362,11 +415,20 @@ impl Reader<'_> {
             let function = function.name();
             let remedy = format!("write `{function}(x)`; a power of it is `{function}(x)^2`");
             let message = format!("the function `{function}` stands without its argument");
-            self.report(codes::FUNCTION_WITHOUT_BRACKET, name.span, message, "expected a bracket after it", remedy);
+            self.report(
+                codes::FUNCTION_WITHOUT_BRACKET,
+                name.span,
+                message,
+                "expected a bracket after it",
+                remedy,
+            );
         } else if self.declared.section(&name.text).is_none() {
             let (fields, axes) = (self.declared.of(Section::Fields), self.declared.of(Section::Axes));
             if let Some(derivative) = subscript_derivative(&name.text, &fields, &axes) {
-                let message = format!("`{}` is a name that is not declared; a derivative is written as a fraction", name.text);
+                let message = format!(
+                    "`{}` is a name that is not declared; a derivative is written as a fraction",
+                    name.text
+                );
                 self.report(codes::INDEX_DERIVATIVE, name.span, message, "", format!("write `{derivative}`"));
             }
         }
@@ -375,7 +437,8 @@ impl Reader<'_> {
 
     fn call(&mut self, pair: Pair<'_, Rule>) -> Expression {
         let span = self.span(&pair);
-        let name = pair.clone().into_inner().find(|part| part.as_rule() == Rule::name).map(|part| self.name(&part));
+        let name =
+            pair.clone().into_inner().find(|part| part.as_rule() == Rule::name).map(|part| self.name(&part));
         let arguments = self.formulas(pair);
         let Some(name) = name else { return nothing(span) };
         if let Some(function) = Function::from_name(&name.text) {
@@ -398,7 +461,8 @@ impl Reader<'_> {
         if (several && given >= 2) || (!several && given == 1) {
             return;
         }
-        let (wanted, example) = if several { ("two arguments or more", "(a, b)") } else { ("one argument", "(a)") };
+        let (wanted, example) =
+            if several { ("two arguments or more", "(a, b)") } else { ("one argument", "(a)") };
         let message = format!("`{}` takes {wanted}, not {given}", function.name());
         self.report(codes::ARGUMENTS, span, message, "", format!("write `{}{example}`", function.name()));
     }
@@ -410,7 +474,9 @@ impl Reader<'_> {
         let remedy = match section {
             Some(Section::Operators) => return,
             Some(Section::Coefficients) => {
-                format!("write `{name}` alone (its arguments are fixed where it is declared), or `{name} * (…)` for a product")
+                format!(
+                    "write `{name}` alone (its arguments are fixed where it is declared), or `{name} * (…)` for a product"
+                )
             }
             None if name != "t" && name != "π" => return,
             _ => format!("write `{name} * (…)` if a product is meant"),

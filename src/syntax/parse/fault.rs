@@ -10,7 +10,13 @@ use crate::syntax::fold::Folded;
 const MOST_LISTED: usize = 6;
 
 /// The diagnostic for a statement (at `offset` of the folded text) that an entry rule does not match.
-pub(super) fn diagnostic(error: &Error<Rule>, rule: Rule, text: &str, offset: usize, folded: &Folded) -> Diagnostic {
+pub(super) fn diagnostic(
+    error: &Error<Rule>,
+    rule: Rule,
+    text: &str,
+    offset: usize,
+    folded: &Folded,
+) -> Diagnostic {
     let place = match error.location {
         InputLocation::Pos(place) => place,
         InputLocation::Span((place, _)) => place,
@@ -58,17 +64,21 @@ fn next_word(text: &str) -> &str {
 /// Slips that are recognised by where the parser stopped.
 fn known_slip(rule: Rule, text: &str, place: usize, offset: usize, folded: &Folded) -> Option<Diagnostic> {
     let rest = &text[place..];
-    let declares = matches!(rule, Rule::constant | Rule::coefficient | Rule::field | Rule::axis | Rule::operator);
+    let declares =
+        matches!(rule, Rule::constant | Rule::coefficient | Rule::field | Rule::axis | Rule::operator);
     if declares && text.starts_with('Δ') {
         let length = "Δ".len() + next_word(&text["Δ".len()..]).len();
         let name = &text["Δ".len()..length];
-        let message = format!("`{}` cannot be a name: `Δ` is the Laplace operator", excerpt(&text[..length], 30));
+        let message =
+            format!("`{}` cannot be a name: `Δ` is the Laplace operator", excerpt(&text[..length], 30));
         return Some(
             Diagnostic::error(codes::DELTA_IN_NAME, folded.original(offset, offset + length), message)
                 .with_remedy(format!("choose another name, such as `d{name}`")),
         );
     }
-    if rest.starts_with('=') && matches!(rule, Rule::constant | Rule::coefficient | Rule::operator | Rule::output) {
+    if rest.starts_with('=')
+        && matches!(rule, Rule::constant | Rule::coefficient | Rule::operator | Rule::output)
+    {
         let before = text[..place].contains('=');
         return before.then(|| {
             let remedy = if text[..place].contains('\n') || text.contains("  ") {
@@ -77,7 +87,8 @@ fn known_slip(rule: Rule, text: &str, place: usize, offset: usize, folded: &Fold
                 "write one definition a line"
             };
             let span = folded.original(offset + place, offset + place + 1);
-            Diagnostic::error(codes::SECOND_EQUALS, span, "a second `=` in one definition").with_remedy(remedy)
+            Diagnostic::error(codes::SECOND_EQUALS, span, "a second `=` in one definition")
+                .with_remedy(remedy)
         });
     }
     None
@@ -88,7 +99,10 @@ fn hint(rule: Rule, text: &str, place: usize) -> Option<String> {
     let before = text[..place].trim_end();
     let rest = &text[place..];
     if rule == Rule::equation && !text.contains('=') {
-        return Some("an equation is an equality; a single word that opens a section stands at the start of its line".into());
+        return Some(
+            "an equation is an equality; a single word that opens a section stands at the start of its line"
+                .into(),
+        );
     }
     if let Some(at) = before.rfind('∂') {
         let above = &before[at + '∂'.len_utf8()..];
@@ -134,7 +148,9 @@ fn rule_words(rule: Rule) -> String {
         Rule::text => "a text in quotes",
         Rule::unit | Rule::unit_factor | Rule::unit_symbol | Rule::unit_one => "a unit",
         Rule::EOI => "the end of the statement",
-        Rule::additive | Rule::multiplicative | Rule::exponent | Rule::superscript | Rule::unit_operation => "an operator",
+        Rule::additive | Rule::multiplicative | Rule::exponent | Rule::superscript | Rule::unit_operation => {
+            "an operator"
+        }
         Rule::relation => "a comparison such as `<`",
         Rule::formula
         | Rule::product
@@ -198,12 +214,18 @@ fn form(rule: Rule) -> &'static str {
     match rule {
         Rule::header => "the first line is `model NAME \"TITLE\"`",
         Rule::axis => "an axis is `x: A to B, N nodes`, then perhaps `periodic`",
-        Rule::constant => "a constant is `NAME = VALUE UNIT`, then perhaps `, free` and a description in quotes",
-        Rule::coefficient => "a coefficient is `k(x, y) in UNIT = FORMULA`, or `k in UNIT on x from \"FILE\"`",
+        Rule::constant => {
+            "a constant is `NAME = VALUE UNIT`, then perhaps `, free` and a description in quotes"
+        }
+        Rule::coefficient => {
+            "a coefficient is `k(x, y) in UNIT = FORMULA`, or `k in UNIT on x from \"FILE\"`"
+        }
         Rule::field => "a field is `NAME in UNIT on x, y`, then perhaps `between A and B`",
         Rule::operator => "an operator is `NAME(f) = FORMULA`, then perhaps `with order N`",
         Rule::equation => "an equation is `FORMULA = FORMULA`",
-        Rule::conditions => "a condition is `at x = low: FORMULA = FORMULA`; places are also `every edge` and `t = start`",
+        Rule::conditions => {
+            "a condition is `at x = low: FORMULA = FORMULA`; places are also `every edge` and `t = start`"
+        }
         Rule::accuracy => "an accuracy is `order N`, `interior order N`, `order N in x` or `closures FAMILY`",
         Rule::time => "a line on time is `A to B`, `method NAME`, `step DURATION` or `step F of limit`",
         Rule::output => {

@@ -70,7 +70,12 @@ fn leading_name(section: Section, text: &str) -> Option<&str> {
 }
 
 /// Reads all statements of a cut file.
-pub(super) fn read(source: &SourceFile, folded: &Folded, cut: Cut, diagnostics: &mut Diagnostics) -> ModelFile {
+pub(super) fn read(
+    source: &SourceFile,
+    folded: &Folded,
+    cut: Cut,
+    diagnostics: &mut Diagnostics,
+) -> ModelFile {
     static LIMIT: Once = Once::new();
     LIMIT.call_once(|| pest::set_call_limit(NonZeroUsize::new(CALL_LIMIT)));
 
@@ -81,7 +86,14 @@ pub(super) fn read(source: &SourceFile, folded: &Folded, cut: Cut, diagnostics: 
             report_too_many(folded, statement, diagnostics);
             break;
         }
-        let mut reader = Reader { source, folded, declared: &declared, offset: statement.start, diagnostics, file: &mut file };
+        let mut reader = Reader {
+            source,
+            folded,
+            declared: &declared,
+            offset: statement.start,
+            diagnostics,
+            file: &mut file,
+        };
         reader.statement(place, statement);
     }
     if file.header.is_none() && !diagnostics.has(codes::NO_HEADER) && diagnostics.len() < MOST_FAULTS {
@@ -100,8 +112,12 @@ fn no_header(span: Span) -> Diagnostic {
 fn report_too_many(folded: &Folded, statement: &Statement, diagnostics: &mut Diagnostics) {
     let span = folded.original(statement.start, statement.end);
     diagnostics.push(
-        Diagnostic::error(codes::TOO_MANY_FAULTS, span, format!("more than {MOST_FAULTS} faults; the rest is not read"))
-            .with_remedy("is this a model file?"),
+        Diagnostic::error(
+            codes::TOO_MANY_FAULTS,
+            span,
+            format!("more than {MOST_FAULTS} faults; the rest is not read"),
+        )
+        .with_remedy("is this a model file?"),
     );
 }
 
@@ -120,8 +136,9 @@ impl Reader<'_> {
     fn statement(&mut self, place: usize, statement: &Statement) {
         let raw = &self.folded.text[statement.start..statement.end];
         let text = blanked(raw);
-        let is_header = text.strip_prefix("model").is_some_and(|rest| rest.starts_with([' ', '"']) || rest.is_empty())
-            && !text[5..].trim_start().starts_with('=');
+        let is_header =
+            text.strip_prefix("model").is_some_and(|rest| rest.starts_with([' ', '"']) || rest.is_empty())
+                && !text[5..].trim_start().starts_with('=');
         if is_header {
             if place == 0 {
                 return self.read(Rule::header, &text, statement);
@@ -150,7 +167,9 @@ impl Reader<'_> {
             self.diagnostics.push(
                 Diagnostic::error(codes::OUTSIDE_SECTION, span, "this statement stands in no section")
                     .with_text("before the first section word")
-                    .with_remedy("put a section word alone on a line above it, such as `axes` or `constants`"),
+                    .with_remedy(
+                        "put a section word alone on a line above it, such as `axes` or `constants`",
+                    ),
             );
         }
     }
@@ -202,7 +221,14 @@ impl Reader<'_> {
         self.folded.original(self.offset + span.start(), self.offset + end)
     }
 
-    fn report(&mut self, code: Code, span: Span, message: impl Into<String>, text: &str, remedy: impl Into<String>) {
+    fn report(
+        &mut self,
+        code: Code,
+        span: Span,
+        message: impl Into<String>,
+        text: &str,
+        remedy: impl Into<String>,
+    ) {
         self.diagnostics.push(Diagnostic::error(code, span, message).with_text(text).with_remedy(remedy));
     }
 
@@ -308,8 +334,19 @@ impl ModelFile {
 
     /// Takes back what a statement that turned out faulty has added.
     fn truncate(&mut self, lengths: &Lengths) {
-        let [axes, constants, coefficients, fields, operators, equations, conditions, accuracy, time, outputs, verification] =
-            lengths.0;
+        let [
+            axes,
+            constants,
+            coefficients,
+            fields,
+            operators,
+            equations,
+            conditions,
+            accuracy,
+            time,
+            outputs,
+            verification,
+        ] = lengths.0;
         self.axes.truncate(axes);
         self.constants.truncate(constants);
         self.coefficients.truncate(coefficients);

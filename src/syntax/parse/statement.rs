@@ -7,9 +7,9 @@ use crate::diagnostic::codes;
 use crate::source::Span;
 use crate::syntax::tree::{
     AccuracyKind, AccuracyLine, Axis, AxisProperty, AxisPropertyKind, Bounds, ClosureFamily, Coefficient,
-    CoefficientValue, Condition, Constant, Coordinate, Count, Counted, Covering, End, Equation, Expression, Extent,
-    Field, GaugeRange, Header, Name, Operator, OrderOf, OutputKind, OutputLine, Place, PlaceKind, TimeKind, TimeLine,
-    VerificationKind, VerificationLine, Whole,
+    CoefficientValue, Condition, Constant, Coordinate, Count, Counted, Covering, End, Equation, Expression,
+    Extent, Field, GaugeRange, Header, Name, Operator, OrderOf, OutputKind, OutputLine, Place, PlaceKind,
+    TimeKind, TimeLine, VerificationKind, VerificationLine, Whole,
 };
 
 /// The parts of a statement by rule, so that optional ones can be asked for.
@@ -47,7 +47,8 @@ impl Reader<'_> {
             Rule::equation => self.equation(&parts, span),
             Rule::conditions => self.conditions(&parts),
             Rule::accuracy => {
-                let lines = parts.first(Rule::clauses).map(|clauses| self.clauses(clauses)).unwrap_or_default();
+                let lines =
+                    parts.first(Rule::clauses).map(|clauses| self.clauses(clauses)).unwrap_or_default();
                 self.file.accuracy.extend(lines);
             }
             Rule::time => self.time(&parts, span),
@@ -173,7 +174,8 @@ impl Reader<'_> {
                 covering.push(Covering { axis, low, high, span });
             }
         }
-        let interpolated = parts.first(Rule::interpolated).and_then(|word| self.names(word).into_iter().next());
+        let interpolated =
+            parts.first(Rule::interpolated).and_then(|word| self.names(word).into_iter().next());
         CoefficientValue::Data { file, covering, interpolated }
     }
 
@@ -189,7 +191,13 @@ impl Reader<'_> {
         }
         if let Some(second) = parts.all(Rule::bounds).nth(1) {
             let span = self.span(&second);
-            self.report(codes::UNEXPECTED, span, "the bounds of a field are given twice", "again here", "remove one of them");
+            self.report(
+                codes::UNEXPECTED,
+                span,
+                "the bounds of a field are given twice",
+                "again here",
+                "remove one of them",
+            );
         }
         let bounds = parts.first(Rule::bounds).map(|bounds| self.bounds(bounds));
         let description = parts.first(Rule::text).map(|text| self.text(&text));
@@ -248,7 +256,8 @@ impl Reader<'_> {
                 }
             } else if let Some(equality) = inner.first(Rule::equality) {
                 if places.is_empty() || !stated {
-                    let remedy = "write the place first: `at x = low: …`, `at every edge: …` or `at t = start: …`";
+                    let remedy =
+                        "write the place first: `at x = low: …`, `at every edge: …` or `at t = start: …`";
                     self.report(codes::NO_PLACE, span, "this condition says not where it holds", "", remedy);
                 }
                 stated = true;
@@ -258,14 +267,25 @@ impl Reader<'_> {
         if !stated && let Some(place) = places.last() {
             let span = place.span;
             let remedy = "write `:` and an equality after it";
-            self.report(codes::UNEXPECTED, span, "nothing is said to hold at this place", "expected `:` after it", remedy);
+            self.report(
+                codes::UNEXPECTED,
+                span,
+                "nothing is said to hold at this place",
+                "expected `:` after it",
+                remedy,
+            );
         }
     }
 
     fn condition(&mut self, equality: Pair<'_, Rule>, places: &[Place], span: Span) {
         let (left, right) = self.equality(equality);
         for place in places {
-            self.file.conditions.push(Condition { place: place.clone(), left: left.clone(), right: right.clone(), span });
+            self.file.conditions.push(Condition {
+                place: place.clone(),
+                left: left.clone(),
+                right: right.clone(),
+                span,
+            });
         }
     }
 
@@ -319,7 +339,8 @@ impl Reader<'_> {
             let strength = dissipation.first(Rule::strength).map(|strength| self.first_formula(strength));
             AccuracyKind::Dissipation { order, strength }
         } else {
-            let family = parts.first(Rule::closures).and_then(|closures| Parts::of(closures).first(Rule::family));
+            let family =
+                parts.first(Rule::closures).and_then(|closures| Parts::of(closures).first(Rule::family));
             AccuracyKind::Closures(match family.map(|family| family.as_str().trim()) {
                 Some("one-sided") => ClosureFamily::OneSided,
                 Some("mirrored") => ClosureFamily::Mirrored,

@@ -36,10 +36,15 @@ impl Reader<'_> {
     /// A word after a number can only be a unit; where it is also a declared name there are two readings.
     fn refuse_declared(&mut self, number: &str, unit: &Unit) {
         for factor in &unit.factors {
-            let Some(section) = self.declared.section(&crate::syntax::names::canonical(&factor.symbol)) else { continue };
+            let Some(section) = self.declared.section(&crate::syntax::names::canonical(&factor.symbol))
+            else {
+                continue;
+            };
             let symbol = &factor.symbol;
             let product = match unit.spelling.strip_prefix(symbol.as_str()) {
-                Some(rest) => format!("write `{number} * {symbol}{rest}` if the name is meant; for the unit rename `{symbol}`"),
+                Some(rest) => format!(
+                    "write `{number} * {symbol}{rest}` if the name is meant; for the unit rename `{symbol}`"
+                ),
                 None => format!("put signs and spaces around the name, or rename `{symbol}`"),
             };
             let fault = Diagnostic::error(
@@ -88,7 +93,13 @@ impl Reader<'_> {
                 Rule::unit_operation if part.as_str() == "/" => {
                     sign = -outer;
                     let remedy = "give the factor after this `/` a negative exponent, as in `m·s^-1`";
-                    self.report(codes::UNIT_DIVISION, span, "a bracket in a unit holds products only", "", remedy);
+                    self.report(
+                        codes::UNIT_DIVISION,
+                        span,
+                        "a bracket in a unit holds products only",
+                        "",
+                        remedy,
+                    );
                 }
                 Rule::unit_factor => factors.extend(self.unit_factor(part, sign)),
                 _ => {}
@@ -122,7 +133,11 @@ impl Reader<'_> {
             None => Rational::from(1),
             Some(part) => self.unit_exponent(&part),
         };
-        Some(UnitFactor { symbol: symbol.as_str().to_string(), exponent: exponent * Rational::from(sign), span })
+        Some(UnitFactor {
+            symbol: symbol.as_str().to_string(),
+            exponent: exponent * Rational::from(sign),
+            span,
+        })
     }
 
     fn unit_exponent(&mut self, pair: &Pair<'_, Rule>) -> Rational {
