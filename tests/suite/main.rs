@@ -2,6 +2,7 @@
 
 mod exactness;
 mod layering;
+mod limits;
 mod lowering;
 mod published;
 mod reference;
