@@ -3,7 +3,11 @@
 /// `text` with control characters, line separators and characters that reorder text escaped.
 pub fn safe(text: &str) -> String {
     text.chars().fold(String::with_capacity(text.len()), |mut safe, letter| {
-        if is_unsafe(letter) { safe.extend(letter.escape_unicode()) } else { safe.push(letter) }
+        if is_unsafe(letter) {
+            safe.extend(letter.escape_unicode())
+        } else {
+            safe.push(letter)
+        }
         safe
     })
 }

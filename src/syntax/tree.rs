@@ -207,7 +207,11 @@ pub struct Coefficient {
 pub enum CoefficientValue {
     Formula(Expression),
     /// `from "file"`, with `covering x: A to B, …` and `interpolated linear`.
-    Data { file: Text, covering: Vec<Covering>, interpolated: Option<Name> },
+    Data {
+        file: Text,
+        covering: Vec<Covering>,
+        interpolated: Option<Name>,
+    },
 }
 
 /// `x: A to B` of a data file's grid.
@@ -434,7 +438,10 @@ pub enum ExpressionKind {
     /// A literal without a unit. The literal 0 takes any dimension.
     Number(Rational),
     /// `0.72 W/(m·K)`; the value is in the unit as written.
-    Quantity { value: Rational, unit: Unit },
+    Quantity {
+        value: Rational,
+        unit: Unit,
+    },
     Pi,
     /// Any other name, `t` included, in canonical spelling.
     Name(String),
@@ -443,12 +450,24 @@ pub enum ExpressionKind {
     /// At least two factors, from left to right; the first is never divided by.
     Product(Vec<Factor>),
     Negate(Box<Expression>),
-    Power { base: Box<Expression>, exponent: Box<Expression> },
+    Power {
+        base: Box<Expression>,
+        exponent: Box<Expression>,
+    },
     /// A function of the closed list, with at least one argument.
-    Call { function: Function, arguments: Vec<Expression> },
+    Call {
+        function: Function,
+        arguments: Vec<Expression>,
+    },
     /// A name before a bracket that is no function: a named operator, or a fault for `check` to tell.
-    Apply { operator: Name, arguments: Vec<Expression> },
-    Cases { branches: Vec<Branch>, otherwise: Box<Expression> },
+    Apply {
+        operator: Name,
+        arguments: Vec<Expression>,
+    },
+    Cases {
+        branches: Vec<Branch>,
+        otherwise: Box<Expression>,
+    },
     /// `noise(seed N)`.
     Noise(Whole),
     /// `δ(EXPR)`.
