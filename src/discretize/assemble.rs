@@ -3,24 +3,34 @@
 //! The three moves at a face are those of the summation-by-parts identity: a given flux replaces the boundary flux, the
 //! flux of the upwind state replaces that of the inside, a given value is set. Deriving weights is not done here.
 
+use super::NotAvailable;
 use super::choose::{AxisPlan, plan_axes};
 use super::face;
 use super::split::split_first;
-use super::NotAvailable;
 use crate::exact::Rational;
 use crate::model::calculus::{DerivativeTerm, dependence, derivative_terms};
-use crate::model::expression::DerivativeKind;
+use crate::model::expression::{Derivative, DerivativeKind};
 use crate::model::{AxisId, Equation, Expression, FieldId, Model};
 use crate::scheme::{Application, OperatorRule, Scheme, SchemeAxis, SchemeOperator};
 
 /// Discretizes a model in space.
 pub fn assemble(model: &Model) -> Result<Scheme, Vec<NotAvailable>> {
     let plans = plan_axes(model)?;
-    let mut assembly = Assembly { model, plans: &plans, operators: Vec::new(), applications: Vec::new(), choices: Vec::new() };
+    let mut assembly = Assembly {
+        model,
+        plans: &plans,
+        operators: Vec::new(),
+        applications: Vec::new(),
+        choices: Vec::new(),
+    };
     assembly.choices.extend(plans.iter().zip(&model.axes).map(|(plan, axis)| plan.describe(axis)));
     let mut rates = Vec::new();
     for equation in &model.equations {
         rates.push(assembly.rate(equation)?);
+    }
+    let mut outputs = Vec::new();
+    for output in &model.outputs {
+        outputs.push(assembly.replace(&observed(&output.value))?);
     }
     let corrections = face::corrections(model, &plans);
     let injections = face::injections(model);
@@ -36,7 +46,7 @@ pub fn assemble(model: &Model) -> Result<Scheme, Vec<NotAvailable>> {
             solution_order: plan.solution_order,
         })
         .collect();
-    Ok(Scheme { axes, operators, applications, rates, corrections, injections, choices })
+    Ok(Scheme { axes, operators, applications, rates, outputs, corrections, injections, choices })
 }
 
 /// Operators and applications found so far.
@@ -115,8 +125,12 @@ impl Assembly<'_> {
             DerivativeKind::Higher { axis, degree, of } => {
                 let of = self.replace(of)?;
                 let plan = &self.plans[axis.0];
-                let operator = super::interior::periodic(*degree, plan.interior_order())?;
-                let name = format!("derivative_{degree}_{}_order_{}", self.model.axes[axis.0].name, plan.interior_order());
+                let operator = super::centred::operator(*degree, plan.interior_order())?;
+                let name = format!(
+                    "derivative_{degree}_{}_order_{}",
+                    self.model.axes[axis.0].name,
+                    plan.interior_order()
+                );
                 let applied = self.applied(name, OperatorRule::Centred(operator), *axis, of, None);
                 Ok(applied.times(scale(*axis, *degree)))
             }
@@ -133,7 +147,12 @@ impl Assembly<'_> {
         Ok(Expression::product([outside, applied, scale(axis, 1)]))
     }
 
-    fn second(&mut self, axis: AxisId, coefficient: Expression, of: Expression) -> Result<Expression, Vec<NotAvailable>> {
+    fn second(
+        &mut self,
+        axis: AxisId,
+        coefficient: Expression,
+        of: Expression,
+    ) -> Result<Expression, Vec<NotAvailable>> {
         let plan = &self.plans[axis.0];
         let (outside, of) = self.constant_factors(of);
         let found = dependence(&coefficient, &self.model.coefficients);
@@ -146,7 +165,8 @@ impl Assembly<'_> {
         }
         let rule = plan.varying_second_derivative()?;
         let (factor, coefficient) = self.constant_factors(coefficient);
-        let applied = self.applied(format!("varying_second_{name}_order_{order}"), rule, axis, of, Some(coefficient));
+        let applied =
+            self.applied(format!("varying_second_{name}_order_{order}"), rule, axis, of, Some(coefficient));
         Ok(Expression::product([outside, factor, applied, scale(axis, 2)]))
     }
 
@@ -195,6 +215,22 @@ impl Assembly<'_> {
             .unwrap_or(1)
             .max(if self.model.axes[axis.0].periodic { 1 } else { 2 })
     }
+}
+
+/// Second derivatives as two first derivatives: what is observed has no condition to replace its boundary flux with, and the
+/// first derivative is consistent at every node.
+fn observed(value: &Expression) -> Expression {
+    value.rewrite(&mut |node| {
+        let Expression::Derivative(derivative) = &node else { return node };
+        let DerivativeKind::Second { axis, coefficient, of } = &derivative.kind else { return node };
+        let first = |of: Expression| {
+            Expression::Derivative(Box::new(Derivative {
+                kind: DerivativeKind::First { axis: *axis, of },
+                order: derivative.order,
+            }))
+        };
+        first(coefficient.clone().times(first(of.clone())))
+    })
 }
 
 /// 1/spacingᵈ.

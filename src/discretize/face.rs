@@ -20,12 +20,16 @@ pub(super) fn corrections(model: &Model, plans: &[AxisPlan]) -> Vec<Correction> 
     for condition in &model.conditions {
         let weight = plans[condition.face.axis.0].face_weight();
         let strength = match weight.recip() {
-            Some(inverse) => Expression::Number(inverse).times(Expression::InverseSpacing(condition.face.axis)),
+            Some(inverse) => {
+                Expression::Number(inverse).times(Expression::InverseSpacing(condition.face.axis))
+            }
             None => continue,
         };
         let additions = match &condition.treatment {
             Treatment::Value { .. } => Vec::new(),
-            Treatment::Flux { field, normal_derivative } => flux(model, condition.face, *field, normal_derivative),
+            Treatment::Flux { field, normal_derivative } => {
+                flux(model, condition.face, *field, normal_derivative)
+            }
             Treatment::Upwind { relations } => upwind(model, condition.face, relations),
             Treatment::InflowValue { field, value } => inflow(model, condition.face, *field, value),
         };
@@ -60,7 +64,12 @@ fn injection(condition: &Condition) -> Option<Injection> {
     }
 }
 
-fn flux(model: &Model, face: Face, field: FieldId, normal_derivative: &Expression) -> Vec<(FieldId, Expression)> {
+fn flux(
+    model: &Model,
+    face: Face,
+    field: FieldId,
+    normal_derivative: &Expression,
+) -> Vec<(FieldId, Expression)> {
     let mut additions = Vec::new();
     for equation in &model.equations {
         let Some((terms, _)) = derivative_terms(&equation.right) else { continue };
@@ -81,7 +90,9 @@ fn flux(model: &Model, face: Face, field: FieldId, normal_derivative: &Expressio
 
 fn inflow(model: &Model, face: Face, field: FieldId, value: &Expression) -> Vec<(FieldId, Expression)> {
     let Some((terms, _)) = derivative_terms(&model.equations[field.0].right) else { return Vec::new() };
-    let given = |flux: &Expression| flux.rewrite(&mut |node| if node == Expression::Field(field) { value.clone() } else { node });
+    let given = |flux: &Expression| {
+        flux.rewrite(&mut |node| if node == Expression::Field(field) { value.clone() } else { node })
+    };
     let mut additions = Vec::new();
     for term in terms {
         let DerivativeKind::First { axis, of } = &term.derivative.kind else { continue };
@@ -150,17 +161,26 @@ fn upwind_block(block: &Block, side: Side, relations: &[&FaceRelation]) -> Vec<(
 }
 
 fn coefficient(relation: &FaceRelation, field: FieldId) -> Expression {
-    relation.coefficients.iter().find(|(own, _)| *own == field).map_or_else(Expression::zero, |(_, value)| value.clone())
+    relation
+        .coefficients
+        .iter()
+        .find(|(own, _)| *own == field)
+        .map_or_else(Expression::zero, |(_, value)| value.clone())
 }
 
 /// data − L q over the fields of the block.
 fn residual(relation: &FaceRelation) -> Expression {
-    let inside = relation.coefficients.iter().map(|(field, weight)| weight.clone().times(Expression::Field(*field)));
+    let inside =
+        relation.coefficients.iter().map(|(field, weight)| weight.clone().times(Expression::Field(*field)));
     relation.data.clone().minus(Expression::sum(inside.collect::<Vec<_>>()))
 }
 
 /// One characteristic enters: eigenvalue λ = mean − root < 0 with eigenvector r, addition −λ r (data − L q)/(L·r).
-fn one_of_two(block: &Block, matrix: &[Vec<Expression>], relation: &FaceRelation) -> Vec<(FieldId, Expression)> {
+fn one_of_two(
+    block: &Block,
+    matrix: &[Vec<Expression>],
+    relation: &FaceRelation,
+) -> Vec<(FieldId, Expression)> {
     let Some((mean, root)) = mean_and_root(matrix) else { return Vec::new() };
     let [a, b, c, d] = [&matrix[0][0], &matrix[0][1], &matrix[1][0], &matrix[1][1]];
     let (eigenvalue, vector) = if b.is_zero() && c.is_zero() {
@@ -177,7 +197,12 @@ fn one_of_two(block: &Block, matrix: &[Vec<Expression>], relation: &FaceRelation
         (eigenvalue, vector)
     };
     let along = Expression::sum(
-        block.fields.iter().zip(&vector).map(|(field, part)| coefficient(relation, *field).times(part.clone())).collect::<Vec<_>>(),
+        block
+            .fields
+            .iter()
+            .zip(&vector)
+            .map(|(field, part)| coefficient(relation, *field).times(part.clone()))
+            .collect::<Vec<_>>(),
     );
     let strength = eigenvalue.negative().times(residual(relation)).over(along);
     block.fields.iter().zip(vector).map(|(field, part)| (*field, part.times(strength.clone()))).collect()

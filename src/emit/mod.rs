@@ -4,6 +4,7 @@
 //! about mathematics: the kernel says what is computed and in which order.
 
 mod c;
+mod c_driver;
 mod context;
 mod escape;
 mod expression;
@@ -16,8 +17,10 @@ mod namer;
 mod operators;
 mod routines;
 mod rust;
+pub mod rust_driver;
 mod sweep;
 mod text;
+pub mod weights;
 
 pub use language::Language;
 

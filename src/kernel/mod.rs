@@ -32,6 +32,7 @@
 //! A **stage** is a list of passes at one time. A **step** is the list of stages, then the swaps of `rotation`.
 
 pub mod build;
+pub mod lower;
 pub mod operator;
 pub mod validate;
 
@@ -152,7 +153,7 @@ pub enum Operation {
     Parameter(ParameterId),
     /// Time of the stage.
     Time,
-    /// dt.
+    /// dt; in outputs, the dt of the last step taken.
     Step,
     /// 1/spacing of an axis.
     InverseSpacing(usize),
@@ -306,7 +307,7 @@ pub struct FaceWrite {
 #[derive(Clone, Debug)]
 pub struct Limit {
     pub rate: ValueId,
-    /// Sweeps that fill buffers which `rate` loads, if any.
+    /// Whether it changes with the state (or time) and must be found anew before each step.
     pub state_dependent: bool,
     /// How it was found, for readers.
     pub law: String,
@@ -338,8 +339,8 @@ pub struct Output {
     /// SI value of one `unit`: results are divided by it before they are written.
     pub scale: ValueId,
     pub kind: OutputKind,
-    /// Fills `buffer` before it is read; `None` when the buffer is a field's.
-    pub sweep: Option<Sweep>,
+    /// Fill `buffer` before it is read, in order; empty when the buffer is a field's.
+    pub sweeps: Vec<Sweep>,
     pub buffer: BufferId,
     /// Seconds between outputs, fixed; `None`: snapshots at start and end, gauges and integrals after each step.
     pub every: Option<ValueId>,
@@ -352,9 +353,9 @@ pub enum OutputKind {
     /// A coordinate for each axis, fixed.
     Gauge(Vec<ValueId>),
     Integral,
-    /// `sweep` keeps the largest value so far in `buffer`; `begin` sets it at the start.
+    /// `sweeps` keep the largest value so far in `buffer`; `begin` set it at the start.
     Maximum {
-        begin: Sweep,
+        begin: Vec<Sweep>,
     },
 }
 

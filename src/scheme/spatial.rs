@@ -3,7 +3,7 @@
 //! Plain facts, made by `discretize::assemble`: which certified operator acts where, which expression each rate is, what
 //! each face adds or sets, and the law of the step limit. Weights live in the operators.
 
-
+use super::{DifferenceOperator, Norm, SecondDerivativeForm, SummationByParts};
 use crate::exact::Rational;
 use crate::model::{AxisId, Comparison, Expression, Face, FieldId};
 use std::sync::Arc;
@@ -16,6 +16,8 @@ pub struct Scheme {
     pub applications: Vec<Application>,
     /// The explicit right side for each field, with `Applied` in the place of derivatives.
     pub rates: Vec<Expression>,
+    /// The expression of each output, likewise.
+    pub outputs: Vec<Expression>,
     /// In the order in which they act: additions first, then settings of values.
     pub corrections: Vec<Correction>,
     pub injections: Vec<Injection>,
@@ -29,7 +31,7 @@ pub struct SchemeAxis {
     /// Half of the interior order of every operator along the axis that the norm belongs to.
     pub half_order: usize,
     /// The norm; `None` on periodic axes (all weights one).
-    pub norm: Option<Arc<Norm>>,
+    pub norm: Option<&'static Norm>,
     /// The least number of nodes that every operator on the axis needs.
     pub least_nodes: usize,
     /// The order at which the solution converges in space along this axis.
@@ -47,13 +49,24 @@ pub struct SchemeOperator {
 #[derive(Clone, Debug)]
 pub enum OperatorRule {
     /// First derivative with energy-stable closures.
-    First(Arc<SummationByParts>),
+    First(&'static SummationByParts),
     /// −H⁻¹M(1): second derivative without its boundary flux.
-    Second(Arc<SecondDerivativeForm>),
+    Second(Arc<DifferenceOperator>),
     /// −H⁻¹M(b).
-    VaryingSecond(Arc<SecondDerivativeForm>),
+    VaryingSecond(&'static SecondDerivativeForm),
     /// Centred weights on a periodic axis.
     Centred(Arc<DifferenceOperator>),
+}
+
+impl OperatorRule {
+    /// The least number of nodes on a line.
+    pub fn least_nodes(&self) -> usize {
+        match self {
+            OperatorRule::First(operator) => operator.minimum_nodes(),
+            OperatorRule::VaryingSecond(form) => form.minimum_nodes(),
+            OperatorRule::Second(operator) | OperatorRule::Centred(operator) => operator.minimum_nodes(),
+        }
+    }
 }
 
 /// An operator at work: `operator` along `axis` on the values of `of`, in units of the spacing
@@ -103,5 +116,21 @@ impl SchemeAxis {
     /// Weight of the norm at the face, 1 where there is none.
     pub fn face_weight(&self) -> Rational {
         self.norm.as_ref().and_then(|norm| norm.left().first().cloned()).unwrap_or_else(|| Rational::from(1))
+    }
+}
+
+impl Scheme {
+    /// A scheme of nothing.
+    pub fn empty() -> Scheme {
+        Scheme {
+            axes: Vec::new(),
+            operators: Vec::new(),
+            applications: Vec::new(),
+            rates: Vec::new(),
+            outputs: Vec::new(),
+            corrections: Vec::new(),
+            injections: Vec::new(),
+            choices: Vec::new(),
+        }
     }
 }

@@ -5,6 +5,10 @@
 
 use std::fmt;
 
+use num_bigint::BigInt;
+use num_traits::Zero;
+
+use crate::exact::matrix::{common_denominator, scaled};
 use crate::exact::{Rational, factorial};
 
 /// Σ wⱼ f(xⱼ) ≈ f⁽ᵈ⁾(at) at unit spacing, proved exact on polynomials up to the stated degree.
@@ -40,8 +44,8 @@ pub enum StencilFault {
     UnequalLengths { nodes: usize, weights: usize },
     /// Nodes are not strictly increasing at this index.
     NotIncreasing { index: usize },
-    /// Σ wⱼ (xⱼ − at)ᵐ is not what the derivative and the claimed order need at this degree m.
-    Moment { degree: usize, found: Rational, needed: Rational },
+    /// Σ wⱼ (xⱼ − at)ᵐ at this degree m is neither m! for the derivative itself nor nought below the order.
+    Moment { degree: usize, found: Box<Rational> },
 }
 
 impl Stencil {
@@ -75,7 +79,7 @@ impl Stencil {
             let needed = if degree == derivative { factorial(degree) } else { Rational::zero() };
             if found != needed {
                 if degree < derivative + claimed_order.max(1) {
-                    return Err(StencilFault::Moment { degree, found, needed });
+                    return Err(StencilFault::Moment { degree, found: Box::new(found) });
                 }
                 first_failing = Some((degree, found));
                 break;
@@ -126,25 +130,39 @@ impl Stencil {
     }
 }
 
-/// The moments Σ wⱼ (xⱼ − at)ᵐ for m = 0, 1, 2, …
+/// The moments Σ wⱼ (xⱼ − at)ᵐ for m = 0, 1, 2, …, summed in integers and reduced once each.
 struct Moments {
-    offsets: Vec<Rational>,
-    terms: Vec<Rational>,
+    offsets: Vec<BigInt>,
+    offset_scale: BigInt,
+    terms: Vec<BigInt>,
+    term_scale: BigInt,
 }
 
 impl Moments {
     fn new(nodes: &[Rational], at: &Rational, weights: &[Rational]) -> Moments {
-        Moments { offsets: nodes.iter().map(|node| node - at).collect(), terms: weights.to_vec() }
+        let offsets: Vec<Rational> = nodes.iter().map(|node| node - at).collect();
+        let offset_scale = common_denominator(&offsets);
+        let term_scale = common_denominator(weights);
+        Moments {
+            offsets: offsets.iter().map(|offset| scaled(offset, &offset_scale)).collect(),
+            terms: weights.iter().map(|weight| scaled(weight, &term_scale)).collect(),
+            offset_scale,
+            term_scale,
+        }
     }
 
     /// The moment of the next degree, from nought on.
     fn next_moment(&mut self) -> Rational {
-        let moment = self.terms.iter().sum();
+        let sum: BigInt = self.terms.iter().sum();
+        let moment = if sum.is_zero() {
+            Rational::zero()
+        } else {
+            Rational::new(sum, self.term_scale.clone()).expect("common denominators are positive")
+        };
         for (term, offset) in self.terms.iter_mut().zip(&self.offsets) {
-            if !term.is_zero() {
-                *term *= offset;
-            }
+            *term *= offset;
         }
+        self.term_scale *= &self.offset_scale;
         moment
     }
 }
@@ -159,9 +177,9 @@ impl fmt::Display for StencilFault {
             StencilFault::NotIncreasing { index } => {
                 write!(formatter, "node {} is not to the right of the one before it", index + 1)
             }
-            StencilFault::Moment { degree, found, needed } => write!(
+            StencilFault::Moment { degree, found } => write!(
                 formatter,
-                "the weights applied to the monomial of degree {degree} give {found}, but {needed} is needed"
+                "the weights applied to the monomial of degree {degree} give {found}, which the claimed order rules out"
             ),
         }
     }

@@ -1,1 +1,5 @@
 //! The one test binary.
+
+mod exactness;
+mod layering;
+mod published;
