@@ -1,3 +1,4 @@
 //! Program text.
 
+pub mod c_driver;
 pub mod weights;
