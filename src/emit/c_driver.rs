@@ -28,10 +28,41 @@ mod tests {
     /// Ends of the names that a kernel's header declares after `PREFIX_`. The driver has no names of its own that end so:
     /// whatever the prefix, the two do not clash.
     const KERNEL_NAMES: [&str; 35] = [
-        "solver", "axis_info", "parameter_info", "field_info", "output_info", "description", "describe", "create", "destroy",
-        "parameter", "parameter_low", "parameter_high", "parameter_scale", "low", "high", "spacing", "start_time", "end_time",
-        "step_duration", "every", "place", "scale", "field_scale", "start", "first_step", "largest_rate", "advance", "field",
-        "output", "begin_maximum", "accumulate_maximum", "state_count", "state", "points", "memory",
+        "solver",
+        "axis_info",
+        "parameter_info",
+        "field_info",
+        "output_info",
+        "description",
+        "describe",
+        "create",
+        "destroy",
+        "parameter",
+        "parameter_low",
+        "parameter_high",
+        "parameter_scale",
+        "low",
+        "high",
+        "spacing",
+        "start_time",
+        "end_time",
+        "step_duration",
+        "every",
+        "place",
+        "scale",
+        "field_scale",
+        "start",
+        "first_step",
+        "largest_rate",
+        "advance",
+        "field",
+        "output",
+        "begin_maximum",
+        "accumulate_maximum",
+        "state_count",
+        "state",
+        "points",
+        "memory",
     ];
 
     #[test]
@@ -47,7 +78,9 @@ mod tests {
         let words = text.split(|character: char| !character.is_ascii_alphanumeric() && character != '_');
         let clashing: Vec<&str> = words
             .filter(|word| !word.starts_with('0') && *word != "va_start")
-            .filter(|word| KERNEL_NAMES.iter().any(|end| word.strip_suffix(end).is_some_and(|stem| stem.ends_with('_'))))
+            .filter(|word| {
+                KERNEL_NAMES.iter().any(|end| word.strip_suffix(end).is_some_and(|stem| stem.ends_with('_')))
+            })
             .collect();
         assert!(clashing.is_empty(), "{clashing:?}");
     }

@@ -1,4 +1,5 @@
 //! The one test binary.
 
+mod c_driver;
 mod exactness;
 mod published;
