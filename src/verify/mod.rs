@@ -1,1 +1,4 @@
 //! Building and running.
+
+#[path = "../../templates/rust/driver.rs"]
+pub mod driver;
