@@ -184,7 +184,7 @@ fn members(context: &Context) -> String {
     text.line(&format!(
         "double parameter[{parameters}], parameter_low[{parameters}], parameter_high[{parameters}], parameter_scale[{parameters}];"
     ));
-    text.line("double start_time, end_time, step_duration;");
+    text.line("double start_time, end_time, step_duration, last_step;");
     text.line(&format!("double field_scale[{}];", kernel.fields.len().max(1)));
     text.line(&format!("double every[{outputs}], scale[{outputs}], place[{}];", outputs * axes));
     for member in context.stored.values() {
@@ -447,10 +447,12 @@ fn interface(context: &Context, routines: &Routines) -> String {
         routines.first_step.clone()
     };
     let head = format!("void {p}_first_step({p}_solver *s, double time, double step)");
+    let first: Vec<String> = std::iter::once("s->last_step = step".to_owned()).chain(first).collect();
     function(&mut text, &head, &["s", "time", "step"], &first);
     let head = format!("double {p}_largest_rate({p}_solver *s, double time)");
     function(&mut text, &head, &["s", "time"], &[format!("return {}", routines.largest_rate)]);
-    let step: Vec<String> = routines.step.iter().chain(&swaps).cloned().collect();
+    let mut step = vec!["s->last_step = step".to_owned()];
+    step.extend(routines.step.iter().chain(&swaps).cloned());
     let head = format!("void {p}_advance({p}_solver *s, double time, double step, double next)");
     function(&mut text, &head, &["s", "time", "step", "next"], &step);
 
@@ -462,30 +464,24 @@ fn interface(context: &Context, routines: &Routines) -> String {
         .iter()
         .zip(&routines.outputs)
         .map(|(output, fill)| {
-            let result = format!("return s->{}", context.buffers[output.buffer.0]);
-            match (fill, &output.kind) {
-                (Some(fill), OutputKind::Snapshot | OutputKind::Gauge(_) | OutputKind::Integral) => {
-                    format!("{fill};\n{result}")
-                }
-                _ => result,
-            }
+            let maximum = matches!(output.kind, OutputKind::Maximum { .. });
+            let mut lines = if maximum { Vec::new() } else { fill.clone() };
+            lines.push(format!("return s->{}", context.buffers[output.buffer.0]));
+            lines.join("\n")
         })
         .collect();
     let head = format!("const double *{p}_output({p}_solver *s, size_t output, double time)");
     cases(&mut text, &head, "output", &["s", "time"], &outputs);
-    for (name, begin) in [("begin", true), ("accumulate", false)] {
-        let entries: Vec<String> = kernel
+    for (name, calls) in [("begin", &routines.begins), ("accumulate", &routines.outputs)] {
+        let entries: Vec<(usize, String)> = kernel
             .outputs
             .iter()
             .enumerate()
-            .map(|(place, output)| match (&output.kind, begin) {
-                (OutputKind::Maximum { .. }, true) => routines.begins[place].clone().unwrap_or_default() + ";\nreturn",
-                (OutputKind::Maximum { .. }, false) => routines.outputs[place].clone().unwrap_or_default() + ";\nreturn",
-                _ => "return".to_owned(),
-            })
+            .filter(|(_, output)| matches!(output.kind, OutputKind::Maximum { .. }))
+            .map(|(place, _)| (place, calls[place].join("\n")))
             .collect();
         let head = format!("void {p}_{name}_maximum({p}_solver *s, size_t output, double time)");
-        cases(&mut text, &head, "output", &["s", "time"], &entries);
+        numbered_cases(&mut text, &head, "output", &["s", "time"], &entries);
     }
     let state: Vec<String> =
         kernel.state.iter().map(|buffer| format!("return s->{}", context.buffers[buffer.0])).collect();
@@ -513,8 +509,13 @@ fn function(text: &mut Text, head: &str, parameters: &[&str], statements: &[Stri
 
 /// A function that chooses by an index; nothing, or no array, for an index beyond the list.
 fn cases(text: &mut Text, head: &str, index: &str, parameters: &[&str], entries: &[String]) {
+    let entries: Vec<(usize, String)> = entries.iter().cloned().enumerate().collect();
+    numbered_cases(text, head, index, parameters, &entries);
+}
+
+fn numbered_cases(text: &mut Text, head: &str, index: &str, parameters: &[&str], entries: &[(usize, String)]) {
     let mut body = Text::indented(1);
-    for (place, entry) in entries.iter().enumerate() {
+    for (place, entry) in entries {
         body.open(&format!("if ({index} == {place}) {{"));
         entry.lines().for_each(|line| body.line(&format!("{};", line.trim_end_matches(';'))));
         body.close("}");

@@ -251,9 +251,9 @@ fn roots(kernel: &Kernel) -> Vec<ValueId> {
         }
     }
     for output in &kernel.outputs {
-        output.sweep.iter().for_each(&mut sweep_roots);
+        output.sweeps.iter().for_each(&mut sweep_roots);
         if let OutputKind::Maximum { begin } = &output.kind {
-            sweep_roots(begin);
+            begin.iter().for_each(&mut sweep_roots);
         }
     }
     for face in faces {

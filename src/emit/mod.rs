@@ -4,7 +4,7 @@
 //! about mathematics: the kernel says what is computed and in which order.
 
 mod c;
-mod c_driver;
+pub mod c_driver;
 mod context;
 mod escape;
 mod expression;

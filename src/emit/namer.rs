@@ -21,7 +21,7 @@ size_t ptrdiff_t int64_t uint64_t int32_t uint32_t uint8_t va_list file time clo
 minimum maximum sign select opaque noise coordinate wrap at share part parts row rows first last end count scratch
 thread thread_number team step next dt s edge_row here inline_function rows_in_parallel along_the_row driver solver
 array parameter parameters low high spacing inverse_spacing nodes points given values memory
-parameter_low parameter_high parameter_scale start_time end_time step_duration every place scale field_scale
+last_step parameter_low parameter_high parameter_scale start_time end_time step_duration every place scale field_scale
 ";
 
 /// Gives out identifiers. Uniqueness ignores case, because Rust constants are written in capitals.

@@ -8,7 +8,7 @@ use super::literal;
 use super::sweep::{Job, Routine, Target, sweep};
 use super::text::Text;
 use crate::exact::Rational;
-use crate::kernel::{Extent, OutputKind, Pass, Stage};
+use crate::kernel::{Extent, OutputKind, Pass, Stage, Sweep};
 
 /// See the module.
 pub struct Routines {
@@ -20,10 +20,10 @@ pub struct Routines {
     pub step: Vec<String>,
     /// The call that returns the largest rate; it names `time`.
     pub largest_rate: String,
-    /// For each output the call that fills its buffer, if any; it names `time`.
-    pub outputs: Vec<Option<String>>,
-    /// For each output the call that begins a maximum.
-    pub begins: Vec<Option<String>>,
+    /// For each output the calls that fill its buffer; they name `time`.
+    pub outputs: Vec<Vec<String>>,
+    /// For each output the calls that begin a maximum.
+    pub begins: Vec<Vec<String>>,
     /// Scratch rows that a thread needs.
     pub scratch_rows: usize,
 }
@@ -47,19 +47,11 @@ pub fn routines(context: &Context) -> Routines {
     all.largest_rate = limit(context, &mut all);
     for output in &kernel.outputs {
         let wish = format!("output_{}", super::namer::legal(&output.name));
-        let fill = output.sweep.as_ref().map(|filling| {
-            let routine = sweep(context, &Job::of(filling, &wish));
-            all.add(&routine);
-            routine.call("time", "0.0")
-        });
+        let fill = sweeps(context, &output.sweeps, &wish, &mut all);
         all.outputs.push(fill);
         let begin = match &output.kind {
-            OutputKind::Maximum { begin } => {
-                let routine = sweep(context, &Job::of(begin, &format!("begin_{wish}")));
-                all.add(&routine);
-                Some(routine.call("time", "0.0"))
-            }
-            _ => None,
+            OutputKind::Maximum { begin } => sweeps(context, begin, &format!("begin_{wish}"), &mut all),
+            _ => Vec::new(),
         };
         all.begins.push(begin);
     }
@@ -92,6 +84,18 @@ fn stages(context: &Context, stages: &[Stage], wish: &str, all: &mut Routines) -
         }
     }
     calls
+}
+
+/// Calls of an output's sweeps.
+fn sweeps(context: &Context, list: &[Sweep], wish: &str, all: &mut Routines) -> Vec<String> {
+    let last_step = context.language.member("last_step");
+    list.iter()
+        .map(|filling| {
+            let routine = sweep(context, &Job::of(filling, wish));
+            all.add(&routine);
+            routine.call("time", &last_step)
+        })
+        .collect()
 }
 
 /// t, exactly the next time, or t + fraction·dt.

@@ -164,7 +164,7 @@ fn members(context: &Context, wanted: MemberText) -> String {
     for name in ["parameter", "parameter_low", "parameter_high", "parameter_scale"] {
         member(name, "f64", Some(parameters), "0.0", "");
     }
-    for name in ["start_time", "end_time", "step_duration"] {
+    for name in ["start_time", "end_time", "step_duration", "last_step"] {
         member(name, "f64", None, "0.0", "");
     }
     member("field_scale", "f64", Some(kernel.fields.len()), "0.0", "");
@@ -391,18 +391,13 @@ fn outputs(context: &Context, routines: &Routines, text: &mut Text) {
     let kernel = context.kernel;
     let maximum = |place: usize| matches!(kernel.outputs[place].kind, OutputKind::Maximum { .. });
     let places = 0..kernel.outputs.len();
-    let filling: Vec<(usize, String)> = places
-        .clone()
-        .filter(|place| !maximum(*place))
-        .filter_map(|place| routines.outputs[place].clone().map(|call| (place, call)))
-        .collect();
-    let keeping: Vec<(usize, String)> = places
-        .clone()
-        .filter(|place| maximum(*place))
-        .filter_map(|place| routines.outputs[place].clone().map(|call| (place, call)))
-        .collect();
-    let begins: Vec<(usize, String)> =
-        places.clone().filter_map(|place| routines.begins[place].clone().map(|call| (place, call))).collect();
+    let calls = |lists: &[Vec<String>], of_maximum: bool| -> Vec<(usize, String)> {
+        let wanted = lists.iter().enumerate().filter(|(place, list)| !list.is_empty() && maximum(*place) == of_maximum);
+        wanted.map(|(place, list)| (place, list.join("; "))).collect()
+    };
+    let filling = calls(&routines.outputs, false);
+    let keeping = calls(&routines.outputs, true);
+    let begins = calls(&routines.begins, true);
     let buffers: Vec<String> = places
         .map(|place| format!("self.s.{}.values()", context.buffers[kernel.outputs[place].buffer.0]))
         .collect();
@@ -444,11 +439,15 @@ fn method(text: &mut Text, name: &str, parameters: &[&str], calls: &[String], af
     let list: Vec<String> = parameters
         .iter()
         .map(|parameter| {
-            let used = mentions(&all, parameter) && !defined(parameter);
+            let kept = *parameter == "step";
+            let used = kept || mentions(&all, parameter) && !defined(parameter);
             format!("{}{parameter}: f64", if used { "" } else { "_" })
         })
         .collect();
     text.open(&format!("fn {name}(&mut self, {}) {{", list.join(", ")));
+    if ["first_step", "advance"].contains(&name) {
+        text.line("self.s.last_step = step;");
+    }
     if !calls.is_empty() {
         text.line("let s = &self.s;");
         let (known, calls): (Vec<&String>, Vec<&String>) = calls.iter().partition(|call| call.starts_with("let "));

@@ -29,16 +29,21 @@ pub fn all(kernel: &Kernel) -> Result<(), KernelFault> {
 }
 
 fn check_output(kernel: &Kernel, index: usize, output: &Output) -> Result<(), KernelFault> {
-    let fills = |sweep: &Sweep| sweep.writes.iter().any(|write| write.buffer == output.buffer);
-    if let Some(sweep) = &output.sweep {
+    let fills = |sweeps: &[Sweep]| {
+        let mut writes = sweeps.iter().flat_map(|sweep| &sweep.writes);
+        writes.any(|write| write.buffer == output.buffer)
+    };
+    for sweep in &output.sweeps {
         check_sweep(kernel, sweep)?;
-        if !fills(sweep) {
-            return Err(KernelFault::OutputSweep(index));
-        }
+    }
+    if !output.sweeps.is_empty() && !fills(&output.sweeps) {
+        return Err(KernelFault::OutputSweep(index));
     }
     if let OutputKind::Maximum { begin } = &output.kind {
-        check_sweep(kernel, begin)?;
-        if output.sweep.is_none() || !fills(begin) {
+        for sweep in begin {
+            check_sweep(kernel, sweep)?;
+        }
+        if output.sweeps.is_empty() || !fills(begin) {
             return Err(KernelFault::Maximum(index));
         }
     }
