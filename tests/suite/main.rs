@@ -1,5 +1,7 @@
 //! The one test binary.
 
+mod c_driver;
+mod emission;
 mod exactness;
 mod layering;
 mod limits;
