@@ -1,1 +1,5 @@
-//! Building and running.
+//! Building and running emitted programs: the only place that starts processes.
+
+mod cache;
+pub mod run;
+pub mod toolchain;
