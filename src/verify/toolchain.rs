@@ -85,7 +85,7 @@ impl std::error::Error for ToolError {}
 const C_FLAGS: [&str; 4] = ["-std=c11", "-O3", "-ffp-contract=off", "-fno-math-errno"];
 /// Flags that are left out where the compiler does not know them: for its own machine, with threads.
 const C_WISHES: [&str; 2] = ["-march=native", "-fopenmp"];
-const RUST_FLAGS: [&str; 6] =
+const RUST_FLAGS: [&str; 5] =
     ["--edition=2021", "-Copt-level=3", "-Ctarget-cpu=native", "--cap-lints=allow", "-Cdebuginfo=0"];
 
 /// Files of an emitted package: path with `/` → text.
