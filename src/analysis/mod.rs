@@ -1,1 +1,5 @@
-//! What follows from a scheme.
+//! What follows from a scheme: symbols, stability regions, the law of the step limit. Never fails: not knowing is a finding.
+
+pub mod limit;
+pub mod stability;
+pub mod symbol;

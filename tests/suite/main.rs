@@ -2,4 +2,8 @@
 
 mod c_driver;
 mod exactness;
+mod layering;
+mod lowering;
 mod published;
+mod reference;
+mod syntax;
