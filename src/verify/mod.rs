@@ -2,3 +2,8 @@
 
 #[path = "../../templates/rust/driver.rs"]
 pub mod driver;
+//! Building and running emitted programs: the only place that starts processes.
+
+mod cache;
+pub mod run;
+pub mod toolchain;
