@@ -7,13 +7,17 @@
 pub mod control;
 mod cut;
 mod fold;
+pub mod format;
 pub mod names;
 mod parse;
+pub mod print;
 mod scan;
 pub mod tree;
 
 use crate::diagnostic::{Diagnostic, Diagnostics, codes};
 use crate::source::{SourceFault, SourceFile, Span};
+pub use format::format;
+pub use print::print_expression;
 use tree::ModelFile;
 
 /// Stack on which text is read and trees are walked; ample for the bounds on nesting even without optimisation.

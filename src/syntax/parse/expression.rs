@@ -114,6 +114,7 @@ impl Reader<'_> {
         if operation == "·"
             && is_vector(&value)
             && let Some(last) = factors.last_mut()
+            && last.operation == Operation::Times
             && is_vector(&last.value)
         {
             let span = last.value.span.to(value.span);
@@ -173,6 +174,9 @@ impl Reader<'_> {
 
     fn report_juxtaposed(&mut self, before: Option<&Expression>, after: &Expression) {
         let Some(before) = before else { return };
+        if is_bare_function(before) {
+            return; // Reported where the function stands.
+        }
         let (left, right) = (self.excerpt(before.span), self.excerpt(after.span));
         let message = format!("nothing stands between `{left}` and `{right}`");
         let remedy = match (&before.kind, &after.kind) {
@@ -532,6 +536,15 @@ impl Reader<'_> {
         }
         let right = sides.pop()?;
         Some(Comparison { left: sides.pop()?, relation, right, span })
+    }
+}
+
+/// Whether a formula is the name of a function, or a power of it.
+fn is_bare_function(expression: &Expression) -> bool {
+    match &expression.kind {
+        ExpressionKind::Name(name) => Function::from_name(name).is_some(),
+        ExpressionKind::Power { base, .. } => is_bare_function(base),
+        _ => false,
     }
 }
 
