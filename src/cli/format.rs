@@ -103,7 +103,7 @@ mod tests {
     fn a_file_is_replaced_only_when_it_can_be_read() {
         let folder = tempfile::tempdir().expect("a folder for the test");
         let path = folder.path().join("wall.rim");
-        let arguments = |write| Arguments { models: vec![path.clone()], check: !write, write };
+        let arguments = |write: bool| Arguments { models: vec![path.clone()], check: !write, write };
         std::fs::write(&path, "model wall\naxes\n x:0 to 1,11 nodes\n").expect("a file for the test");
         assert_eq!(format_file(&path, &arguments(false)), Outcome::Fault);
         assert_eq!(format_file(&path, &arguments(true)), Outcome::Done);

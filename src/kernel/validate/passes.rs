@@ -30,7 +30,6 @@ pub fn all(kernel: &Kernel) -> Result<(), KernelFault> {
 
 fn check_output(kernel: &Kernel, index: usize, output: &Output) -> Result<(), KernelFault> {
     let fills = |sweeps: &[Sweep]| {
-        sweeps.last().is_some_and(|sweep| sweep.writes.iter().any(|write| write.buffer == output.buffer))
         let mut writes = sweeps.iter().flat_map(|sweep| &sweep.writes);
         writes.any(|write| write.buffer == output.buffer)
     };
