@@ -1,3 +1,6 @@
 //! The one place that knows the order of the stages.
 
+mod compile;
 pub mod weights;
+
+pub use compile::{Checked, Compiled, Overrides, check, compile, hash, read};
