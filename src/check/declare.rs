@@ -8,7 +8,9 @@ use crate::diagnostic::{Diagnostic, codes_check};
 use crate::model::sign::Sign;
 use crate::model::{self, Dimension, Expression, FoldedConstant, FreeConstant};
 use crate::source::Span;
-use crate::syntax::tree::{self, AxisPropertyKind, Counted, CoefficientValue, ExpressionKind, Extent, Section};
+use crate::syntax::tree::{
+    self, AxisPropertyKind, CoefficientValue, Counted, ExpressionKind, Extent, Section,
+};
 
 /// The most nodes that an axis may have, and a grid.
 const MOST_NODES: u64 = 1 << 34;
@@ -19,7 +21,8 @@ impl Checker<'_> {
         for line in &self.file.time {
             if let tree::TimeKind::Interval { start, end } = &line.kind {
                 let quiet = self.diagnostics.clone();
-                let found = [end, start].into_iter().find_map(|side| self.formula(side, Place::Constant)?.dimension);
+                let found =
+                    [end, start].into_iter().find_map(|side| self.formula(side, Place::Constant)?.dimension);
                 // Faults are reported when the section itself is read.
                 self.diagnostics = quiet;
                 if let Some(dimension) = found {
@@ -32,7 +35,10 @@ impl Checker<'_> {
     /// Axes in order. Their dimensions are in the scope even where something else is wrong with them.
     pub(super) fn axes(&mut self) -> Option<Vec<model::Axis>> {
         let file = self.file;
-        if !(1..=3).contains(&file.axes.len()) && file.section(Section::Axes).is_some() && !self.has_faulty(Section::Axes) {
+        if !(1..=3).contains(&file.axes.len())
+            && file.section(Section::Axes).is_some()
+            && !self.has_faulty(Section::Axes)
+        {
             let span = file.axes.get(3).map_or_else(|| self.section_span(Section::Axes), |axis| axis.span);
             self.diagnostics.push(Diagnostic::error(
                 codes_check::AXES_COUNT,
@@ -83,7 +89,10 @@ impl Checker<'_> {
             }
         };
         let (a, b) = (self.formula(low, Place::Constant), self.formula(high, Place::Constant));
-        let dimension = [&b, &a].into_iter().find_map(|side| side.as_ref()?.dimension.clone()).unwrap_or_else(Dimension::one);
+        let dimension = [&b, &a]
+            .into_iter()
+            .find_map(|side| side.as_ref()?.dimension.clone())
+            .unwrap_or_else(Dimension::one);
         self.scope.axes.push(dimension.clone());
         let (a, b) = (a?, b?);
         if let (Some(first), Some(second)) = (&a.dimension, &b.dimension)
@@ -92,10 +101,17 @@ impl Checker<'_> {
             self.mismatch(high.span, second, low.span, first, "the ends of an axis");
             sound = false;
         }
-        if matches!(self.sign(&b.value.clone().minus(a.value.clone())), Sign::Negative | Sign::Zero | Sign::NonPositive) {
+        if matches!(
+            self.sign(&b.value.clone().minus(a.value.clone())),
+            Sign::Negative | Sign::Zero | Sign::NonPositive
+        ) {
             self.diagnostics.push(
-                Diagnostic::error(codes_check::AXIS_DIRECTION, axis.span, format!("axis `{}` does not run upwards", axis.name.text))
-                    .with_text("the first end must be less than the second"),
+                Diagnostic::error(
+                    codes_check::AXIS_DIRECTION,
+                    axis.span,
+                    format!("axis `{}` does not run upwards", axis.name.text),
+                )
+                .with_text("the first end must be less than the second"),
             );
             sound = false;
         }
@@ -103,8 +119,12 @@ impl Checker<'_> {
         let nodes = if count.of == Counted::Cells && !periodic { number.saturating_add(1) } else { number };
         if nodes < 2 || nodes > MOST_NODES {
             self.diagnostics.push(
-                Diagnostic::error(codes_check::GRID_SIZE, count.number.span, format!("axis `{}` has {nodes} nodes", axis.name.text))
-                    .with_text(format!("expected 2 to {MOST_NODES} nodes")),
+                Diagnostic::error(
+                    codes_check::GRID_SIZE,
+                    count.number.span,
+                    format!("axis `{}` has {nodes} nodes", axis.name.text),
+                )
+                .with_text(format!("expected 2 to {MOST_NODES} nodes")),
             );
             sound = false;
         }
@@ -149,9 +169,16 @@ impl Checker<'_> {
     /// Fields in order; their dimensions go to the scope.
     pub(super) fn fields(&mut self) -> Option<Vec<model::Field>> {
         let file = self.file;
-        if file.fields.is_empty() && file.section(Section::Fields).is_some() && !self.has_faulty(Section::Fields) {
+        if file.fields.is_empty()
+            && file.section(Section::Fields).is_some()
+            && !self.has_faulty(Section::Fields)
+        {
             let span = self.section_span(Section::Fields);
-            self.diagnostics.push(Diagnostic::error(codes_check::SECTION_MISSING, span, "the model has no field"));
+            self.diagnostics.push(Diagnostic::error(
+                codes_check::SECTION_MISSING,
+                span,
+                "the model has no field",
+            ));
         }
         let mut fields = Vec::new();
         for field in &file.fields {
@@ -159,7 +186,9 @@ impl Checker<'_> {
                 Some(unit) => units::resolve(unit, &mut self.diagnostics),
                 None => Some(Scale { factor: Expression::one(), dimension: Dimension::one() }),
             };
-            self.scope.fields.push(scale.as_ref().map_or_else(Dimension::one, |scale| scale.dimension.clone()));
+            self.scope
+                .fields
+                .push(scale.as_ref().map_or_else(Dimension::one, |scale| scale.dimension.clone()));
             fields.push((field, scale));
         }
         let mut result = Vec::new();
@@ -188,12 +217,18 @@ impl Checker<'_> {
             sound = false;
         }
         if let Some(axis) = field.staggered.first() {
-            self.not_yet(axis.span, "a staggered field", "leave out `staggered`: all fields live at the nodes");
+            self.not_yet(
+                axis.span,
+                "a staggered field",
+                "leave out `staggered`: all fields live at the nodes",
+            );
             sound = false;
         }
         let bounds = match &field.bounds {
             None => Some(None),
-            Some(bounds) => self.bounds(bounds, scale.as_ref().map(|scale| scale.dimension.clone())).map(Some),
+            Some(bounds) => {
+                self.bounds(bounds, scale.as_ref().map(|scale| scale.dimension.clone())).map(Some)
+            }
         };
         let (scale, bounds) = (scale?, bounds?);
         sound.then(|| model::Field {
@@ -207,8 +242,13 @@ impl Checker<'_> {
     }
 
     /// `between A and B`, of a dimension.
-    fn bounds(&mut self, bounds: &tree::Bounds, dimension: Option<Dimension>) -> Option<(Expression, Expression)> {
-        let (low, high) = (self.formula(&bounds.low, Place::Constant), self.formula(&bounds.high, Place::Constant));
+    fn bounds(
+        &mut self,
+        bounds: &tree::Bounds,
+        dimension: Option<Dimension>,
+    ) -> Option<(Expression, Expression)> {
+        let (low, high) =
+            (self.formula(&bounds.low, Place::Constant), self.formula(&bounds.high, Place::Constant));
         let (low, high) = (low?, high?);
         let dimension = dimension?;
         for (side, typed) in [(&bounds.low, &low), (&bounds.high, &high)] {
@@ -354,8 +394,14 @@ impl Checker<'_> {
             None => None,
         };
         for argument in &coefficient.arguments {
-            let known = argument.text == "t" || matches!(self.scope.kind(&argument.text), Some(Kind::Axis(_) | Kind::Field(_)));
-            self.scope.expect(argument, "an axis, `t` or a field", known.then_some(()), &mut self.diagnostics)?;
+            let known = argument.text == "t"
+                || matches!(self.scope.kind(&argument.text), Some(Kind::Axis(_) | Kind::Field(_)));
+            self.scope.expect(
+                argument,
+                "an axis, `t` or a field",
+                known.then_some(()),
+                &mut self.diagnostics,
+            )?;
         }
         let typed = self.formula(value, Place::Pointwise)?;
         if let (Some(wanted), Some(found)) = (&unit, &typed.dimension)
@@ -375,8 +421,20 @@ impl Checker<'_> {
         let found = model::calculus::dependence(value, &self.coefficients);
         let named = |name: &str| coefficient.arguments.iter().any(|argument| argument.text == name);
         let mut missing: Vec<&str> = Vec::new();
-        missing.extend(found.coordinates.iter().map(|axis| self.file.axes[axis.0].name.text.as_str()).filter(|name| !named(name)));
-        missing.extend(found.fields.iter().map(|field| self.file.fields[field.0].name.text.as_str()).filter(|name| !named(name)));
+        missing.extend(
+            found
+                .coordinates
+                .iter()
+                .map(|axis| self.file.axes[axis.0].name.text.as_str())
+                .filter(|name| !named(name)),
+        );
+        missing.extend(
+            found
+                .fields
+                .iter()
+                .map(|field| self.file.fields[field.0].name.text.as_str())
+                .filter(|name| !named(name)),
+        );
         if found.time && !named("t") {
             missing.push("t");
         }
@@ -391,7 +449,8 @@ impl Checker<'_> {
                 format!("`{}` depends on `{list}`, which its arguments do not name", coefficient.name.text),
             )
             .with_remedy(format!("write `{}({})`", coefficient.name.text, {
-                let mut all: Vec<&str> = coefficient.arguments.iter().map(|name| name.text.as_str()).collect();
+                let mut all: Vec<&str> =
+                    coefficient.arguments.iter().map(|name| name.text.as_str()).collect();
                 all.extend(&missing);
                 all.join(", ")
             })),

@@ -36,7 +36,9 @@ fn again(axis: AxisId, term: DerivativeTerm, order: Option<usize>) -> Expression
         DerivativeKind::First { axis: inner, of } => {
             DerivativeKind::Mixed { outer: axis, inner, coefficient: term.factor, of }
         }
-        DerivativeKind::Second { axis: inner, coefficient, of } if inner == axis && plain && coefficient.is_one() => {
+        DerivativeKind::Second { axis: inner, coefficient, of }
+            if inner == axis && plain && coefficient.is_one() =>
+        {
             DerivativeKind::Higher { axis, degree: 3, of }
         }
         DerivativeKind::Higher { axis: inner, degree: 3, of } if inner == axis && plain => {

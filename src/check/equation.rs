@@ -23,8 +23,10 @@ impl Checker<'_> {
         let mut read = Vec::new();
         let mut sound = !self.has_faulty(Section::Equations);
         for equation in &file.equations {
-            let (left, right) =
-                (self.formula(&equation.left, Place::Equation), self.formula(&equation.right, Place::Equation));
+            let (left, right) = (
+                self.formula(&equation.left, Place::Equation),
+                self.formula(&equation.right, Place::Equation),
+            );
             let (Some(left), Some(right)) = (left, right) else {
                 sound = false;
                 continue;
@@ -53,8 +55,12 @@ impl Checker<'_> {
             if let Some(first) = place {
                 let (span, name) = (first.span, file.fields[equation.field.0].name.text.clone());
                 self.diagnostics.push(
-                    Diagnostic::error(codes_check::SECOND_EQUATION, equation.span, format!("`{name}` has two equations"))
-                        .with_label(span, "the first one"),
+                    Diagnostic::error(
+                        codes_check::SECOND_EQUATION,
+                        equation.span,
+                        format!("`{name}` has two equations"),
+                    )
+                    .with_label(span, "the first one"),
                 );
                 sound = false;
             } else {
@@ -70,7 +76,10 @@ impl Checker<'_> {
                             field.name.span,
                             format!("no equation says how `{}` changes", field.name.text),
                         )
-                        .with_remedy(format!("add one with ∂{0}/∂t or ∂²{0}/∂t² to the section `equations`", field.name.text)),
+                        .with_remedy(format!(
+                            "add one with ∂{0}/∂t or ∂²{0}/∂t² to the section `equations`",
+                            field.name.text
+                        )),
                     );
                 }
             }
@@ -105,7 +114,9 @@ impl Checker<'_> {
             ));
             return None;
         }
-        if coefficient.any(&|node| matches!(node, Expression::Derivative(_) | Expression::Rate(_) | Expression::SecondRate(_))) {
+        if coefficient.any(&|node| {
+            matches!(node, Expression::Derivative(_) | Expression::Rate(_) | Expression::SecondRate(_))
+        }) {
             self.diagnostics.push(Diagnostic::error(
                 codes_check::NOT_LINEAR_IN_RATE,
                 one.span,
@@ -133,20 +144,30 @@ impl Checker<'_> {
     /// The field whose equation this is.
     fn highest(&mut self, one: &Read, second: &BTreeSet<FieldId>) -> Option<(FieldId, TimeOrder)> {
         let accelerations = second_rates(&one.terms);
-        let speeds: BTreeSet<FieldId> = rates(&one.terms).into_iter().filter(|field| !second.contains(field)).collect();
+        let speeds: BTreeSet<FieldId> =
+            rates(&one.terms).into_iter().filter(|field| !second.contains(field)).collect();
         let names = |fields: &BTreeSet<FieldId>| -> Vec<String> {
             fields.iter().map(|field| format!("`{}`", self.file.fields[field.0].name.text)).collect()
         };
-        let (fields, order) =
-            if accelerations.is_empty() { (speeds, TimeOrder::First) } else { (accelerations, TimeOrder::Second) };
+        let (fields, order) = if accelerations.is_empty() {
+            (speeds, TimeOrder::First)
+        } else {
+            (accelerations, TimeOrder::Second)
+        };
         let mut each = fields.iter();
         match (each.next(), each.next()) {
             (Some(field), None) => Some((*field, order)),
             (None, _) => {
                 self.diagnostics.push(
-                    Diagnostic::error(codes_check::NO_TIME_DERIVATIVE, one.span, "the equation has no time derivative")
-                        .with_text("expected ∂/∂t or ∂²/∂t² of one field")
-                        .with_remedy("steady equations are not solved here: let the field evolve until it is steady"),
+                    Diagnostic::error(
+                        codes_check::NO_TIME_DERIVATIVE,
+                        one.span,
+                        "the equation has no time derivative",
+                    )
+                    .with_text("expected ∂/∂t or ∂²/∂t² of one field")
+                    .with_remedy(
+                        "steady equations are not solved here: let the field evolve until it is steady",
+                    ),
                 );
                 None
             }
@@ -156,9 +177,13 @@ impl Checker<'_> {
                     Diagnostic::error(
                         codes_check::TWO_TIME_DERIVATIVES,
                         one.span,
-                        format!("the equation holds the time derivatives of {list}, so it belongs to neither"),
+                        format!(
+                            "the equation holds the time derivatives of {list}, so it belongs to neither"
+                        ),
                     )
-                    .with_remedy("combine the equations so that each holds the highest time derivative of one field"),
+                    .with_remedy(
+                        "combine the equations so that each holds the highest time derivative of one field",
+                    ),
                 );
                 None
             }
@@ -166,7 +191,11 @@ impl Checker<'_> {
     }
 
     /// What only periodic axes offer so far: third and fourth derivatives, and derivatives of derivatives that are no second derivative.
-    pub(super) fn bounded_axes(&mut self, axes: &Option<Vec<model::Axis>>, equations: &Option<Vec<Equation>>) {
+    pub(super) fn bounded_axes(
+        &mut self,
+        axes: &Option<Vec<model::Axis>>,
+        equations: &Option<Vec<Equation>>,
+    ) {
         let (Some(axes), Some(equations)) = (axes, equations) else { return };
         for equation in equations {
             let mut found: Vec<AxisId> = Vec::new();
@@ -232,7 +261,8 @@ fn linear(expression: &Expression, marker: &Expression) -> Option<(Expression, E
             Some((Expression::sum(coefficients), Expression::sum(rest)))
         }
         Expression::Product(_) => {
-            let (with, without): (Vec<_>, Vec<_>) = factors(expression.clone()).into_iter().partition(|part| holds(part));
+            let (with, without): (Vec<_>, Vec<_>) =
+                factors(expression.clone()).into_iter().partition(|part| holds(part));
             let [single] = with.as_slice() else { return None };
             let (coefficient, rest) = linear(single, marker)?;
             let scale = |part: Expression| Expression::product(without.iter().cloned().chain([part]));
@@ -240,7 +270,10 @@ fn linear(expression: &Expression, marker: &Expression) -> Option<(Expression, E
         }
         Expression::Quotient(above, below) if !holds(below) => {
             let (coefficient, rest) = linear(above, marker)?;
-            Some((coefficient.over((**below).clone()), if rest.is_zero() { rest } else { rest.over((**below).clone()) }))
+            Some((
+                coefficient.over((**below).clone()),
+                if rest.is_zero() { rest } else { rest.over((**below).clone()) },
+            ))
         }
         _ => None,
     }

@@ -88,7 +88,11 @@ impl Checker<'_> {
                 Some(Typed::number(Expression::Noise(seed.value)))
             }
             ExpressionKind::PointSource(_) => {
-                self.not_yet(tree.span, "a point source δ", "use a narrow smooth source, such as a Gaussian over a few nodes");
+                self.not_yet(
+                    tree.span,
+                    "a point source δ",
+                    "use a narrow smooth source, such as a Gaussian over a few nodes",
+                );
                 None
             }
             ExpressionKind::Derivative(derivative) => self.derivative(derivative, tree.span, place, bound),
@@ -149,7 +153,10 @@ impl Checker<'_> {
             }
             Some(Kind::Coefficient(index)) => {
                 let typed = self.coefficient(index, span)?;
-                Some(Typed { value: Expression::Coefficient(CoefficientId(index)), dimension: typed.dimension })
+                Some(Typed {
+                    value: Expression::Coefficient(CoefficientId(index)),
+                    dimension: typed.dimension,
+                })
             }
             Some(Kind::Field(_)) if matches!(place, Place::Constant | Place::Data) => {
                 self.misplaced(span, &format!("the field `{name}`"), place)
@@ -200,7 +207,14 @@ impl Checker<'_> {
     }
 
     /// Two things that must have the same dimension and have not.
-    pub(super) fn mismatch(&mut self, at: Span, found: &Dimension, other: Span, expected: &Dimension, what: &str) {
+    pub(super) fn mismatch(
+        &mut self,
+        at: Span,
+        found: &Dimension,
+        other: Span,
+        expected: &Dimension,
+        what: &str,
+    ) {
         self.diagnostics.push(
             Diagnostic::error(
                 codes_check::DIMENSIONS_DIFFER,
@@ -324,13 +338,18 @@ impl Checker<'_> {
                         Some(_) => {}
                     }
                 }
-                Some(Typed { value: Expression::Call(name, values), dimension: dimension.map(|(own, _)| own) })
+                Some(Typed {
+                    value: Expression::Call(name, values),
+                    dimension: dimension.map(|(own, _)| own),
+                })
             }
             tree::Function::Sqrt => {
                 let dimension = typed[0].dimension.as_ref().map(|own| own.power(&Rational::ratio(1, 2)));
                 Some(Typed { value: typed[0].value.clone().square_root(), dimension })
             }
-            tree::Function::Abs => Some(Typed { value: Expression::Call(name, values), dimension: typed[0].dimension.clone() }),
+            tree::Function::Abs => {
+                Some(Typed { value: Expression::Call(name, values), dimension: typed[0].dimension.clone() })
+            }
             tree::Function::Sign => Some(Typed::number(Expression::Call(name, values))),
             _ => {
                 if let Some(dimension) = typed[0].dimension.as_ref().filter(|dimension| !dimension.is_one()) {
@@ -361,7 +380,8 @@ impl Checker<'_> {
             Some(Kind::Operator(index)) => Some(index),
             _ => None,
         };
-        let index = self.scope.expect(operator, "a named operator or a function", index, &mut self.diagnostics)?;
+        let index =
+            self.scope.expect(operator, "a named operator or a function", index, &mut self.diagnostics)?;
         let declared = &self.file.operators[index];
         if declared.parameters.len() != arguments.len() {
             self.diagnostics.push(
@@ -578,15 +598,23 @@ impl Checker<'_> {
             return self.misplaced(span, "a normal derivative ∂/∂n", place);
         }
         if derivative.order != 1 {
-            self.not_yet(span, "a condition on a higher normal derivative", "give the value or the first normal derivative");
+            self.not_yet(
+                span,
+                "a condition on a higher normal derivative",
+                "give the value or the first normal derivative",
+            );
             return None;
         }
         let typed = self.convert(&derivative.of, place, bound)?;
         let length = self.normal_dimension.clone().unwrap_or_else(Dimension::one);
         let Some((factor, field)) = split_field(&typed.value) else {
             self.diagnostics.push(
-                Diagnostic::error(codes_check::RATE_OF_FORMULA, span, "the normal derivative of a formula: only fields have one here")
-                    .with_remedy("write the rule out"),
+                Diagnostic::error(
+                    codes_check::RATE_OF_FORMULA,
+                    span,
+                    "the normal derivative of a formula: only fields have one here",
+                )
+                .with_remedy("write the rule out"),
             );
             return None;
         };
@@ -661,7 +689,8 @@ impl Checker<'_> {
                 Some(self.divergence_of(&Typed::number(Expression::one()), of, bound))
             }
             ExpressionKind::Product(factors) => {
-                let gradients = factors.iter().filter(|factor| matches!(factor.value.kind, ExpressionKind::Gradient(_)));
+                let gradients =
+                    factors.iter().filter(|factor| matches!(factor.value.kind, ExpressionKind::Gradient(_)));
                 let (1, Some(gradient)) = (gradients.clone().count(), gradients.clone().next()) else {
                     return self.scalar_flux(flux.span);
                 };
@@ -698,7 +727,9 @@ impl Checker<'_> {
         self.diagnostics.push(
             Diagnostic::error(codes_check::VECTOR_ALONE, span, "∇· takes a vector, and this is none")
                 .with_text("expected terms like k * ∇T, one gradient each")
-                .with_remedy("transport by a velocity is written axis by axis: ∂/∂x(u_x * q) + ∂/∂y(u_y * q)"),
+                .with_remedy(
+                    "transport by a velocity is written axis by axis: ∂/∂x(u_x * q) + ∂/∂y(u_y * q)",
+                ),
         );
         None
     }
@@ -710,7 +741,11 @@ impl Checker<'_> {
             let slope = self.along(axis, of.clone(), bound);
             let flux = Typed {
                 value: coefficient.value.clone().times(slope.value),
-                dimension: coefficient.dimension.as_ref().zip(slope.dimension.as_ref()).map(|(a, b)| a.times(b)),
+                dimension: coefficient
+                    .dimension
+                    .as_ref()
+                    .zip(slope.dimension.as_ref())
+                    .map(|(a, b)| a.times(b)),
             };
             let outer = self.along(axis, flux, bound);
             dimension = outer.dimension;
@@ -754,11 +789,14 @@ fn split_field(value: &Expression) -> Option<(Expression, FieldId)> {
                 Expression::Field(field) => Some(*field),
                 _ => None,
             });
-            let field = fields.next().filter(|_| items.iter().filter(|item| holds_state(item)).count() == 1)?;
+            let field =
+                fields.next().filter(|_| items.iter().filter(|item| holds_state(item)).count() == 1)?;
             let rest = items.iter().filter(|item| !holds_state(item)).cloned();
             let rest: Vec<Expression> = rest.collect();
             // A factor that varies in time would have to be differentiated as well.
-            let still = rest.iter().all(|item| !item.any(&|node| matches!(node, Expression::Time | Expression::Coefficient(_))));
+            let still = rest
+                .iter()
+                .all(|item| !item.any(&|node| matches!(node, Expression::Time | Expression::Coefficient(_))));
             still.then(|| (Expression::product(rest), field))
         }
         _ => None,
@@ -767,7 +805,10 @@ fn split_field(value: &Expression) -> Option<(Expression, FieldId)> {
 
 fn holds_state(value: &Expression) -> bool {
     value.any(&|node| {
-        matches!(node, Expression::Field(_) | Expression::Rate(_) | Expression::Derivative(_) | Expression::Normal(_))
+        matches!(
+            node,
+            Expression::Field(_) | Expression::Rate(_) | Expression::Derivative(_) | Expression::Normal(_)
+        )
     })
 }
 

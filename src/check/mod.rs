@@ -37,7 +37,9 @@ pub fn check(file: &ModelFile, source: &SourceFile) -> (Option<Model>, Diagnosti
     };
     let model = checker.model();
     let mut diagnostics = checker.diagnostics;
-    let Some((mut model, raw)) = model.filter(|_| !diagnostics.has_errors()) else { return (None, diagnostics) };
+    let Some((mut model, raw)) = model.filter(|_| !diagnostics.has_errors()) else {
+        return (None, diagnostics);
+    };
     model.conditions = conditions::classify(&model, raw, &mut diagnostics);
     if diagnostics.has_errors() {
         return (None, diagnostics);
@@ -85,7 +87,9 @@ impl Checker<'_> {
         let header = self.file.header.as_ref();
         let model = Model {
             name: header.map_or_else(|| "model".to_owned(), |header| header.name.text.clone()),
-            title: header.and_then(|header| header.title.as_ref()).map_or_else(String::new, |title| title.text.clone()),
+            title: header
+                .and_then(|header| header.title.as_ref())
+                .map_or_else(String::new, |title| title.text.clone()),
             axes: axes?,
             free_constants: std::mem::take(&mut self.free),
             folded_constants: std::mem::take(&mut self.folded),
@@ -121,7 +125,10 @@ impl Checker<'_> {
                         span,
                         format!("the model has no section `{}`", section.word()),
                     )
-                    .with_remedy(format!("add the line `{}` and below it, for example: {example}", section.word())),
+                    .with_remedy(format!(
+                        "add the line `{}` and below it, for example: {example}",
+                        section.word()
+                    )),
                 );
             }
         }

@@ -10,7 +10,10 @@ use crate::syntax::tree::{self, End, PlaceKind, Section};
 
 impl Checker<'_> {
     /// The state at the start: every field, and the rates of fields that are second order in time.
-    pub(super) fn initial_conditions(&mut self, equations: &Option<Vec<Equation>>) -> Option<Vec<InitialCondition>> {
+    pub(super) fn initial_conditions(
+        &mut self,
+        equations: &Option<Vec<Equation>>,
+    ) -> Option<Vec<InitialCondition>> {
         let file = self.file;
         let mut found: Vec<InitialCondition> = Vec::new();
         let mut sound = !self.has_faulty(Section::Conditions);
@@ -22,8 +25,12 @@ impl Checker<'_> {
                         .find(|known| known.field == initial.field && known.derivative == initial.derivative);
                     if let Some(twin) = twin {
                         self.diagnostics.push(
-                            Diagnostic::error(codes_check::SECOND_INITIAL, condition.span, "the start is given twice")
-                                .with_label(twin.span, "first given here"),
+                            Diagnostic::error(
+                                codes_check::SECOND_INITIAL,
+                                condition.span,
+                                "the start is given twice",
+                            )
+                            .with_label(twin.span, "first given here"),
                         );
                         sound = false;
                         continue;
@@ -43,10 +50,18 @@ impl Checker<'_> {
                 let second = equation.order == TimeOrder::Second;
                 if !has(0) || second && !has(1) {
                     let what = if has(0) { format!("∂{}/∂t", name.text) } else { name.text.clone() };
-                    let why = if second { " (its equation is second order in time: value and rate are needed)" } else { "" };
+                    let why = if second {
+                        " (its equation is second order in time: value and rate are needed)"
+                    } else {
+                        ""
+                    };
                     self.diagnostics.push(
-                        Diagnostic::error(codes_check::NO_INITIAL, name.span, format!("the start of {what} is not given{why}"))
-                            .with_remedy(format!("add `at t = start: {what} = …` to the section `conditions`")),
+                        Diagnostic::error(
+                            codes_check::NO_INITIAL,
+                            name.span,
+                            format!("the start of {what} is not given{why}"),
+                        )
+                        .with_remedy(format!("add `at t = start: {what} = …` to the section `conditions`")),
                     );
                     sound = false;
                 }
@@ -58,7 +73,10 @@ impl Checker<'_> {
                     self.diagnostics.push(Diagnostic::error(
                         codes_check::SECOND_INITIAL,
                         span,
-                        format!("`{}` is first order in time: its rate at the start follows from its equation", name.text),
+                        format!(
+                            "`{}` is first order in time: its rate at the start follows from its equation",
+                            name.text
+                        ),
                     ));
                     sound = false;
                 }
@@ -76,8 +94,12 @@ impl Checker<'_> {
             Expression::Rate(field) => (*field, 1),
             _ => {
                 self.diagnostics.push(
-                    Diagnostic::error(codes_check::INITIAL_FORM, condition.left.span, "the left side of a start is a field or its rate")
-                        .with_text("expected a field, or ∂/∂t of one"),
+                    Diagnostic::error(
+                        codes_check::INITIAL_FORM,
+                        condition.left.span,
+                        "the left side of a start is a field or its rate",
+                    )
+                    .with_text("expected a field, or ∂/∂t of one"),
                 );
                 return None;
             }
@@ -128,7 +150,9 @@ impl Checker<'_> {
         };
         let bounded = (0..self.file.axes.len()).filter(|index| !periodic(&self.file.axes[*index]));
         bounded
-            .flat_map(|index| [Side::Low, Side::High].map(|side| (Face { axis: AxisId(index), side }, Vec::new())))
+            .flat_map(|index| {
+                [Side::Low, Side::High].map(|side| (Face { axis: AxisId(index), side }, Vec::new()))
+            })
             .collect()
     }
 
@@ -174,9 +198,13 @@ impl Checker<'_> {
             return Some(Side::High);
         }
         self.diagnostics.push(
-            Diagnostic::error(codes_check::NOT_A_FACE, place.span, "only faces carry conditions, and this is inside or outside the axis")
-                .with_text("expected one of the axis's two ends")
-                .with_remedy(format!("write `{0} = low` or `{0} = high`", self.file.axes[axis.0].name.text)),
+            Diagnostic::error(
+                codes_check::NOT_A_FACE,
+                place.span,
+                "only faces carry conditions, and this is inside or outside the axis",
+            )
+            .with_text("expected one of the axis's two ends")
+            .with_remedy(format!("write `{0} = low` or `{0} = high`", self.file.axes[axis.0].name.text)),
         );
         None
     }

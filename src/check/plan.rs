@@ -8,7 +8,8 @@ use crate::diagnostic::{Diagnostic, codes_check};
 use crate::exact::Rational;
 use crate::model::sign::Sign;
 use crate::model::{
-    self, Accuracy, AskedOrder, Dimension, Expression, FieldId, Method, Output, OutputKind, Step, TimePlan, Verification,
+    self, Accuracy, AskedOrder, Dimension, Expression, FieldId, Method, Output, OutputKind, Step, TimePlan,
+    Verification,
 };
 use crate::source::Span;
 use crate::syntax::tree::{
@@ -37,7 +38,11 @@ impl Checker<'_> {
     fn refuse_closures(&mut self, kind: &AccuracyKind, span: Span) {
         match kind {
             AccuracyKind::Closures(ClosureFamily::OneSided) => {
-                self.not_yet(span, "one-sided closures", "leave it out: closures are energy-stable by default");
+                self.not_yet(
+                    span,
+                    "one-sided closures",
+                    "leave it out: closures are energy-stable by default",
+                );
             }
             AccuracyKind::Closures(ClosureFamily::Mirrored) => {
                 self.not_yet(span, "mirrored closures", "leave it out and give ∂/∂n = 0 at the face");
@@ -54,8 +59,12 @@ impl Checker<'_> {
             return Some(order.value as usize);
         }
         self.diagnostics.push(
-            Diagnostic::error(codes_check::ORDER_RANGE, span, format!("order {} is not offered", order.value))
-                .with_text("expected 1 to 16"),
+            Diagnostic::error(
+                codes_check::ORDER_RANGE,
+                span,
+                format!("order {} is not offered", order.value),
+            )
+            .with_text("expected 1 to 16"),
         );
         None
     }
@@ -82,7 +91,11 @@ impl Checker<'_> {
             };
             if axes.is_empty() {
                 if general.is_some() {
-                    self.diagnostics.push(Diagnostic::error(codes_check::STATED_TWICE, line.span, "the order is stated twice"));
+                    self.diagnostics.push(Diagnostic::error(
+                        codes_check::STATED_TWICE,
+                        line.span,
+                        "the order is stated twice",
+                    ));
                     sound = false;
                 }
                 general = Some(asked);
@@ -103,17 +116,28 @@ impl Checker<'_> {
                 }
             }
         }
-        if sound && file.section(Section::Accuracy).is_some() && general.is_none() && per_axis.iter().any(Option::is_none) {
+        if sound
+            && file.section(Section::Accuracy).is_some()
+            && general.is_none()
+            && per_axis.iter().any(Option::is_none)
+        {
             let at = self.section_span(Section::Accuracy);
             self.diagnostics.push(
-                Diagnostic::error(codes_check::SECTION_MISSING, at, "the order of accuracy is not stated for every axis")
-                    .with_remedy("add `order 4`, say, to the section `accuracy`"),
+                Diagnostic::error(
+                    codes_check::SECTION_MISSING,
+                    at,
+                    "the order of accuracy is not stated for every axis",
+                )
+                .with_remedy("add `order 4`, say, to the section `accuracy`"),
             );
             return None;
         }
         let per_axis: Option<Vec<AskedOrder>> = per_axis.into_iter().map(|own| own.or(general)).collect();
         sound.then_some(())?;
-        Some(Accuracy { span: span.unwrap_or_else(|| self.section_span(Section::Accuracy)), per_axis: per_axis? })
+        Some(Accuracy {
+            span: span.unwrap_or_else(|| self.section_span(Section::Accuracy)),
+            per_axis: per_axis?,
+        })
     }
 
     pub(super) fn time(&mut self) -> Option<TimePlan> {
@@ -127,14 +151,20 @@ impl Checker<'_> {
                 TimeKind::Step(_) | TimeKind::StepOfLimit(_) => step.is_some(),
             };
             if twice {
-                self.diagnostics.push(Diagnostic::error(codes_check::STATED_TWICE, line.span, "this is stated twice"));
+                self.diagnostics.push(Diagnostic::error(
+                    codes_check::STATED_TWICE,
+                    line.span,
+                    "this is stated twice",
+                ));
                 sound = false;
                 continue;
             }
             match &line.kind {
                 TimeKind::Interval { start, end } => interval = Some(self.interval(start, end, line.span)),
                 TimeKind::Method(name) => method = Some(self.method(name)),
-                TimeKind::Step(duration) => step = Some(self.duration(duration, "the step").map(Step::Duration)),
+                TimeKind::Step(duration) => {
+                    step = Some(self.duration(duration, "the step").map(Step::Duration))
+                }
                 TimeKind::StepOfLimit(fraction) => step = Some(self.fraction(fraction)),
             }
         }
@@ -147,8 +177,12 @@ impl Checker<'_> {
             ] {
                 if missing {
                     self.diagnostics.push(
-                        Diagnostic::error(codes_check::SECTION_MISSING, span, "the section `time` is not complete")
-                            .with_remedy(format!("add a line like `{example}`")),
+                        Diagnostic::error(
+                            codes_check::SECTION_MISSING,
+                            span,
+                            "the section `time` is not complete",
+                        )
+                        .with_remedy(format!("add a line like `{example}`")),
                     );
                 }
             }
@@ -158,7 +192,12 @@ impl Checker<'_> {
         sound.then(|| TimePlan { start, end, method, step, span: self.section_span(Section::Time) })
     }
 
-    fn interval(&mut self, start: &tree::Expression, end: &tree::Expression, span: Span) -> Option<(Expression, Expression)> {
+    fn interval(
+        &mut self,
+        start: &tree::Expression,
+        end: &tree::Expression,
+        span: Span,
+    ) -> Option<(Expression, Expression)> {
         let (a, b) = (self.formula(start, Place::Constant), self.formula(end, Place::Constant));
         let (a, b) = (a?, b?);
         if let (Some(first), Some(second)) = (&a.dimension, &b.dimension)
@@ -171,12 +210,19 @@ impl Checker<'_> {
         let dimension = self.time_dimension.clone();
         if !dimension.is_one() && dimension != Dimension::time() {
             self.diagnostics.push(
-                Diagnostic::error(codes_check::NOT_A_TIME, span, format!("the time interval is in {dimension}"))
-                    .with_text("expected times, like `0 s to 3 d`, or pure numbers"),
+                Diagnostic::error(
+                    codes_check::NOT_A_TIME,
+                    span,
+                    format!("the time interval is in {dimension}"),
+                )
+                .with_text("expected times, like `0 s to 3 d`, or pure numbers"),
             );
             return None;
         }
-        if matches!(self.sign(&b.value.clone().minus(a.value.clone())), Sign::Negative | Sign::Zero | Sign::NonPositive) {
+        if matches!(
+            self.sign(&b.value.clone().minus(a.value.clone())),
+            Sign::Negative | Sign::Zero | Sign::NonPositive
+        ) {
             self.diagnostics.push(Diagnostic::error(
                 codes_check::TIME_DIRECTION,
                 span,
@@ -192,7 +238,11 @@ impl Checker<'_> {
             return Some(*method);
         }
         if IMPLICIT.contains(&name.text.to_lowercase().as_str()) {
-            self.not_yet(name.span, &format!("the implicit method `{}`", name.text), "use an explicit method, such as rk4 or lsrk4");
+            self.not_yet(
+                name.span,
+                &format!("the implicit method `{}`", name.text),
+                "use an explicit method, such as rk4 or lsrk4",
+            );
             return None;
         }
         let names: Vec<&str> = Method::ALL.iter().map(|(_, known)| *known).collect();
@@ -201,9 +251,13 @@ impl Checker<'_> {
             None => format!("the methods are {}", names.join(", ")),
         };
         self.diagnostics.push(
-            Diagnostic::error(codes_check::UNKNOWN_METHOD, name.span, format!("`{}` is no time method known here", name.text))
-                .with_text(format!("expected one of {}", names.join(", ")))
-                .with_remedy(remedy),
+            Diagnostic::error(
+                codes_check::UNKNOWN_METHOD,
+                name.span,
+                format!("`{}` is no time method known here", name.text),
+            )
+            .with_text(format!("expected one of {}", names.join(", ")))
+            .with_remedy(remedy),
         );
         None
     }
@@ -239,8 +293,12 @@ impl Checker<'_> {
             return Some(Step::OfLimit(fraction.clone()));
         }
         self.diagnostics.push(
-            Diagnostic::error(codes_check::NOT_POSITIVE, tree.span, "the fraction of the limit is a number greater than zero")
-                .with_remedy("write a literal, like `step 0.9 of limit`"),
+            Diagnostic::error(
+                codes_check::NOT_POSITIVE,
+                tree.span,
+                "the fraction of the limit is a number greater than zero",
+            )
+            .with_remedy("write a literal, like `step 0.9 of limit`"),
         );
         None
     }
@@ -315,11 +373,16 @@ impl Checker<'_> {
                     self.scope.expect(axis, "an axis", found, &mut self.diagnostics)?;
                 }
                 if over.len() != self.file.axes.len() {
-                    self.not_yet(span, "an integral over some of the axes only", "integrate over all axes of the model");
+                    self.not_yet(
+                        span,
+                        "an integral over some of the axes only",
+                        "integrate over all axes of the model",
+                    );
                     return None;
                 }
                 let volume = self.scope.axes.iter().fold(Dimension::one(), |total, axis| total.times(axis));
-                let typed = Typed { dimension: typed.dimension.map(|own| own.times(&volume)), value: typed.value };
+                let typed =
+                    Typed { dimension: typed.dimension.map(|own| own.times(&volume)), value: typed.value };
                 let mut output = finish(&name.text, typed, OutputKind::Integral, &None, span);
                 output.unit = output.dimension.to_string();
                 Some(vec![output])
@@ -329,10 +392,22 @@ impl Checker<'_> {
                 self.output_name(name)?;
                 let places: Vec<(tree::Name, Vec<Expression>)> = place
                     .iter()
-                    .map(|coordinate| Some((coordinate.axis.clone(), vec![self.coordinate(&coordinate.axis, &coordinate.value)?])))
+                    .map(|coordinate| {
+                        Some((
+                            coordinate.axis.clone(),
+                            vec![self.coordinate(&coordinate.axis, &coordinate.value)?],
+                        ))
+                    })
                     .collect::<Option<_>>()?;
                 let place = self.place(places, axes, span)?;
-                Some(place.into_iter().map(|place| finish(&name.text, typed.clone(), OutputKind::Gauge { place }, fields, span)).collect())
+                Some(
+                    place
+                        .into_iter()
+                        .map(|place| {
+                            finish(&name.text, typed.clone(), OutputKind::Gauge { place }, fields, span)
+                        })
+                        .collect(),
+                )
             }
             tree::OutputKind::Gauges { name, value, place } => {
                 let typed = self.formula(value, Place::Output)?;
@@ -347,7 +422,11 @@ impl Checker<'_> {
                     all.into_iter()
                         .enumerate()
                         .map(|(index, place)| {
-                            let label = if many == 1 { name.text.clone() } else { format!("{}_{}", name.text, index + 1) };
+                            let label = if many == 1 {
+                                name.text.clone()
+                            } else {
+                                format!("{}_{}", name.text, index + 1)
+                            };
                             finish(&label, typed.clone(), OutputKind::Gauge { place }, fields, span)
                         })
                         .collect(),
@@ -362,8 +441,12 @@ impl Checker<'_> {
             return Some(());
         }
         self.diagnostics.push(
-            Diagnostic::error(codes_check::DUPLICATE_NAME, name.span, format!("`{}` is a field already", name.text))
-                .with_remedy("give the output a name of its own"),
+            Diagnostic::error(
+                codes_check::DUPLICATE_NAME,
+                name.span,
+                format!("`{}` is a field already", name.text),
+            )
+            .with_remedy("give the output a name of its own"),
         );
         None
     }
@@ -387,8 +470,12 @@ impl Checker<'_> {
         let above = self.sign(&high.value.minus(typed.value.clone())) == Sign::Negative;
         if below || above {
             self.diagnostics.push(
-                Diagnostic::error(codes_check::OUTSIDE, value.span, format!("this lies outside the axis `{}`", axis.text))
-                    .with_label(self.file.axes[id.0].span, "the axis"),
+                Diagnostic::error(
+                    codes_check::OUTSIDE,
+                    value.span,
+                    format!("this lies outside the axis `{}`", axis.text),
+                )
+                .with_label(self.file.axes[id.0].span, "the axis"),
             );
             return None;
         }
@@ -400,15 +487,24 @@ impl Checker<'_> {
         let first = self.coordinate(&range.axis, &range.first)?;
         let Some((last, by)) = &range.to else { return Some(vec![first]) };
         let (last, step) = (self.coordinate(&range.axis, last)?, self.formula(by, Place::Constant)?.value);
-        let (Expression::Number(a), Expression::Number(b), Expression::Number(c)) = (&first, &last, &step) else {
-            self.not_yet(by.span, "a range of gauges that is not given by plain numbers", "give the places as numbers with units");
+        let (Expression::Number(a), Expression::Number(b), Expression::Number(c)) = (&first, &last, &step)
+        else {
+            self.not_yet(
+                by.span,
+                "a range of gauges that is not given by plain numbers",
+                "give the places as numbers with units",
+            );
             return None;
         };
         let count = (b - a).checked_div(c).map(|count| count.floor()).and_then(|count| count.to_i64());
         let Some(count) = count.filter(|count| (0..MOST_GAUGES).contains(count)) else {
             self.diagnostics.push(
-                Diagnostic::error(codes_check::NOT_POSITIVE, by.span, "this distance does not lead from the first place to the last")
-                    .with_text(format!("at most {MOST_GAUGES} gauges in a line")),
+                Diagnostic::error(
+                    codes_check::NOT_POSITIVE,
+                    by.span,
+                    "this distance does not lead from the first place to the last",
+                )
+                .with_text(format!("at most {MOST_GAUGES} gauges in a line")),
             );
             return None;
         };
@@ -427,15 +523,21 @@ impl Checker<'_> {
             let mut of_axis = given.iter().filter(|(name, _)| name.text == axis.name);
             let (Some((_, values)), None) = (of_axis.next(), of_axis.next()) else {
                 self.diagnostics.push(
-                    Diagnostic::error(codes_check::PLACE_INCOMPLETE, span, format!("a place needs one coordinate along `{}`", axis.name))
-                        .with_remedy(format!("write `at {} = …`, one for each axis", axis.name)),
+                    Diagnostic::error(
+                        codes_check::PLACE_INCOMPLETE,
+                        span,
+                        format!("a place needs one coordinate along `{}`", axis.name),
+                    )
+                    .with_remedy(format!("write `at {} = …`, one for each axis", axis.name)),
                 );
                 return None;
             };
             places = places
                 .into_iter()
                 .flat_map(|place| {
-                    values.iter().map(move |value| place.iter().cloned().chain([value.clone()]).collect::<Vec<_>>())
+                    values
+                        .iter()
+                        .map(move |value| place.iter().cloned().chain([value.clone()]).collect::<Vec<_>>())
                 })
                 .collect();
             if places.len() as i64 > MOST_GAUGES {
@@ -460,11 +562,16 @@ impl Checker<'_> {
         let mut sound = !self.has_faulty(Section::Verification);
         for line in &file.verification {
             match &line.kind {
-                VerificationKind::Exact { field, value } | VerificationKind::Manufactured { field, value } => {
+                VerificationKind::Exact { field, value }
+                | VerificationKind::Manufactured { field, value } => {
                     result.manufactured |= matches!(line.kind, VerificationKind::Manufactured { .. });
                     match self.solution(field, value) {
                         Some((id, _)) if result.solutions.iter().any(|(known, _)| *known == id) => {
-                            self.diagnostics.push(Diagnostic::error(codes_check::STATED_TWICE, line.span, "this solution is stated twice"));
+                            self.diagnostics.push(Diagnostic::error(
+                                codes_check::STATED_TWICE,
+                                line.span,
+                                "this solution is stated twice",
+                            ));
                             sound = false;
                         }
                         Some(solution) => result.solutions.push(solution),
@@ -474,7 +581,11 @@ impl Checker<'_> {
                 VerificationKind::Grids(grids) => {
                     result.grids = grids.iter().map(|grid| grid.value as usize).collect();
                     if !result.grids.is_sorted_by(|a, b| a < b) {
-                        self.diagnostics.push(Diagnostic::error(codes_check::GRIDS_ORDER, line.span, "grids grow from one to the next"));
+                        self.diagnostics.push(Diagnostic::error(
+                            codes_check::GRIDS_ORDER,
+                            line.span,
+                            "grids grow from one to the next",
+                        ));
                         sound = false;
                     }
                 }
@@ -498,7 +609,13 @@ impl Checker<'_> {
 }
 
 /// An output in the unit of a field of the same dimension, or in SI.
-fn finish(name: &str, typed: Typed, kind: OutputKind, fields: &Option<Vec<model::Field>>, span: Span) -> Output {
+fn finish(
+    name: &str,
+    typed: Typed,
+    kind: OutputKind,
+    fields: &Option<Vec<model::Field>>,
+    span: Span,
+) -> Output {
     let dimension = typed.dimension.unwrap_or_else(Dimension::one);
     let like = match Checker::plain_field(&typed.value) {
         Some(id) => fields.as_ref().and_then(|fields| fields.get(id.0)),

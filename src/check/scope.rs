@@ -68,10 +68,17 @@ impl Scope {
         };
         let names = (file.axes.iter().enumerate().map(|(index, item)| (&item.name, Kind::Axis(index))))
             .chain(file.constants.iter().enumerate().map(|(index, item)| (&item.name, Kind::Constant(index))))
-            .chain(file.coefficients.iter().enumerate().map(|(index, item)| (&item.name, Kind::Coefficient(index))))
+            .chain(
+                file.coefficients
+                    .iter()
+                    .enumerate()
+                    .map(|(index, item)| (&item.name, Kind::Coefficient(index))),
+            )
             .chain(file.fields.iter().enumerate().map(|(index, item)| (&item.name, Kind::Field(index))))
             .chain(file.operators.iter().enumerate().map(|(index, item)| (&item.name, Kind::Operator(index))))
-            .chain(file.faulty.iter().filter_map(|item| item.declares.as_ref()).map(|name| (name, Kind::Faulty)));
+            .chain(
+                file.faulty.iter().filter_map(|item| item.declares.as_ref()).map(|name| (name, Kind::Faulty)),
+            );
         for (name, kind) in names {
             scope.add(name, kind, diagnostics);
         }

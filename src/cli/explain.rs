@@ -6,7 +6,9 @@ use crate::diagnostic::{Code, nearest::nearest, safe::safe};
 
 /// Explains a diagnostic.
 #[derive(clap::Args, Debug)]
-#[command(after_help = "Examples:\n  rimstone explain            list all codes\n  rimstone explain E0121      explain one")]
+#[command(
+    after_help = "Examples:\n  rimstone explain            list all codes\n  rimstone explain E0121      explain one"
+)]
 pub struct Arguments {
     /// The code, as it stands in brackets after `error` or `warning`
     code: Option<String>,
@@ -91,7 +93,10 @@ mod tests {
             let text = explanation(code);
             assert!(text.starts_with(code.as_str()) && text.contains("Wrong:") && text.contains("Right:"));
             let entry = code.0;
-            assert!(!entry.title.is_empty() && entry.explanation.ends_with('.') && entry.wrong != entry.right, "{code}");
+            assert!(
+                !entry.title.is_empty() && entry.explanation.ends_with('.') && entry.wrong != entry.right,
+                "{code}"
+            );
             assert!(text.lines().all(|line| line.chars().count() <= 110), "{code}");
         }
         assert_eq!(list().lines().count(), Code::all().len());
@@ -105,7 +110,9 @@ mod tests {
         }
         for code in all {
             let (kind, number) = code.as_str().split_at(1);
-            assert!(["E", "W"].contains(&kind) && number.len() == 4 && number.bytes().all(|b| b.is_ascii_digit()));
+            assert!(
+                ["E", "W"].contains(&kind) && number.len() == 4 && number.bytes().all(|b| b.is_ascii_digit())
+            );
         }
         assert_eq!(Code::find("e0121").map(Code::as_str), Some("E0121"));
         assert!(Code::find("E9999").is_none());

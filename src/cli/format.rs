@@ -10,7 +10,9 @@ use crate::syntax;
 
 /// Lays a model file out: symbols for control words, spaces, columns; comments are kept.
 #[derive(clap::Args, Debug)]
-#[command(after_help = "Examples:\n  rimstone format wall.rim            print it\n  rimstone format --check *.rim       say which are not in layout\n  rimstone format --write wall.rim    lay it out in place")]
+#[command(
+    after_help = "Examples:\n  rimstone format wall.rim            print it\n  rimstone format --check *.rim       say which are not in layout\n  rimstone format --write wall.rim    lay it out in place"
+)]
 pub struct Arguments {
     /// Model files
     #[arg(required = true)]
@@ -107,7 +109,10 @@ mod tests {
         std::fs::write(&path, "model wall\naxes\n x:0 to 1,11 nodes\n").expect("a file for the test");
         assert_eq!(format_file(&path, &arguments(false)), Outcome::Fault);
         assert_eq!(format_file(&path, &arguments(true)), Outcome::Done);
-        assert_eq!(std::fs::read_to_string(&path).expect("it is there"), "model wall\naxes\n  x: 0 to 1, 11 nodes\n");
+        assert_eq!(
+            std::fs::read_to_string(&path).expect("it is there"),
+            "model wall\naxes\n  x: 0 to 1, 11 nodes\n"
+        );
         assert_eq!(format_file(&path, &arguments(false)), Outcome::Done);
         std::fs::write(&path, "model wall\naxes\n x: (\n").expect("a file for the test");
         assert_eq!(format_file(&path, &arguments(true)), Outcome::Fault);

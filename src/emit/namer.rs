@@ -102,12 +102,14 @@ fn separate(result: &mut String) {
 
 fn greek(letter: char) -> Option<&'static str> {
     let names = [
-        "alpha", "beta", "gamma", "delta", "epsilon", "zeta", "eta", "theta", "iota", "kappa", "lambda", "mu", "nu",
-        "xi", "omicron", "pi", "rho", "sigma", "sigma", "tau", "upsilon", "phi", "chi", "psi", "omega",
+        "alpha", "beta", "gamma", "delta", "epsilon", "zeta", "eta", "theta", "iota", "kappa", "lambda",
+        "mu", "nu", "xi", "omicron", "pi", "rho", "sigma", "sigma", "tau", "upsilon", "phi", "chi", "psi",
+        "omega",
     ];
     let capitals = [
-        "Alpha", "Beta", "Gamma", "Delta", "Epsilon", "Zeta", "Eta", "Theta", "Iota", "Kappa", "Lambda", "Mu", "Nu",
-        "Xi", "Omicron", "Pi", "Rho", "Sigma", "Sigma", "Tau", "Upsilon", "Phi", "Chi", "Psi", "Omega",
+        "Alpha", "Beta", "Gamma", "Delta", "Epsilon", "Zeta", "Eta", "Theta", "Iota", "Kappa", "Lambda",
+        "Mu", "Nu", "Xi", "Omicron", "Pi", "Rho", "Sigma", "Sigma", "Tau", "Upsilon", "Phi", "Chi", "Psi",
+        "Omega",
     ];
     let small = u32::from(letter).checked_sub(0x3b1).and_then(|place| names.get(place as usize));
     let capital = u32::from(letter).checked_sub(0x391).and_then(|place| capitals.get(place as usize));
@@ -121,7 +123,8 @@ mod tests {
     #[test]
     fn hostile_names_become_legal_and_distinct() {
         let mut namer = Namer::default();
-        let wishes = ["double", "u", "U", "u ", "κ", "2nd", "", "*/", "fn", "a-b", "a_b", "ice\n\"x", "__x__"];
+        let wishes =
+            ["double", "u", "U", "u ", "κ", "2nd", "", "*/", "fn", "a-b", "a_b", "ice\n\"x", "__x__"];
         let names: Vec<String> = wishes.iter().map(|wish| namer.name(wish)).collect();
         let distinct: BTreeSet<String> = names.iter().map(|name| name.to_lowercase()).collect();
         assert_eq!(distinct.len(), wishes.len(), "{names:?}");

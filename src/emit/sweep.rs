@@ -154,7 +154,8 @@ impl SweepPrinter<'_> {
         };
         let unsplit: Vec<ValueId> = roots.iter().map(|root| self.without_rate(*root)).collect();
         let statements = if self.split() || self.job.rates.is_empty() {
-            Printer { kernel: self.context.kernel, language, leaf: &mut leaf, names: &mut names }.statements(&unsplit)
+            Printer { kernel: self.context.kernel, language, leaf: &mut leaf, names: &mut names }
+                .statements(&unsplit)
         } else {
             self.joined(&unsplit, &mut names)
         };
@@ -271,15 +272,19 @@ impl SweepPrinter<'_> {
     fn rates_at_node(&self, text: &mut Text, signature: &Signature, index: &str, faces: Faces) {
         let language = self.language();
         let mut arguments = self.node_arguments(signature, index);
-        let terms: Vec<&FaceTerm> = self.job.face_terms.iter().filter(|term| faces.has(self.context, term)).collect();
+        let terms: Vec<&FaceTerm> =
+            self.job.face_terms.iter().filter(|term| faces.has(self.context, term)).collect();
         let changed = |rate: usize| terms.iter().any(|term| term.rate == rate);
         let used: Vec<usize> = (0..self.rates.len()).collect();
         match (language, used.as_slice()) {
             (_, []) => {}
             (_, [_]) => {
                 let call = format!("{}_rates({})", self.name, arguments.join(", "));
-                let declared =
-                    if changed(0) { language.variable(&self.rates[0], &call) } else { language.double(&self.rates[0], &call) };
+                let declared = if changed(0) {
+                    language.variable(&self.rates[0], &call)
+                } else {
+                    language.double(&self.rates[0], &call)
+                };
                 text.line(&declared);
             }
             (Language::C, _) => {
@@ -292,7 +297,12 @@ impl SweepPrinter<'_> {
                     .iter()
                     .map(|rate| format!("{}{}", if changed(*rate) { "mut " } else { "" }, self.rates[*rate]))
                     .collect();
-                text.line(&format!("let ({}) = {}_rates({});", list.join(", "), self.name, arguments.join(", ")));
+                text.line(&format!(
+                    "let ({}) = {}_rates({});",
+                    list.join(", "),
+                    self.name,
+                    arguments.join(", ")
+                ));
             }
         }
         for term in terms {
@@ -325,7 +335,11 @@ impl SweepPrinter<'_> {
     fn edge(&self, axis: usize) -> usize {
         let faces = self.job.face_terms.iter().any(|term| term.on.axis == axis);
         let operators = self.leaves.applied.values().filter(|applied| applied.axis == axis);
-        operators.map(|applied| self.context.edge(applied.operator, axis)).chain([usize::from(faces)]).max().unwrap_or(0)
+        operators
+            .map(|applied| self.context.edge(applied.operator, axis))
+            .chain([usize::from(faces)])
+            .max()
+            .unwrap_or(0)
     }
 
     /// The operator at an interior node, inlined.
@@ -400,8 +414,11 @@ impl SweepPrinter<'_> {
             }
             _ => name.clone(),
         };
-        debug_assert!(signature.parameters.iter().filter(|(_, kind)| *kind == Type::Out).count() == targets.len());
-        let arguments: Vec<String> = signature.parameters.iter().map(|(name, kind)| argument(name, *kind)).collect();
+        debug_assert!(
+            signature.parameters.iter().filter(|(_, kind)| *kind == Type::Out).count() == targets.len()
+        );
+        let arguments: Vec<String> =
+            signature.parameters.iter().map(|(name, kind)| argument(name, *kind)).collect();
         format!("{}_inside({});", self.name, arguments.join(", "))
     }
 
@@ -412,13 +429,19 @@ impl SweepPrinter<'_> {
         let depth = 2;
         let mut row = Text::indented(depth);
         let several = self.context.axes.len() > 1;
-        let slots = if several { self.row_of_grid(&mut row, node, inside) } else { self.row_of_line(&mut row, node, inside) };
+        let slots = if several {
+            self.row_of_grid(&mut row, node, inside)
+        } else {
+            self.row_of_line(&mut row, node, inside)
+        };
         let scratch_rows = slots + usize::from(largest);
         if largest {
             let count = &self.context.axes[self.context.fast()].count;
             let store = match language {
                 Language::C => format!("s->row_maximum[row] = largest({RESULT_ROW}, {count});"),
-                Language::Rust => format!("*s.row_maximum.first().offset(row) = largest({RESULT_ROW}, {count});"),
+                Language::Rust => {
+                    format!("*s.row_maximum.first().offset(row) = largest({RESULT_ROW}, {count});")
+                }
             };
             row.line(&store);
         }
@@ -492,7 +515,9 @@ impl SweepPrinter<'_> {
             return;
         }
         text.line(&match language {
-            Language::C => "double *const scratch = s->scratch + thread_number() * s->scratch_length;".to_owned(),
+            Language::C => {
+                "double *const scratch = s->scratch + thread_number() * s->scratch_length;".to_owned()
+            }
             Language::Rust => "let scratch = s.scratch.first().offset(thread * s.scratch_length);".to_owned(),
         });
         for name in names {
@@ -524,8 +549,11 @@ impl SweepPrinter<'_> {
         if edge > 0 {
             self.ends(text, node, edge, !conditions.is_empty());
         }
-        let inside_call =
-            self.inside_call(inside, &edge.to_string(), &if edge > 0 { format!("{count} - {}", 2 * edge) } else { count.clone() });
+        let inside_call = self.inside_call(
+            inside,
+            &edge.to_string(),
+            &if edge > 0 { format!("{count} - {}", 2 * edge) } else { count.clone() },
+        );
         if conditions.is_empty() {
             text.line(&inside_call);
             return slots;
@@ -558,8 +586,13 @@ impl SweepPrinter<'_> {
     fn fill_scratch(&self, text: &mut Text) -> usize {
         let language = self.language();
         let count = &self.context.axes[self.context.fast()].count;
-        let outer: Vec<(usize, &Applied)> =
-            self.leaves.applied.values().enumerate().filter(|(_, applied)| self.scratch_axis(applied)).collect();
+        let outer: Vec<(usize, &Applied)> = self
+            .leaves
+            .applied
+            .values()
+            .enumerate()
+            .filter(|(_, applied)| self.scratch_axis(applied))
+            .collect();
         if outer.is_empty() {
             return 0;
         }
@@ -592,13 +625,18 @@ impl SweepPrinter<'_> {
         let fast = self.context.fast();
         let (count, index) = (&self.context.axes[fast].count, &self.context.axes[fast].index);
         text.open(&language.count("end", "0", &(2 * edge).to_string()));
-        let place = language.choose(&format!("end < {edge}"), "end", &format!("{count} - {} + end", 2 * edge));
+        let place =
+            language.choose(&format!("end < {edge}"), "end", &format!("{count} - {} + end", 2 * edge));
         text.line(&language.index(index, &place));
         for (slot, applied) in self.leaves.applied.values().enumerate() {
             let value = if applied.axis == fast {
                 self.at_any(applied, index)
             } else if edge_rows && self.scratch_axis(applied) {
-                language.choose("edge_row", &language.at(&self.scratch[slot], index), &self.inlined(applied, index))
+                language.choose(
+                    "edge_row",
+                    &language.at(&self.scratch[slot], index),
+                    &self.inlined(applied, index),
+                )
             } else {
                 self.inlined(applied, index)
             };
@@ -662,7 +700,8 @@ trait SimpleParentheses {
 
 impl SimpleParentheses for String {
     fn replace_simple_parentheses(self) -> String {
-        let Some((before, inner)) = self.split_once(" + (").and_then(|(before, rest)| Some((before, rest.strip_suffix(");")?)))
+        let Some((before, inner)) =
+            self.split_once(" + (").and_then(|(before, rest)| Some((before, rest.strip_suffix(");")?)))
         else {
             return self;
         };

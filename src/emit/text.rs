@@ -29,7 +29,8 @@ impl Text {
         let mut first = true;
         loop {
             let lead = if first { indent.clone() } else { format!("{indent}    ") };
-            let whole = lead.len() + rest.chars().count() <= WIDTH || rest.contains(['"', '/']) && is_comment(rest);
+            let whole =
+                lead.len() + rest.chars().count() <= WIDTH || rest.contains(['"', '/']) && is_comment(rest);
             let cut = if whole { None } else { break_at(rest, WIDTH - lead.len()) };
             self.lines.push_str(&lead);
             match cut {
@@ -126,7 +127,8 @@ fn is_comment(line: &str) -> bool {
 
 /// The last blank within the width, or the first one after it.
 fn break_at(line: &str, width: usize) -> Option<usize> {
-    let blanks = line.match_indices(' ').map(|(place, _)| place).filter(|place| !line[..*place].trim().is_empty());
+    let blanks =
+        line.match_indices(' ').map(|(place, _)| place).filter(|place| !line[..*place].trim().is_empty());
     let mut best = None;
     for place in blanks {
         if line[..place].chars().count() > width && best.is_some() {

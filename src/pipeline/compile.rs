@@ -8,8 +8,8 @@ use crate::analysis::{limit, stability};
 use crate::check;
 use crate::diagnostic::{Diagnostic, Diagnostics, codes_scheme};
 use crate::discretize;
-use crate::kernel::validate::{KernelFault, ValidKernel, validate};
 use crate::kernel::lower::lower;
+use crate::kernel::validate::{KernelFault, ValidKernel, validate};
 use crate::model::Model;
 use crate::scheme::{LimitLaw, Scheme};
 use crate::source::SourceFile;
@@ -73,7 +73,8 @@ pub fn compile(source: &SourceFile, overrides: &Overrides) -> Result<(Compiled, 
         Ok(scheme) => scheme,
         Err(faults) => {
             for fault in faults {
-                let message = Diagnostic::error(codes_scheme::ORDER_NOT_REACHED, model.accuracy.span, fault.what);
+                let message =
+                    Diagnostic::error(codes_scheme::ORDER_NOT_REACHED, model.accuracy.span, fault.what);
                 diagnostics.push(message.with_remedy(fault.remedy));
             }
             return Err(diagnostics);
@@ -100,8 +101,10 @@ fn check_sizes(model: &Model, scheme: &Scheme, diagnostics: &mut Diagnostics) {
                 facts.least_nodes
             );
             diagnostics.push(
-                Diagnostic::error(codes_scheme::TOO_FEW_NODES, axis.span, message)
-                    .with_remedy(format!("take at least {} nodes, or ask for a lower order", facts.least_nodes)),
+                Diagnostic::error(codes_scheme::TOO_FEW_NODES, axis.span, message).with_remedy(format!(
+                    "take at least {} nodes, or ask for a lower order",
+                    facts.least_nodes
+                )),
             );
         }
     }
@@ -109,7 +112,8 @@ fn check_sizes(model: &Model, scheme: &Scheme, diagnostics: &mut Diagnostics) {
 
 /// What readers of emitted text should know.
 fn notes(model: &Model, scheme: &Scheme, law: &LimitLaw) -> Vec<String> {
-    let mut notes = vec![format!("time method {}", model.time.method.name()), format!("step limit: {}", law.text)];
+    let mut notes =
+        vec![format!("time method {}", model.time.method.name()), format!("step limit: {}", law.text)];
     notes.extend(scheme.choices.iter().cloned());
     notes.extend(model.conditions.iter().map(|condition| format!("condition: {}", condition.text)));
     notes

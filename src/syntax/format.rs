@@ -164,7 +164,8 @@ fn aligned(rows: &[Row]) -> Vec<String> {
     let mut codes: Vec<String> = vec![String::new(); rows.len()];
     let most = rows.iter().map(|row| row.cells.len()).max().unwrap_or(0);
     for column in 0..most {
-        let widths = rows.iter().filter(|row| row.cells.len() > column + 1).map(|row| width(&row.cells[column]));
+        let widths =
+            rows.iter().filter(|row| row.cells.len() > column + 1).map(|row| width(&row.cells[column]));
         let widest = widths.filter(|width| *width <= LONGEST_ALIGNED).max().unwrap_or(0);
         for (row, code) in rows.iter().zip(&mut codes) {
             let Some(cell) = row.cells.get(column) else { continue };
@@ -234,7 +235,9 @@ impl Spacing {
             "," | ";" | ":" => (false, Before::Separator),
             "(" => (spaced && self.before == Before::Operand || wants_gap(self.before), Before::Tight),
             ")" => (false, Before::Operand),
-            "∂" | "∇" => (spaced && self.before == Before::Operand || wants_gap(self.before), Before::Tight),
+            "∂" | "∇" => {
+                (spaced && self.before == Before::Operand || wants_gap(self.before), Before::Tight)
+            }
             _ => (spaced && self.before == Before::Operand || wants_gap(self.before), Before::Operand),
         };
         if gap && !begins {
@@ -261,10 +264,13 @@ fn next_token(text: &str) -> Option<&str> {
         '0'..='9' | '.' => number_length(text),
         '<' | '>' if text[1..].starts_with('=') => 2,
         _ if is_sign(first) => first.len_utf8(),
-        _ => HYPHENATED
-            .iter()
-            .find(|word| text.starts_with(**word))
-            .map_or_else(|| text.find(|letter: char| letter == ' ' || letter == '"' || is_sign(letter)).unwrap_or(text.len()), |word| word.len()),
+        _ => HYPHENATED.iter().find(|word| text.starts_with(**word)).map_or_else(
+            || {
+                text.find(|letter: char| letter == ' ' || letter == '"' || is_sign(letter))
+                    .unwrap_or(text.len())
+            },
+            |word| word.len(),
+        ),
     };
     Some(&text[..length])
 }

@@ -186,7 +186,11 @@ fn is_plain(expression: &Expression) -> bool {
     }
 }
 
-fn write_call<'a>(out: &mut String, name: &str, arguments: impl IntoIterator<Item = &'a (impl Borrowed + 'a)>) {
+fn write_call<'a>(
+    out: &mut String,
+    name: &str,
+    arguments: impl IntoIterator<Item = &'a (impl Borrowed + 'a)>,
+) {
     out.push_str(name);
     out.push('(');
     for (at, argument) in arguments.into_iter().enumerate() {

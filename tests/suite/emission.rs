@@ -64,10 +64,18 @@ fn same(what: &str, kernel: &Kernel, nodes: &[usize], found: &str, wanted: &str)
         let words = left.split(' ').zip(right.split(' ')).enumerate();
         if let Some((place, (one, other))) = words.into_iter().find(|(_, (one, other))| one != other) {
             let kind = left.split(' ').next().unwrap_or_default();
-            panic!("{what}, {} on {nodes:?}: line {number} ({kind}), value {place}: {one} for {other}", kernel.name);
+            panic!(
+                "{what}, {} on {nodes:?}: line {number} ({kind}), value {place}: {one} for {other}",
+                kernel.name
+            );
         }
     }
-    panic!("{what}, {} on {nodes:?}: {} lines for {}", kernel.name, found.lines().count(), wanted.lines().count());
+    panic!(
+        "{what}, {} on {nodes:?}: {} lines for {}",
+        kernel.name,
+        found.lines().count(),
+        wanted.lines().count()
+    );
 }
 
 fn arguments(threads: usize, nodes: &[usize]) -> Vec<String> {
@@ -83,7 +91,8 @@ fn c_and_rust_compute_the_bits_of_the_kernel() {
     let rust = compile_rust(&rust, &folder.path().join("rust"));
     for (place, (kernel, sizes)) in all.iter().enumerate() {
         let c = package(kernel, Language::C, Form::Program);
-        let fast = compile_c(&c, &folder.path().join(format!("fast{place}")), &["-O3", "-march=native", "-fopenmp"]);
+        let fast =
+            compile_c(&c, &folder.path().join(format!("fast{place}")), &["-O3", "-march=native", "-fopenmp"]);
         for nodes in sizes {
             let wanted = expected(kernel, nodes);
             for threads in [1, 3] {
@@ -104,7 +113,13 @@ fn c_is_clean_under_sanitizers() {
         let flags = ["-O1", "-g", "-fsanitize=address,undefined", "-fno-sanitize-recover=all"];
         let program = compile_c(&c, &folder.path().join(place.to_string()), &flags);
         for nodes in &sizes[..2] {
-            same("sanitized C", kernel, nodes, &run(&program, &arguments(1, nodes)), &expected(kernel, nodes));
+            same(
+                "sanitized C",
+                kernel,
+                nodes,
+                &run(&program, &arguments(1, nodes)),
+                &expected(kernel, nodes),
+            );
         }
     }
 }

@@ -110,19 +110,13 @@ pub fn lower(model: &Model, scheme: &Scheme, law: &LimitLaw, notes: Vec<String>)
         limit,
         time,
         outputs,
-        interpolation_nodes: interpolation_nodes(scheme),
+        interpolation_nodes: scheme.interpolation_nodes,
         quadrature: scheme
             .axes
             .iter()
             .map(|axis| axis.norm.as_ref().map_or_else(Vec::new, |norm| norm.left().to_vec()))
             .collect(),
     }
-}
-
-/// An even number of nodes, two more than the order of the solution: the interpolation error stays below that of the solution.
-fn interpolation_nodes(scheme: &Scheme) -> usize {
-    let order = scheme.axes.iter().map(|axis| axis.solution_order).max().unwrap_or(2);
-    order.div_ceil(2) * 2 + 2
 }
 
 fn changes(model: &Model, law: &LimitLaw) -> bool {

@@ -76,7 +76,9 @@ impl Translation<'_> {
                 None => self.builder.whole(0),
             },
             // Neither survives discretization: derivatives have become `Applied`, normal derivatives face terms.
-            Expression::Derivative(_) | Expression::Normal(_) | Expression::SecondRate(_) => self.builder.whole(0),
+            Expression::Derivative(_) | Expression::Normal(_) | Expression::SecondRate(_) => {
+                self.builder.whole(0)
+            }
         }
     }
 
