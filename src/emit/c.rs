@@ -7,7 +7,7 @@ use super::language::Language;
 use super::literal;
 use super::operators::operators;
 use super::routines::{Routines, routines};
-use super::text::{Text, mentions};
+use super::text::{Text, calls, mentions};
 use super::{Form, Program, Provenance, render};
 use crate::kernel::{Kernel, Output, OutputKind, Step, ValidKernel};
 use std::collections::BTreeMap;
@@ -57,7 +57,9 @@ fn kernel_file(context: &Context, provenance: Provenance, common: &[(&'static st
     values.push(("lifetime", lifetime(context, &routines, &fills)));
     values.push(("description", description(context, provenance)));
     values.push(("interface", interface(context, &routines)));
-    let body: String = values.iter().map(|(_, value)| value.as_str()).collect::<Vec<_>>().join("\n");
+    let code = ["operators", "tables", "routines", "fixed", "lifetime", "prepare", "description", "interface"];
+    let parts = values.iter().filter(|(name, _)| code.contains(name));
+    let body: String = parts.map(|(_, value)| value.as_str()).collect::<Vec<_>>().join("\n");
     values.push(("helpers", helpers(context, &body)));
     render(include_str!("../../templates/c/kernel.c"), &values)
 }
@@ -70,7 +72,7 @@ fn notes(kernel: &Kernel) -> String {
 fn helpers(context: &Context, body: &str) -> String {
     let mut text = Text::default();
     let mut add = |name: &str, lines: &[&str]| {
-        if mentions(body, name) {
+        if calls(body, name) {
             text.lines(&lines.iter().map(|line| (*line).to_owned()).collect::<Vec<_>>());
             text.blank();
         }
@@ -137,11 +139,11 @@ fn helpers(context: &Context, body: &str) -> String {
             "}",
         ],
     );
-    if mentions(body, "coordinate") {
+    if calls(body, "coordinate") {
         text.lines(&coordinate(context));
         text.blank();
     }
-    if mentions(body, "thread_number") {
+    if calls(body, "thread_number") {
         let lines = [
             "static ptrdiff_t thread_number(void) {",
             "#ifdef _OPENMP",

@@ -310,8 +310,8 @@ impl Printer<'_> {
             return "";
         }
         let language = self.language();
-        text.line(&language.double("sign", &language.choose("high", "-1.0", "1.0")));
-        "sign * "
+        text.line(&language.double("turn", &language.choose("high", "-1.0", "1.0")));
+        "turn * "
     }
 
     fn constant_at(&self, text: &mut Text, operator: &ConstantOperator) {

@@ -110,13 +110,23 @@ impl Text {
     }
 }
 
-/// Whether the identifier occurs in the text as a whole word.
+/// Whether the identifier occurs in the text as a whole word, outside of comment lines.
 pub fn mentions(text: &str, name: &str) -> bool {
+    text.lines().any(|line| !is_comment(line.trim_start()) && occurs(line, name, |_| true))
+}
+
+/// Whether a function of that name is called, outside of comment lines.
+pub fn calls(text: &str, name: &str) -> bool {
+    text.lines().any(|line| !is_comment(line.trim_start()) && occurs(line, name, |rest| rest.starts_with('(')))
+}
+
+fn occurs(line: &str, name: &str, follows: impl Fn(&str) -> bool) -> bool {
     let word = |byte: u8| byte.is_ascii_alphanumeric() || byte == b'_';
-    text.match_indices(name).any(|(place, _)| {
-        let before = text.as_bytes()[..place].last().is_some_and(|byte| word(*byte));
-        let after = text.as_bytes().get(place + name.len()).is_some_and(|byte| word(*byte));
-        !before && !after
+    line.match_indices(name).any(|(place, _)| {
+        let rest = &line[place + name.len()..];
+        let before = line.as_bytes()[..place].last().is_some_and(|byte| word(*byte));
+        let after = rest.as_bytes().first().is_some_and(|byte| word(*byte));
+        !before && !after && follows(rest)
     })
 }
 
@@ -153,5 +163,7 @@ mod tests {
     fn words_are_found_whole() {
         assert!(mentions("u_x + u", "u"));
         assert!(!mentions("u_x + v", "u"));
+        assert!(!mentions("    /* u */", "u"));
+        assert!(calls("x = sign(y);", "sign") && !calls("x = sign * y;", "sign"));
     }
 }

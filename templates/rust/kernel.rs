@@ -8,7 +8,7 @@
 // Names follow the model; loops over rows work on pointers, see `Arrays`.
 #![allow(non_snake_case, unsafe_op_in_unsafe_fn, clippy::too_many_arguments, clippy::excessive_precision)]
 
-use crate::driver::{AxisInfo, Description, FieldInfo, Kind, OutputInfo, ParameterInfo, Solver};
+use crate::driver::{ {{- imports -}} };
 use std::alloc::{Layout, alloc_zeroed, dealloc};
 
 /// An array that starts a cache line.
