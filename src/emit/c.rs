@@ -242,7 +242,7 @@ fn lifetime(context: &Context, routines: &Routines, fills: &[String]) -> String 
     text.line("free(s);");
     text.close("}");
     text.blank();
-    text.comment("Returns NULL when there is not enough memory.");
+    text.comment("Returns NULL when there is not enough memory, or an axis has fewer nodes than the operators need.");
     text.open(&format!(
         "{prefix}_solver *{prefix}_create(const size_t *nodes, const double *parameters, const unsigned char *given, int threads) {{"
     ));
@@ -250,9 +250,11 @@ fn lifetime(context: &Context, routines: &Routines, fills: &[String]) -> String 
     text.open("if (s == NULL) {");
     text.line("return NULL;");
     text.close("}");
+    let least: Vec<String> = kernel.axes.iter().map(|axis| axis.least_nodes.to_string()).collect();
+    text.line(&format!("static const size_t least[{axes}] = {{ {} }};", least.join(", ")));
     text.line("size_t points = 1;");
     text.open(&format!("for (int axis = 0; axis < {axes}; axis++) {{"));
-    text.open("if (nodes[axis] == 0 || nodes[axis] > LARGEST_ARRAY / points) {");
+    text.open("if (nodes[axis] < least[axis] || nodes[axis] > LARGEST_ARRAY / points) {");
     text.line("free(s);");
     text.line("return NULL;");
     text.close("}");
@@ -262,7 +264,7 @@ fn lifetime(context: &Context, routines: &Routines, fills: &[String]) -> String 
     text.line("s->points = (ptrdiff_t)points;");
     text.line(&format!("s->rows = s->points / s->nodes[{fast}];"));
     text.comment("A parallel region costs more than it brings on small grids.");
-    text.line("s->team = s->points > 20000 && threads > 1 ? threads : 1;");
+    text.line("s->team = s->points <= 20000 || threads < 1 ? 1 : threads > 4096 ? 4096 : threads;");
     text.line("s->memory = sizeof *s;");
     text.line("int complete = 1;");
     for member in &context.buffers {

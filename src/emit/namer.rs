@@ -49,6 +49,16 @@ impl Namer {
         name
     }
 
+    /// Takes these words.
+    pub fn reserve(&mut self, words: &str) {
+        self.taken.extend(words.split_whitespace().map(str::to_lowercase));
+    }
+
+    /// Takes everything that another one has taken.
+    pub fn absorb(&mut self, other: &Namer) {
+        self.taken.extend(other.taken.iter().cloned());
+    }
+
     /// A new identifier `base` such that `base` followed by each of `endings` is free as well; all are taken.
     pub fn family(&mut self, wish: &str, endings: &[&str]) -> String {
         let base = legal(wish);

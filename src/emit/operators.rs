@@ -122,7 +122,7 @@ impl Printer<'_> {
         });
         for (weight, what) in entries {
             let number = literal::rational(weight, language) + ",";
-            text.line(&format!("{number:<25} /* {} {what} */", literal::fraction(weight)));
+            text.line(&format!("{number:<25} /* {}, {what} */", literal::fraction(weight)));
         }
         text.close(language.pick("};", "];"));
     }

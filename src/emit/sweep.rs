@@ -75,7 +75,7 @@ const RESULT_ROW: &str = "result";
 
 /// Prints a sweep.
 pub fn sweep(context: &Context, job: &Job) -> Routine {
-    let name = context.functions.borrow_mut().family(&job.wish, &["_point", "_rates", "_inside"]);
+    let name = context.function_name(&job.wish, &["_point", "_rates", "_inside"]);
     let written = match &job.target {
         Target::Buffers(buffers) => buffers.clone(),
         Target::Largest => Vec::new(),

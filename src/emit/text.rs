@@ -134,17 +134,47 @@ fn is_comment(line: &str) -> bool {
     line.starts_with("/*") || line.starts_with("//")
 }
 
-/// The last blank within the width, or the first one after it.
+/// The blank within the width where the fewest brackets are open, the last of these in the right half; else the first
+/// blank after the width.
 fn break_at(line: &str, width: usize) -> Option<usize> {
-    let blanks = line.match_indices(' ').map(|(place, _)| place).filter(|place| !line[..*place].trim().is_empty());
-    let mut best = None;
-    for place in blanks {
-        if line[..place].chars().count() > width && best.is_some() {
+    let (mut depth, mut best, mut text_seen) = (0i32, None, false);
+    for (column, (place, character)) in line.char_indices().enumerate() {
+        match character {
+            '(' | '[' => depth += 1,
+            ')' | ']' => depth -= 1,
+            ' ' if text_seen && (column <= width || best.is_none()) => {
+                let better = best.is_none_or(|(least, _)| depth <= least);
+                if column > width || column * 2 > width && better {
+                    best = Some((depth, place));
+                }
+            }
+            _ => {}
+        }
+        text_seen |= character != ' ';
+        if column > width && best.is_some() {
             break;
         }
-        best = Some(place);
     }
-    best
+    best.map(|(_, place)| place)
+}
+
+/// At most one blank line in a row, none at the end.
+pub fn tidy(text: &str) -> String {
+    let mut result = String::new();
+    let mut blank = false;
+    for line in text.lines() {
+        if line.is_empty() {
+            blank = !result.is_empty();
+            continue;
+        }
+        if blank {
+            result.push('\n');
+            blank = false;
+        }
+        result.push_str(line);
+        result.push('\n');
+    }
+    result
 }
 
 #[cfg(test)]
