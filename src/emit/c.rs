@@ -57,7 +57,8 @@ fn kernel_file(context: &Context, provenance: Provenance, common: &[(&'static st
     values.push(("lifetime", lifetime(context, &routines, &fills)));
     values.push(("description", description(context, provenance)));
     values.push(("interface", interface(context, &routines)));
-    let code = ["operators", "tables", "routines", "fixed", "lifetime", "prepare", "description", "interface"];
+    let code =
+        ["operators", "tables", "routines", "fixed", "lifetime", "prepare", "description", "interface"];
     let parts = values.iter().filter(|(name, _)| code.contains(name));
     let body: String = parts.map(|(_, value)| value.as_str()).collect::<Vec<_>>().join("\n");
     values.push(("helpers", helpers(context, &body)));
@@ -163,7 +164,8 @@ fn coordinate(context: &Context) -> Vec<String> {
     let axes = &context.kernel.axes;
     let periodic: Vec<&str> = axes.iter().map(|axis| if axis.periodic { "1" } else { "0" }).collect();
     vec![
-        "/* The place of node index on an axis; the last node of a bounded axis is exactly its end. */".to_owned(),
+        "/* The place of node index on an axis; the last node of a bounded axis is exactly its end. */"
+            .to_owned(),
         format!("static double coordinate(const {}_solver *s, int axis, ptrdiff_t index) {{", context.prefix),
         format!("    static const int periodic[{}] = {{ {} }};", axes.len(), periodic.join(", ")),
         "    if (!periodic[axis] && index == s->nodes[axis] - 1) {".to_owned(),
@@ -242,7 +244,9 @@ fn lifetime(context: &Context, routines: &Routines, fills: &[String]) -> String 
     text.line("free(s);");
     text.close("}");
     text.blank();
-    text.comment("Returns NULL when there is not enough memory, or an axis has fewer nodes than the operators need.");
+    text.comment(
+        "Returns NULL when there is not enough memory, or an axis has fewer nodes than the operators need.",
+    );
     text.open(&format!(
         "{prefix}_solver *{prefix}_create(const size_t *nodes, const double *parameters, const unsigned char *given, int threads) {{"
     ));
@@ -275,7 +279,10 @@ fn lifetime(context: &Context, routines: &Routines, fills: &[String]) -> String 
             .filter(|axis| table.axes >> axis & 1 == 1)
             .map(|axis| format!("s->nodes[{axis}]"))
             .collect();
-        text.line(&format!("complete = complete && (s->{member} = array(s, {})) != NULL;", sizes.join(" * ")));
+        text.line(&format!(
+            "complete = complete && (s->{member} = array(s, {})) != NULL;",
+            sizes.join(" * ")
+        ));
     }
     let scratch = routines.scratch_rows.max(1);
     text.line(&format!("s->scratch_length = ({scratch} * s->nodes[{fast}] + 7) / 8 * 8;"));
@@ -313,20 +320,37 @@ fn description(context: &Context, provenance: Provenance) -> String {
     };
     let axes = kernel.axes.iter().map(|axis| {
         let periodic = i32::from(axis.periodic);
-        format!("{{ {}, {}, {}, {}, {periodic} }},", quoted(&axis.name), quoted(&axis.unit), axis.nodes, axis.least_nodes)
+        format!(
+            "{{ {}, {}, {}, {}, {periodic} }},",
+            quoted(&axis.name),
+            quoted(&axis.unit),
+            axis.nodes,
+            axis.least_nodes
+        )
     });
     list("axis", "axis_list", axes.collect(), "", &mut text);
     let parameters = kernel.parameters.iter().map(|parameter| {
         let what = parameter.description.as_deref().unwrap_or("");
         let bounded = i32::from(parameter.bounds.is_some());
-        format!("{{ {}, {}, {}, {bounded} }},", quoted(&parameter.name), quoted(what), quoted(&parameter.unit))
+        format!(
+            "{{ {}, {}, {}, {bounded} }},",
+            quoted(&parameter.name),
+            quoted(what),
+            quoted(&parameter.unit)
+        )
     });
     list("parameter", "parameter_list", parameters.collect(), "{ \"\", \"\", \"\", 0 },", &mut text);
-    let fields = kernel.fields.iter().map(|field| format!("{{ {}, {} }},", quoted(&field.name), quoted(&field.unit)));
+    let fields =
+        kernel.fields.iter().map(|field| format!("{{ {}, {} }},", quoted(&field.name), quoted(&field.unit)));
     list("field", "field_list", fields.collect(), "{ \"\", \"\" },", &mut text);
     let outputs = kernel.outputs.iter().map(|output| {
         let repeated = i32::from(output.every.is_some());
-        format!("{{ {}, {}, {}, {repeated} }},", quoted(&output.name), quoted(&output.unit), output_kind(output))
+        format!(
+            "{{ {}, {}, {}, {repeated} }},",
+            quoted(&output.name),
+            quoted(&output.unit),
+            output_kind(output)
+        )
     });
     list("output", "output_list", outputs.collect(), "{ \"\", \"\", 0, 0 },", &mut text);
     quadrature(kernel, &mut text);
@@ -349,7 +373,8 @@ fn quadrature(kernel: &Kernel, text: &mut Text) {
     text.comment("Quadrature weights at the ends of each axis, in units of the spacing; one inside.");
     let mut names = Vec::new();
     for (axis, weights) in kernel.quadrature.iter().enumerate() {
-        let numbers: Vec<String> = weights.iter().map(|weight| literal::rational(weight, Language::C)).collect();
+        let numbers: Vec<String> =
+            weights.iter().map(|weight| literal::rational(weight, Language::C)).collect();
         let (count, list) = (numbers.len().max(1), numbers.join(", "));
         let list = if list.is_empty() { "1.0".to_owned() } else { list };
         text.line(&format!("static const double quadrature_{axis}[{count}] = {{ {list} }};"));
@@ -446,7 +471,9 @@ fn interface(context: &Context, routines: &Routines) -> String {
     };
     function(&mut text, &format!("void {p}_start({p}_solver *s, double time)"), &["s", "time"], &start);
     let first: Vec<String> = if routines.first_step.iter().any(|call| mentions(call, "next")) {
-        std::iter::once("const double next = time + step".to_owned()).chain(routines.first_step.clone()).collect()
+        std::iter::once("const double next = time + step".to_owned())
+            .chain(routines.first_step.clone())
+            .collect()
     } else {
         routines.first_step.clone()
     };
@@ -462,7 +489,13 @@ fn interface(context: &Context, routines: &Routines) -> String {
 
     let fields: Vec<String> =
         kernel.fields.iter().map(|field| format!("return s->{}", context.buffers[field.buffer.0])).collect();
-    cases(&mut text, &format!("const double *{p}_field(const {p}_solver *s, size_t field)"), "field", &["s"], &fields);
+    cases(
+        &mut text,
+        &format!("const double *{p}_field(const {p}_solver *s, size_t field)"),
+        "field",
+        &["s"],
+        &fields,
+    );
     let outputs: Vec<String> = kernel
         .outputs
         .iter()
@@ -517,7 +550,13 @@ fn cases(text: &mut Text, head: &str, index: &str, parameters: &[&str], entries:
     numbered_cases(text, head, index, parameters, &entries);
 }
 
-fn numbered_cases(text: &mut Text, head: &str, index: &str, parameters: &[&str], entries: &[(usize, String)]) {
+fn numbered_cases(
+    text: &mut Text,
+    head: &str,
+    index: &str,
+    parameters: &[&str],
+    entries: &[(usize, String)],
+) {
     let mut body = Text::indented(1);
     for (place, entry) in entries {
         body.open(&format!("if ({index} == {place}) {{"));

@@ -4,7 +4,7 @@ use super::expression::constant_only;
 use super::language::Language;
 use super::namer::Namer;
 use crate::kernel::{
-    Extent, Kernel, Operation, OperatorId, OutputKind, Pass, Source, Sweep, TableId, ValueId, ValidKernel,
+    Extent, Kernel, Operation, OperatorId, OutputKind, Pass, Source, Sweep, TableId, ValidKernel, ValueId,
 };
 use std::cell::RefCell;
 use std::collections::{BTreeMap, BTreeSet};
@@ -197,8 +197,12 @@ impl<'a> Context<'a> {
     /// Where a fixed value or parameter is stored, if it is.
     pub fn storage(&self, value: ValueId) -> Option<String> {
         match self.kernel.values[value.0].operation {
-            Operation::Parameter(parameter) => Some(self.language.member(&format!("parameter[{}]", parameter.0))),
-            Operation::InverseSpacing(axis) => Some(self.language.member(&format!("inverse_spacing[{axis}]"))),
+            Operation::Parameter(parameter) => {
+                Some(self.language.member(&format!("parameter[{}]", parameter.0)))
+            }
+            Operation::InverseSpacing(axis) => {
+                Some(self.language.member(&format!("inverse_spacing[{axis}]")))
+            }
             _ => self.stored.get(&value).map(|name| self.language.member(name)),
         }
     }

@@ -53,7 +53,8 @@ impl Piece {
     /// The text as the right operand: only atoms stand without parentheses, so that the order stays the graph's. A
     /// product may stand right of a sum.
     fn right(&self, outer: Binding) -> String {
-        let open = self.binding == Binding::Atom || (self.binding == Binding::Product && outer == Binding::Sum);
+        let open =
+            self.binding == Binding::Atom || (self.binding == Binding::Product && outer == Binding::Sum);
         if open && !self.text.starts_with('-') { self.text.clone() } else { format!("({})", self.text) }
     }
 }
@@ -89,7 +90,8 @@ impl Printer<'_> {
                 Some(text) => Piece::atom(text),
                 None => self.piece(id, &pieces, foldable),
             };
-            let simple = piece.binding == Binding::Atom && !piece.text.contains('(') || is_number(&piece.text);
+            let simple =
+                piece.binding == Binding::Atom && !piece.text.contains('(') || is_number(&piece.text);
             let long = piece.text.len() > LONGEST_NESTED && !roots.contains(&id);
             if !simple && (uses[id.0] > 1 || long) {
                 let name = self.names.name(self.kernel.values[id.0].hint.as_deref().unwrap_or("term"));
@@ -129,9 +131,8 @@ impl Printer<'_> {
 
     fn piece(&mut self, id: ValueId, pieces: &[Option<Piece>], foldable: Foldable) -> Piece {
         let language = self.language;
-        let of = |value: &ValueId| {
-            pieces[value.0].clone().unwrap_or_else(|| Piece::atom("unknown".to_owned()))
-        };
+        let of =
+            |value: &ValueId| pieces[value.0].clone().unwrap_or_else(|| Piece::atom("unknown".to_owned()));
         let pair = |a: &ValueId, sign: &str, b: &ValueId, binding: Binding| Piece {
             text: format!("{} {sign} {}", of(a).left(binding), of(b).right(binding)),
             binding,

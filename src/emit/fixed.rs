@@ -20,7 +20,13 @@ pub fn fixed_values(context: &Context) -> Text {
 }
 
 /// Statements and texts of fixed values in `prepare`.
-fn evaluate(context: &Context, text: &mut Text, names: &mut Namer, roots: &[ValueId], known: &[ValueId]) -> Vec<String> {
+fn evaluate(
+    context: &Context,
+    text: &mut Text,
+    names: &mut Namer,
+    roots: &[ValueId],
+    known: &[ValueId],
+) -> Vec<String> {
     let language = context.language;
     let mut leaf = |value: ValueId, met: Met| {
         if met == Met::ByLibrary {
@@ -45,10 +51,14 @@ fn parameters(context: &Context, text: &mut Text, names: &mut Namer) {
         let default = evaluate(context, text, names, &[parameter.default], &[]).remove(0);
         match language {
             Language::C => {
-                text.line(&format!("s->parameter[{index}] = given[{index}] ? parameters[{index}] : {default};"));
+                text.line(&format!(
+                    "s->parameter[{index}] = given[{index}] ? parameters[{index}] : {default};"
+                ));
             }
             Language::Rust => {
-                text.open(&format!("s.parameter[{index}] = match parameters.get({index}).copied().flatten() {{"));
+                text.open(&format!(
+                    "s.parameter[{index}] = match parameters.get({index}).copied().flatten() {{"
+                ));
                 text.line("Some(value) => value,");
                 text.line(&format!("None => {default},"));
                 text.close("};");
@@ -70,7 +80,12 @@ fn axes(context: &Context, text: &mut Text, names: &mut Namer) {
             Language::C => format!("(double){intervals}"),
             Language::Rust => format!("{intervals} as f64"),
         };
-        text.line(&format!("{} = ({} - {}) / ({intervals});", member("spacing"), member("high"), member("low")));
+        text.line(&format!(
+            "{} = ({} - {}) / ({intervals});",
+            member("spacing"),
+            member("high"),
+            member("low")
+        ));
         text.line(&format!("{} = 1.0 / {};", member("inverse_spacing"), member("spacing")));
     }
 }

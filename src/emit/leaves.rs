@@ -196,7 +196,11 @@ impl<'a> Leaves<'a> {
     /// The pointer to node `index` of the row.
     pub fn here(&self, source: Source, index: &str) -> String {
         let moves = self.context.moves(self.context.axes_of(source));
-        if moves { self.context.language.shifted(&self.arrays[&source], index) } else { self.arrays[&source].clone() }
+        if moves {
+            self.context.language.shifted(&self.arrays[&source], index)
+        } else {
+            self.arrays[&source].clone()
+        }
     }
 
     /// Declarations of the uniform values that `body` mentions.
@@ -310,7 +314,6 @@ impl<'a> Leaves<'a> {
     }
 }
 
-
 /// Declares the outer indices of row number `row` that `body` mentions.
 pub fn outer_indices(context: &Context, body: &mut Text, row: &str, rest: &str) {
     let language = context.language;
@@ -321,7 +324,8 @@ pub fn outer_indices(context: &Context, body: &mut Text, row: &str, rest: &str) 
             continue;
         }
         let later: Vec<&str> = outer[place + 1..].iter().map(|other| other.count.as_str()).collect();
-        let quotient = if later.is_empty() { row.to_owned() } else { format!("{row} / {}", later.join(" / ")) };
+        let quotient =
+            if later.is_empty() { row.to_owned() } else { format!("{row} / {}", later.join(" / ")) };
         let value = if place == 0 { quotient } else { format!("{quotient} % {}", names.count) };
         lines.push(language.index(&names.index, &value));
     }

@@ -19,7 +19,7 @@ trunc fmod remainder remquo copysign nan nextafter fdim fmax fmin fma j0 j1 jn y
 null eof errno nan infinity huge_val assert stdin stdout stderr main exit malloc calloc free memcpy memset
 size_t ptrdiff_t int64_t uint64_t int32_t uint32_t uint8_t va_list file time clock signal rename remove index
 minimum maximum sign select opaque noise coordinate wrap at share part parts row rows first last end count scratch
-thread thread_number team step next dt s edge_row here inline_function rows_in_parallel along_the_row driver solver
+thread thread_number team step next dt t s edge_row here inline_function rows_in_parallel along_the_row driver solver
 array parameter parameters low high spacing inverse_spacing nodes points given values memory
 last_step parameter_low parameter_high parameter_scale start_time end_time step_duration every place scale field_scale
 ";
@@ -112,12 +112,14 @@ fn separate(result: &mut String) {
 
 fn greek(letter: char) -> Option<&'static str> {
     let names = [
-        "alpha", "beta", "gamma", "delta", "epsilon", "zeta", "eta", "theta", "iota", "kappa", "lambda", "mu", "nu",
-        "xi", "omicron", "pi", "rho", "sigma", "sigma", "tau", "upsilon", "phi", "chi", "psi", "omega",
+        "alpha", "beta", "gamma", "delta", "epsilon", "zeta", "eta", "theta", "iota", "kappa", "lambda",
+        "mu", "nu", "xi", "omicron", "pi", "rho", "sigma", "sigma", "tau", "upsilon", "phi", "chi", "psi",
+        "omega",
     ];
     let capitals = [
-        "Alpha", "Beta", "Gamma", "Delta", "Epsilon", "Zeta", "Eta", "Theta", "Iota", "Kappa", "Lambda", "Mu", "Nu",
-        "Xi", "Omicron", "Pi", "Rho", "Sigma", "Sigma", "Tau", "Upsilon", "Phi", "Chi", "Psi", "Omega",
+        "Alpha", "Beta", "Gamma", "Delta", "Epsilon", "Zeta", "Eta", "Theta", "Iota", "Kappa", "Lambda",
+        "Mu", "Nu", "Xi", "Omicron", "Pi", "Rho", "Sigma", "Sigma", "Tau", "Upsilon", "Phi", "Chi", "Psi",
+        "Omega",
     ];
     let small = u32::from(letter).checked_sub(0x3b1).and_then(|place| names.get(place as usize));
     let capital = u32::from(letter).checked_sub(0x391).and_then(|place| capitals.get(place as usize));
@@ -131,7 +133,8 @@ mod tests {
     #[test]
     fn hostile_names_become_legal_and_distinct() {
         let mut namer = Namer::default();
-        let wishes = ["double", "u", "U", "u ", "κ", "2nd", "", "*/", "fn", "a-b", "a_b", "ice\n\"x", "__x__"];
+        let wishes =
+            ["double", "u", "U", "u ", "κ", "2nd", "", "*/", "fn", "a-b", "a_b", "ice\n\"x", "__x__"];
         let names: Vec<String> = wishes.iter().map(|wish| namer.name(wish)).collect();
         let distinct: BTreeSet<String> = names.iter().map(|name| name.to_lowercase()).collect();
         assert_eq!(distinct.len(), wishes.len(), "{names:?}");

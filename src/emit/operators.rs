@@ -7,7 +7,9 @@ use super::language::{Language, Linkage, Type};
 use super::literal;
 use super::text::Text;
 use crate::exact::Rational;
-use crate::kernel::{ClosureRow, ConstantOperator, LineOperator, OperatorId, Parity, VaryingEntry, VaryingOperator};
+use crate::kernel::{
+    ClosureRow, ConstantOperator, LineOperator, OperatorId, Parity, VaryingEntry, VaryingOperator,
+};
 
 /// Nodes of a row that are treated together where a coefficient's sum is kept beside the result.
 const BLOCK: usize = 64;
@@ -17,7 +19,8 @@ pub fn operators(context: &Context) -> Text {
     let mut text = Text::default();
     let used = context.used.borrow().clone();
     for id in (0..context.operators.len()).map(OperatorId) {
-        let variants: Vec<Variant> = used.iter().filter(|(other, _)| *other == id).map(|(_, kind)| *kind).collect();
+        let variants: Vec<Variant> =
+            used.iter().filter(|(other, _)| *other == id).map(|(_, kind)| *kind).collect();
         if !variants.is_empty() {
             Printer { context, id, name: &context.operators[id.0] }.all(&mut text, &variants);
         }
@@ -214,7 +217,12 @@ impl Printer<'_> {
         terms.join(" + ")
     }
 
-    fn varying_formula(&self, operator: &VaryingOperator, field: Place, coefficient: Place) -> (Vec<String>, String) {
+    fn varying_formula(
+        &self,
+        operator: &VaryingOperator,
+        field: Place,
+        coefficient: Place,
+    ) -> (Vec<String>, String) {
         let weights = self.array("weights");
         let mut lines = Vec::new();
         let mut sum = Vec::new();
@@ -336,9 +344,11 @@ impl Printer<'_> {
         let language = self.language();
         self.mirror(text);
         let (entries, terms) = (self.array("entries"), self.array("terms"));
-        let field = language.at("f", &format!("({} - row) * forward", language.entry(&self.array("column"), "entry")));
-        let coefficient =
-            |k: &str| language.at("b", &format!("({} - row) * b_forward", language.entry(&self.array("node"), k)));
+        let field = language
+            .at("f", &format!("({} - row) * forward", language.entry(&self.array("column"), "entry")));
+        let coefficient = |k: &str| {
+            language.at("b", &format!("({} - row) * b_forward", language.entry(&self.array("node"), k)))
+        };
         let weight = |k: &str| language.entry(&self.array("closure"), k);
         text.line(&language.index("start", &language.entry(&entries, "row")));
         text.line(&language.variable("sum", "0.0"));
@@ -375,7 +385,11 @@ impl Printer<'_> {
         open_row_loop(text, language, "i", "0", "count");
         let here = |array: &str| if along(array) { language.shifted(array, "i") } else { array.to_owned() };
         let coefficient = if self.varying() { format!(", {}, b_stride", here("b")) } else { String::new() };
-        text.line(&language.store("result", "i", &format!("{}({}, stride{coefficient})", self.name, here("f"))));
+        text.line(&language.store(
+            "result",
+            "i",
+            &format!("{}({}, stride{coefficient})", self.name, here("f")),
+        ));
         text.close("}");
         text.line("return;");
         text.close("}");
@@ -468,7 +482,10 @@ impl Printer<'_> {
         let product = format!("weight * {}", language.at("c", index(moves[1])));
         open_row_loop(text, language, "i", "0", "width");
         let kept = language.entry("factor", "i");
-        text.line(&format!("{kept} = {};", language.choose("k == term", &product, &format!("{kept} + {product}"))));
+        text.line(&format!(
+            "{kept} = {};",
+            language.choose("k == term", &product, &format!("{kept} + {product}"))
+        ));
         text.close("}");
         text.close("}");
         let node = format!("({} - row) * forward", language.entry(&self.array("column"), "entry"));

@@ -59,7 +59,8 @@ fn kernel_file(context: &Context, provenance: Provenance, common: &[(&'static st
     values.push(("prepare", prepare(context, &routines, &fills)));
     values.push(("description", description(context, provenance)));
     values.push(("interface", interface(context, &routines)));
-    let code = ["operators", "tables", "routines", "fixed", "lifetime", "prepare", "description", "interface"];
+    let code =
+        ["operators", "tables", "routines", "fixed", "lifetime", "prepare", "description", "interface"];
     let parts = values.iter().filter(|(name, _)| code.contains(name));
     let body: String = parts.map(|(_, value)| value.as_str()).collect::<Vec<_>>().join("\n");
     values.push(("imports", imports(&body)));
@@ -88,7 +89,9 @@ fn helpers(context: &Context, body: &str) -> String {
     if calls(body, "coordinate") {
         let axes = &context.kernel.axes;
         let periodic: Vec<String> = axes.iter().map(|axis| axis.periodic.to_string()).collect();
-        text.line("/// The place of node `index` on an axis; the last node of a bounded axis is exactly its end.");
+        text.line(
+            "/// The place of node `index` on an axis; the last node of a bounded axis is exactly its end.",
+        );
         text.open("fn coordinate(s: &Arrays, axis: usize, index: isize) -> f64 {");
         text.line(&format!("const PERIODIC: [bool; {}] = [{}];", axes.len(), periodic.join(", ")));
         text.open("if !PERIODIC[axis] && index == s.nodes[axis] - 1 {");
@@ -382,7 +385,8 @@ fn interface(context: &Context, routines: &Routines) -> String {
     let fields: Vec<String> =
         kernel.fields.iter().map(|field| format!("self.s.{}.values()", member(field.buffer))).collect();
     choice(&mut text, "field(&self, field: usize) -> &[f64]", "field", &fields, "&[]");
-    let state: Vec<String> = kernel.state.iter().map(|buffer| format!("self.s.{}.values()", member(*buffer))).collect();
+    let state: Vec<String> =
+        kernel.state.iter().map(|buffer| format!("self.s.{}.values()", member(*buffer))).collect();
     choice(&mut text, "state(&self, index: usize) -> &[f64]", "index", &state, "&[]");
     let state: Vec<String> =
         kernel.state.iter().map(|buffer| format!("self.s.{}.values_mut()", member(*buffer))).collect();
@@ -391,8 +395,11 @@ fn interface(context: &Context, routines: &Routines) -> String {
     text.line(&kernel.state.len().to_string());
     text.close("}");
     text.blank();
-    let buffers: Vec<String> =
-        kernel.outputs.iter().map(|output| format!("self.s.{}.values_mut()", member(output.buffer))).collect();
+    let buffers: Vec<String> = kernel
+        .outputs
+        .iter()
+        .map(|output| format!("self.s.{}.values_mut()", member(output.buffer)))
+        .collect();
     choice(&mut text, "maximum_mut(&mut self, output: usize) -> &mut [f64]", "output", &buffers, "&mut []");
     outputs(context, routines, &mut text);
     text.into_string()
@@ -404,7 +411,10 @@ fn outputs(context: &Context, routines: &Routines, text: &mut Text) {
     let maximum = |place: usize| matches!(kernel.outputs[place].kind, OutputKind::Maximum { .. });
     let places = 0..kernel.outputs.len();
     let calls = |lists: &[Vec<String>], of_maximum: bool| -> Vec<(usize, String)> {
-        let wanted = lists.iter().enumerate().filter(|(place, list)| !list.is_empty() && maximum(*place) == of_maximum);
+        let wanted = lists
+            .iter()
+            .enumerate()
+            .filter(|(place, list)| !list.is_empty() && maximum(*place) == of_maximum);
         wanted.map(|(place, list)| (place, list.join("; "))).collect()
     };
     let filling = calls(&routines.outputs, false);
@@ -413,7 +423,8 @@ fn outputs(context: &Context, routines: &Routines, text: &mut Text) {
     let buffers: Vec<String> = places
         .map(|place| format!("self.s.{}.values()", context.buffers[kernel.outputs[place].buffer.0]))
         .collect();
-    for (name, calls) in [("output", &filling), ("begin_maximum", &begins), ("accumulate_maximum", &keeping)] {
+    for (name, calls) in [("output", &filling), ("begin_maximum", &begins), ("accumulate_maximum", &keeping)]
+    {
         let result = name == "output";
         let time = if calls.iter().any(|(_, call)| mentions(call, "time")) { "time" } else { "_time" };
         let index = if calls.is_empty() && (!result || buffers.is_empty()) { "_output" } else { "output" };
@@ -462,7 +473,8 @@ fn method(text: &mut Text, name: &str, parameters: &[&str], calls: &[String], af
     }
     if !calls.is_empty() {
         text.line("let s = &self.s;");
-        let (known, calls): (Vec<&String>, Vec<&String>) = calls.iter().partition(|call| call.starts_with("let "));
+        let (known, calls): (Vec<&String>, Vec<&String>) =
+            calls.iter().partition(|call| call.starts_with("let "));
         known.iter().for_each(|statement| text.line(&format!("{statement};")));
         text.line("// SAFETY: see `Arrays`.");
         text.open("unsafe {");
@@ -475,7 +487,11 @@ fn method(text: &mut Text, name: &str, parameters: &[&str], calls: &[String], af
 }
 
 fn choice(text: &mut Text, head: &str, index: &str, entries: &[String], otherwise: &str) {
-    let head = if entries.is_empty() { head.replace(&format!("{index}: usize"), &format!("_{index}: usize")) } else { head.to_owned() };
+    let head = if entries.is_empty() {
+        head.replace(&format!("{index}: usize"), &format!("_{index}: usize"))
+    } else {
+        head.to_owned()
+    };
     text.open(&format!("fn {head} {{"));
     if entries.is_empty() {
         text.line(otherwise);

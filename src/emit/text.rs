@@ -29,7 +29,8 @@ impl Text {
         let mut first = true;
         loop {
             let lead = if first { indent.clone() } else { format!("{indent}    ") };
-            let whole = lead.len() + rest.chars().count() <= WIDTH || rest.contains(['"', '/']) && is_comment(rest);
+            let whole =
+                lead.len() + rest.chars().count() <= WIDTH || rest.contains(['"', '/']) && is_comment(rest);
             let cut = if whole { None } else { break_at(rest, WIDTH - lead.len()) };
             self.lines.push_str(&lead);
             match cut {
@@ -117,7 +118,8 @@ pub fn mentions(text: &str, name: &str) -> bool {
 
 /// Whether a function of that name is called, outside of comment lines.
 pub fn calls(text: &str, name: &str) -> bool {
-    text.lines().any(|line| !is_comment(line.trim_start()) && occurs(line, name, |rest| rest.starts_with('(')))
+    text.lines()
+        .any(|line| !is_comment(line.trim_start()) && occurs(line, name, |rest| rest.starts_with('(')))
 }
 
 fn occurs(line: &str, name: &str, follows: impl Fn(&str) -> bool) -> bool {
@@ -134,26 +136,34 @@ fn is_comment(line: &str) -> bool {
     line.starts_with("/*") || line.starts_with("//")
 }
 
-/// The blank within the width where the fewest brackets are open, the last of these in the right half; else the first
-/// blank after the width.
+/// Where a line is best broken: at a blank in the right half of the width where the fewest brackets are open, rather
+/// after a comma or a sum's sign than after a product's, and rather later; else at the first blank after the width.
 fn break_at(line: &str, width: usize) -> Option<usize> {
-    let (mut depth, mut best, mut text_seen) = (0i32, None, false);
+    let mut depth = 0u32;
+    let mut best: Option<(u32, usize)> = None;
+    let mut previous = ' ';
+    let mut text_seen = false;
     for (column, (place, character)) in line.char_indices().enumerate() {
         match character {
             '(' | '[' => depth += 1,
-            ')' | ']' => depth -= 1,
-            ' ' if text_seen && (column <= width || best.is_none()) => {
-                let better = best.is_none_or(|(least, _)| depth <= least);
-                if column > width || column * 2 > width && better {
-                    best = Some((depth, place));
+            ')' | ']' => depth = depth.saturating_sub(1),
+            ' ' if text_seen && column > width => return best.map(|(_, place)| place).or(Some(place)),
+            ' ' if text_seen && column * 2 > width => {
+                let kind = match previous {
+                    ',' => 0,
+                    '+' | '-' | '=' | '&' | '|' | '?' | ':' | '{' => 1,
+                    '*' | '/' => 2,
+                    _ => 6,
+                };
+                let rank = 4 * depth + kind;
+                if best.is_none_or(|(least, _)| rank <= least) {
+                    best = Some((rank, place));
                 }
             }
             _ => {}
         }
         text_seen |= character != ' ';
-        if column > width && best.is_some() {
-            break;
-        }
+        previous = character;
     }
     best.map(|(_, place)| place)
 }

@@ -3,6 +3,7 @@
 mod build;
 mod kernels;
 mod reference;
+mod refused;
 
 use build::{MODEL, compile_c, compile_rust, package, run, unpack};
 use reference::Reference;
@@ -64,10 +65,18 @@ fn same(what: &str, kernel: &Kernel, nodes: &[usize], found: &str, wanted: &str)
         let words = left.split(' ').zip(right.split(' ')).enumerate();
         if let Some((place, (one, other))) = words.into_iter().find(|(_, (one, other))| one != other) {
             let kind = left.split(' ').next().unwrap_or_default();
-            panic!("{what}, {} on {nodes:?}: line {number} ({kind}), value {place}: {one} for {other}", kernel.name);
+            panic!(
+                "{what}, {} on {nodes:?}: line {number} ({kind}), value {place}: {one} for {other}",
+                kernel.name
+            );
         }
     }
-    panic!("{what}, {} on {nodes:?}: {} lines for {}", kernel.name, found.lines().count(), wanted.lines().count());
+    panic!(
+        "{what}, {} on {nodes:?}: {} lines for {}",
+        kernel.name,
+        found.lines().count(),
+        wanted.lines().count()
+    );
 }
 
 fn arguments(threads: usize, nodes: &[usize]) -> Vec<String> {
@@ -83,7 +92,8 @@ fn c_and_rust_compute_the_bits_of_the_kernel() {
     let rust = compile_rust(&rust, &folder.path().join("rust"));
     for (place, (kernel, sizes)) in all.iter().enumerate() {
         let c = package(kernel, Language::C, Form::Program);
-        let fast = compile_c(&c, &folder.path().join(format!("fast{place}")), &["-O3", "-march=native", "-fopenmp"]);
+        let fast =
+            compile_c(&c, &folder.path().join(format!("fast{place}")), &["-O3", "-march=native", "-fopenmp"]);
         for nodes in sizes {
             let wanted = expected(kernel, nodes);
             for threads in [1, 3] {
@@ -104,7 +114,13 @@ fn c_is_clean_under_sanitizers() {
         let flags = ["-O1", "-g", "-fsanitize=address,undefined", "-fno-sanitize-recover=all"];
         let program = compile_c(&c, &folder.path().join(place.to_string()), &flags);
         for nodes in &sizes[..2] {
-            same("sanitized C", kernel, nodes, &run(&program, &arguments(1, nodes)), &expected(kernel, nodes));
+            same(
+                "sanitized C",
+                kernel,
+                nodes,
+                &run(&program, &arguments(1, nodes)),
+                &expected(kernel, nodes),
+            );
         }
     }
 }
@@ -145,7 +161,10 @@ fn the_same_kernel_gives_the_same_bytes() {
         for language in [Language::C, Language::Rust] {
             let program = package(&kernel, language, Form::Program);
             assert_eq!(program, package(&kernel, language, Form::Program));
-            let kernel_text = program.files.iter().find(|(path, _)| path.ends_with("kernel.rs") || **path == format!("{}.c", program.prefix));
+            let kernel_text = program
+                .files
+                .iter()
+                .find(|(path, _)| path.ends_with("kernel.rs") || **path == format!("{}.c", program.prefix));
             let (_, text) = kernel_text.expect("there is a kernel");
             assert!(!text.contains("leaf_") && !text.contains("unknown"));
         }

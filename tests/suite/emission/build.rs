@@ -40,10 +40,23 @@ pub fn compile_c(program: &Program, folder: &Path, flags: &[&str]) -> PathBuf {
     let main = include_str!("dump.c").replace("PREFIX", &program.prefix);
     std::fs::write(folder.join("dump.c"), main).expect("a writable folder");
     let target = folder.join("dump");
-    let strict = ["-std=c11", "-O2", "-Wall", "-Wextra", "-Wpedantic", "-Werror", "-ffp-contract=off", "-fno-math-errno"];
+    let strict = [
+        "-std=c11",
+        "-O2",
+        "-Wall",
+        "-Wextra",
+        "-Wpedantic",
+        "-Werror",
+        "-ffp-contract=off",
+        "-fno-math-errno",
+    ];
     let source = format!("{}.c", program.prefix);
     succeed(
-        Command::new("cc").args(strict).args(flags).args(["dump.c", &source, "-o", "dump", "-lm"]).current_dir(folder),
+        Command::new("cc")
+            .args(strict)
+            .args(flags)
+            .args(["dump.c", &source, "-o", "dump", "-lm"])
+            .current_dir(folder),
     );
     target
 }

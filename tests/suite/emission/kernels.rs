@@ -2,9 +2,10 @@
 
 use rimstone::exact::Rational;
 use rimstone::kernel::{
-    Action, Axis, Buffer, BufferId, Builder, ClosureRow, ConstantOperator, FaceSet, FaceTerm, FaceWrite, Field, Kernel,
-    Limit, LineOperator, NamedOperator, Operation, OperatorId, Output, OutputKind, Parameter, ParameterId, Parity,
-    Pass, Source, Stage, Step, Sweep, TimePlan, ValueId, VaryingEntry, VaryingOperator, Write,
+    Action, Axis, Buffer, BufferId, Builder, ClosureRow, ConstantOperator, FaceSet, FaceTerm, FaceWrite,
+    Field, Kernel, Limit, LineOperator, NamedOperator, Operation, OperatorId, Output, OutputKind, Parameter,
+    ParameterId, Parity, Pass, Source, Stage, Step, Sweep, TimePlan, ValueId, VaryingEntry, VaryingOperator,
+    Write,
 };
 use rimstone::model::{Function, Relation};
 
@@ -36,7 +37,8 @@ impl Sketch {
                 periodic: *periodic,
             })
             .collect();
-        let quadrature = axes.iter().map(|axis| if axis.periodic { vec![] } else { vec![ratio(1, 2)] }).collect();
+        let quadrature =
+            axes.iter().map(|axis| if axis.periodic { vec![] } else { vec![ratio(1, 2)] }).collect();
         let kernel = Kernel {
             name: name.to_owned(),
             title: format!("Harrowmere: {name}"),
@@ -82,7 +84,13 @@ impl Sketch {
     pub fn field(&mut self, name: &str) -> BufferId {
         let buffer = self.buffer(name);
         let scale = self.builder.whole(1);
-        self.kernel.fields.push(Field { name: name.to_owned(), unit: "K".to_owned(), scale, buffer, bounds: None });
+        self.kernel.fields.push(Field {
+            name: name.to_owned(),
+            unit: "K".to_owned(),
+            scale,
+            buffer,
+            bounds: None,
+        });
         self.kernel.state.push(buffer);
         buffer
     }
@@ -185,7 +193,10 @@ fn constant(parity: Parity, interior: &[(i64, i64)], closure: &[(usize, &[(i64, 
     LineOperator::Constant(ConstantOperator {
         parity,
         interior: weights(interior),
-        closure: closure.iter().map(|(first, list)| ClosureRow { first: *first, weights: weights(list) }).collect(),
+        closure: closure
+            .iter()
+            .map(|(first, list)| ClosureRow { first: *first, weights: weights(list) })
+            .collect(),
     })
 }
 
@@ -193,7 +204,13 @@ const FOURTH: [(i64, i64); 3] = [(-5, 2), (4, 3), (-1, 12)];
 
 /// Order 4, two closure rows of unlike length.
 fn second_fourth() -> LineOperator {
-    even(&FOURTH, &[(0, &[(15, 4), (-77, 6), (107, 6), (-13, 1), (61, 12), (-5, 6)]), (0, &[(5, 6), (-5, 4), (-1, 3), (7, 6), (-1, 2)])])
+    even(
+        &FOURTH,
+        &[
+            (0, &[(15, 4), (-77, 6), (107, 6), (-13, 1), (61, 12), (-5, 6)]),
+            (0, &[(5, 6), (-5, 4), (-1, 3), (7, 6), (-1, 2)]),
+        ],
+    )
 }
 
 fn second_closed() -> LineOperator {
@@ -201,7 +218,10 @@ fn second_closed() -> LineOperator {
 }
 
 fn first_closed() -> LineOperator {
-    odd(&[(2, 3), (-1, 12)], &[(0, &[(-24, 17), (59, 34), (-4, 17), (-3, 34)]), (0, &[(-1, 2), (0, 1), (1, 2)])])
+    odd(
+        &[(2, 3), (-1, 12)],
+        &[(0, &[(-24, 17), (59, 34), (-4, 17), (-3, 34)]), (0, &[(-1, 2), (0, 1), (1, 2)])],
+    )
 }
 
 /// Two differences to each side inside; `rows` closure rows.
@@ -323,9 +343,19 @@ pub fn plate() -> Kernel {
         })
         .collect();
     let terms = vec![
-        FaceTerm { on: FaceSet { axis: 0, high: true, patch: patch.clone() }, rate: 0, action: Action::Add, value: hot },
+        FaceTerm {
+            on: FaceSet { axis: 0, high: true, patch: patch.clone() },
+            rate: 0,
+            action: Action::Add,
+            value: hot,
+        },
         FaceTerm { on: face(1, false), rate: 1, action: Action::Replace, value: swing },
-        FaceTerm { on: FaceSet { axis: 1, high: true, patch }, rate: 0, action: Action::Replace, value: stored },
+        FaceTerm {
+            on: FaceSet { axis: 1, high: true, patch },
+            rate: 0,
+            action: Action::Replace,
+            value: stored,
+        },
     ];
     sketch.kernel.step = vec![stage(
         1,
@@ -396,7 +426,8 @@ pub fn duct() -> Kernel {
     sketch.builder.name(wind, "wind");
     let dt = sketch.dt();
     let half = sketch.literal(1, 2);
-    for (source, target, part, fraction) in [(u, middle, half, ratio(0, 1)), (middle, next, dt, ratio(1, 2))] {
+    for (source, target, part, fraction) in [(u, middle, half, ratio(0, 1)), (middle, next, dt, ratio(1, 2))]
+    {
         let slope = sketch.derivative(first, 0, Source::Buffer(source), None, 1);
         let transport = sketch.builder.multiply(wind, slope);
         let step = if part == half { sketch.builder.multiply(half, dt) } else { dt };
@@ -456,10 +487,11 @@ fn outputs(sketch: &mut Sketch, u: BufferId, old: BufferId) {
     let larger = sketch.builder.value(Operation::Maximum(size, kept));
     let (scale, every) = (sketch.builder.whole(1), sketch.literal(1, 4));
     let place = vec![every, every];
-    let mut add = |name: &str, kind: OutputKind, sweeps: Vec<Sweep>, buffer: BufferId, every: Option<ValueId>| {
-        let (name, unit) = (name.to_owned(), "m/s".to_owned());
-        sketch.kernel.outputs.push(Output { name, unit, scale, kind, sweeps, buffer, every });
-    };
+    let mut add =
+        |name: &str, kind: OutputKind, sweeps: Vec<Sweep>, buffer: BufferId, every: Option<ValueId>| {
+            let (name, unit) = (name.to_owned(), "m/s".to_owned());
+            sketch.kernel.outputs.push(Output { name, unit, scale, kind, sweeps, buffer, every });
+        };
     add("speed", OutputKind::Snapshot, vec![write("speed", speed, rate)], speed, Some(every));
     add("middle", OutputKind::Gauge(place), Vec::new(), u, None);
     add("mean", OutputKind::Integral, Vec::new(), u, None);
@@ -486,7 +518,15 @@ pub fn front() -> Kernel {
     let power = sketch.builder.value(Operation::Power(size, exponent));
     let other_power = sketch.builder.value(Operation::Power(exponent, b));
     let mut sum = sketch.builder.add(power, other_power);
-    for function in [Function::Tanh, Function::Erf, Function::Erfc, Function::Sign, Function::Sinh, Function::Cosh, Function::Tan] {
+    for function in [
+        Function::Tanh,
+        Function::Erf,
+        Function::Erfc,
+        Function::Sign,
+        Function::Sinh,
+        Function::Cosh,
+        Function::Tan,
+    ] {
         let part = sketch.builder.call(function, b);
         sum = sketch.builder.add(sum, part);
     }

@@ -4,8 +4,8 @@
 use rimstone::exact::Rational;
 use rimstone::exact::round::nearest;
 use rimstone::kernel::{
-    Action, FaceSet, Kernel, LineOperator, Operation, OutputKind, Parity, Pass, Source, Stage, Sweep, ValueId,
-    Write,
+    Action, FaceSet, Kernel, LineOperator, Operation, OutputKind, Parity, Pass, Source, Stage, Sweep,
+    ValueId, Write,
 };
 use rimstone::model::{Function, Relation};
 
@@ -53,7 +53,8 @@ impl<'a> Reference<'a> {
             last_step: 0.0,
         };
         for (index, parameter) in kernel.parameters.iter().enumerate() {
-            let value = given.get(index).copied().flatten().unwrap_or_else(|| reference.fixed(parameter.default));
+            let value =
+                given.get(index).copied().flatten().unwrap_or_else(|| reference.fixed(parameter.default));
             reference.parameters.push(value);
         }
         for (index, axis) in kernel.axes.iter().enumerate() {
@@ -67,7 +68,9 @@ impl<'a> Reference<'a> {
             for node in reference.all_nodes() {
                 let off = (0..axes).any(|axis| table.axes >> axis & 1 == 0 && node[axis] != 0);
                 if !off {
-                    values.push(reference.value(table.value, &Place { node, time: 0.0, step: 0.0, rates: &[] }));
+                    values.push(
+                        reference.value(table.value, &Place { node, time: 0.0, step: 0.0, rates: &[] }),
+                    );
                 }
             }
             reference.tables.push(values);
@@ -121,9 +124,13 @@ impl<'a> Reference<'a> {
             Operation::Noise(seed) => noise(*seed, self.linear(&at.node)),
             Operation::Load(buffer) => self.read(Source::Buffer(*buffer), &at.node),
             Operation::Table(table) => self.read(Source::Table(*table), &at.node),
-            Operation::Apply { operator, axis, source, coefficient } => {
-                self.apply(&self.kernel.operators[operator.0].operator, *axis, *source, *coefficient, &at.node)
-            }
+            Operation::Apply { operator, axis, source, coefficient } => self.apply(
+                &self.kernel.operators[operator.0].operator,
+                *axis,
+                *source,
+                *coefficient,
+                &at.node,
+            ),
             Operation::Rate(rate) => at.rates[*rate],
             Operation::Negate(a) => -of(a),
             Operation::Add(a, b) => of(a) + of(b),
@@ -153,7 +160,14 @@ impl<'a> Reference<'a> {
         self.low[axis] + index as f64 * self.spacing[axis]
     }
 
-    fn apply(&self, operator: &LineOperator, axis: usize, source: Source, coefficient: Option<Source>, node: &[usize]) -> f64 {
+    fn apply(
+        &self,
+        operator: &LineOperator,
+        axis: usize,
+        source: Source,
+        coefficient: Option<Source>,
+        node: &[usize],
+    ) -> f64 {
         let count = self.nodes[axis] as i64;
         let index = node[axis] as i64;
         let rows = operator.closure_rows() as i64;
@@ -178,7 +192,8 @@ impl<'a> Reference<'a> {
             }
             (LineOperator::Constant(operator), false) => {
                 let first = if operator.parity == Parity::Odd { 1 } else { 0 };
-                let terms = (first..).zip(&operator.interior).filter(|(_, weight)| **weight != Rational::from(0));
+                let terms =
+                    (first..).zip(&operator.interior).filter(|(_, weight)| **weight != Rational::from(0));
                 sum(terms.map(|(k, weight)| {
                     let k: i64 = k;
                     let pair = match (operator.parity, k) {
@@ -192,14 +207,17 @@ impl<'a> Reference<'a> {
             (LineOperator::Varying(operator), true) => {
                 let entries = &operator.closure[row as usize];
                 sum(entries.iter().map(|entry| {
-                    let factor = sum(entry.weights.iter().map(|(m, weight)| nearest(weight) * b(mirrored(*m))));
+                    let factor =
+                        sum(entry.weights.iter().map(|(m, weight)| nearest(weight) * b(mirrored(*m))));
                     factor * f(mirrored(entry.column))
                 }))
             }
             (LineOperator::Varying(operator), false) => {
                 let mut terms = Vec::new();
                 for (form, s) in operator.forms.iter().zip(1i64..) {
-                    let at = |shift: i64| sum(form.iter().map(|(offset, w)| nearest(w) * b(index + offset + shift)));
+                    let at = |shift: i64| {
+                        sum(form.iter().map(|(offset, w)| nearest(w) * b(index + offset + shift)))
+                    };
                     terms.push(at(0) * (f(index + s) - f(index)));
                     terms.push(at(-s) * (f(index - s) - f(index)));
                 }
