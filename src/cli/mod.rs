@@ -34,6 +34,9 @@ enum Command {
     Weights(weights::Arguments),
 }
 
+pub mod explain;
+pub mod format;
+
 /// Runs the program and returns its exit status.
 pub fn main() -> ExitCode {
     let ending = match Program::try_parse() {

@@ -42,7 +42,7 @@ impl Bar {
     }
 
     fn run(&self, arguments: &[&str]) -> Output {
-        Command::new(self.path("bar"))
+        Command::new(&self.program)
             .current_dir(self.folder.path())
             .args(arguments)
             .output()

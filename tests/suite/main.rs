@@ -4,4 +4,8 @@ mod c_driver;
 mod emission;
 mod exactness;
 mod layering;
+mod limits;
+mod lowering;
 mod published;
+mod reference;
+mod syntax;

@@ -4,6 +4,7 @@ mod line;
 mod method;
 mod output;
 mod stage;
+mod tableau;
 mod translate;
 
 use super::{Axis, Builder, Field, Kernel, Limit, NamedOperator, Parameter, Step, TimePlan};
@@ -25,7 +26,7 @@ pub fn lower(model: &Model, scheme: &Scheme, law: &LimitLaw, notes: Vec<String>)
     let outputs = lowering.outputs(&marching.present);
     let rate = lowering.stored(&law.rate, &marching.present);
     let limit = Limit { rate, state_dependent: changes(model, law), law: law.text.clone() };
-    let fixed = Binding { field: Vec::new(), rate: Vec::new(), applied: Vec::new() };
+    let fixed = Binding::fixed();
     let axes = model
         .axes
         .iter()

@@ -1,12 +1,20 @@
 /* ---- steps ---- */
 
 static volatile sig_atomic_t stop_asked = 0;
+static volatile time_t first_asked;
 
-/* The first request stops the run in good order; the second one falls through to the system. */
+/* The first request stops the run in good order. One that comes seconds later falls through to the system; one that comes
+ * at once is the same request on a second way, from a terminal and from whoever started this program. */
 static void ask_to_stop(int number)
 {
-    (void)number;
-    stop_asked = 1;
+    time_t now = time(NULL);
+    if (!stop_asked) {
+        stop_asked = 1;
+        first_asked = now;
+    } else if (now > first_asked + 1) {
+        signal(number, SIG_DFL);
+        raise(number);
+    }
 }
 
 static void catch_signals(void)
@@ -15,7 +23,7 @@ static void catch_signals(void)
     memset(&action, 0, sizeof action);
     sigemptyset(&action.sa_mask);
     action.sa_handler = ask_to_stop;
-    action.sa_flags = SA_RESTART | (int)SA_RESETHAND;
+    action.sa_flags = SA_RESTART;
     sigaction(SIGINT, &action, NULL);
     sigaction(SIGTERM, &action, NULL);
     action.sa_flags = 0;
