@@ -173,6 +173,7 @@ fn members(context: &Context, wanted: MemberText) -> String {
     member("points", "isize", None, "0", "All nodes.");
     member("rows", "isize", None, "0", "Lines along the last axis.");
     member("team", "isize", None, "1", "Threads that share the rows.");
+    member("crew", "Option<Crew>", None, "None", "All but the caller's.");
     for name in ["low", "high", "spacing", "inverse_spacing"] {
         member(name, "f64", Some(axes), "0.0", "");
     }

@@ -177,7 +177,7 @@ impl SweepPrinter<'_> {
             Language::Rust => {
                 let thread = if mentions(body, "thread") { "thread" } else { "_" };
                 let row = if mentions(body, "row") { "row" } else { "_" };
-                text.open(&format!("share(s.team, {parts}, &|{thread}, {row}| {{"));
+                text.open(&format!("share(s, {parts}, &|{thread}, {row}| {{"));
             }
         }
     }
