@@ -7,7 +7,7 @@ use super::language::Language;
 use super::literal;
 use super::operators::operators;
 use super::routines::{Routines, routines};
-use super::text::{Text, mentions};
+use super::text::{Text, calls, mentions};
 use super::{Form, Program, Provenance, render};
 use crate::kernel::{Kernel, Output, OutputKind, Step, ValidKernel};
 use std::collections::BTreeMap;
@@ -57,7 +57,10 @@ fn kernel_file(context: &Context, provenance: Provenance, common: &[(&'static st
     values.push(("lifetime", lifetime(context, &routines, &fills)));
     values.push(("description", description(context, provenance)));
     values.push(("interface", interface(context, &routines)));
-    let body: String = values.iter().map(|(_, value)| value.as_str()).collect::<Vec<_>>().join("\n");
+    let code =
+        ["operators", "tables", "routines", "fixed", "lifetime", "prepare", "description", "interface"];
+    let parts = values.iter().filter(|(name, _)| code.contains(name));
+    let body: String = parts.map(|(_, value)| value.as_str()).collect::<Vec<_>>().join("\n");
     values.push(("helpers", helpers(context, &body)));
     render(include_str!("../../templates/c/kernel.c"), &values)
 }
@@ -70,7 +73,7 @@ fn notes(kernel: &Kernel) -> String {
 fn helpers(context: &Context, body: &str) -> String {
     let mut text = Text::default();
     let mut add = |name: &str, lines: &[&str]| {
-        if mentions(body, name) {
+        if calls(body, name) {
             text.lines(&lines.iter().map(|line| (*line).to_owned()).collect::<Vec<_>>());
             text.blank();
         }
@@ -137,11 +140,11 @@ fn helpers(context: &Context, body: &str) -> String {
             "}",
         ],
     );
-    if mentions(body, "coordinate") {
+    if calls(body, "coordinate") {
         text.lines(&coordinate(context));
         text.blank();
     }
-    if mentions(body, "thread_number") {
+    if calls(body, "thread_number") {
         let lines = [
             "static ptrdiff_t thread_number(void) {",
             "#ifdef _OPENMP",
@@ -241,7 +244,9 @@ fn lifetime(context: &Context, routines: &Routines, fills: &[String]) -> String 
     text.line("free(s);");
     text.close("}");
     text.blank();
-    text.comment("Returns NULL when there is not enough memory.");
+    text.comment(
+        "Returns NULL when there is not enough memory, or an axis has fewer nodes than the operators need.",
+    );
     text.open(&format!(
         "{prefix}_solver *{prefix}_create(const size_t *nodes, const double *parameters, const unsigned char *given, int threads) {{"
     ));
@@ -249,9 +254,11 @@ fn lifetime(context: &Context, routines: &Routines, fills: &[String]) -> String 
     text.open("if (s == NULL) {");
     text.line("return NULL;");
     text.close("}");
+    let least: Vec<String> = kernel.axes.iter().map(|axis| axis.least_nodes.to_string()).collect();
+    text.line(&format!("static const size_t least[{axes}] = {{ {} }};", least.join(", ")));
     text.line("size_t points = 1;");
     text.open(&format!("for (int axis = 0; axis < {axes}; axis++) {{"));
-    text.open("if (nodes[axis] == 0 || nodes[axis] > LARGEST_ARRAY / points) {");
+    text.open("if (nodes[axis] < least[axis] || nodes[axis] > LARGEST_ARRAY / points) {");
     text.line("free(s);");
     text.line("return NULL;");
     text.close("}");
@@ -261,7 +268,7 @@ fn lifetime(context: &Context, routines: &Routines, fills: &[String]) -> String 
     text.line("s->points = (ptrdiff_t)points;");
     text.line(&format!("s->rows = s->points / s->nodes[{fast}];"));
     text.comment("A parallel region costs more than it brings on small grids.");
-    text.line("s->team = s->points > 20000 && threads > 1 ? threads : 1;");
+    text.line("s->team = s->points <= 20000 || threads < 1 ? 1 : threads > 4096 ? 4096 : threads;");
     text.line("s->memory = sizeof *s;");
     text.line("int complete = 1;");
     for member in &context.buffers {

@@ -51,6 +51,14 @@ const OPERATOR_NAMES: [&str; 13] = [
     "_node",
 ];
 
+/// Names of the file's scope and of locals in operator functions, besides those that no identifier may be.
+const FILE_NAMES: &str = "
+swap largest fixed_values axis_list parameter_list field_list output_list quadrature_0 quadrature_1 quadrature_2
+quadrature_list quadrature_counts model_lines model_text description describe arrays kernel
+f b g c i k stride b_stride high forward b_forward turn from columns column sum entry entries factor term blocks
+block number width weight start result
+";
+
 /// Names of an axis in program text.
 #[derive(Clone, Debug)]
 pub struct AxisNames {
@@ -77,14 +85,15 @@ pub struct Context<'a> {
     pub operators: Vec<String>,
     pub constant_only: Vec<bool>,
     pub used: RefCell<BTreeSet<(OperatorId, Variant)>>,
-    pub functions: RefCell<Namer>,
+    functions: RefCell<Namer>,
+    /// Names that functions must not have: members, and what the templates and printers use.
+    avoided: Namer,
 }
 
 impl<'a> Context<'a> {
     pub fn new(kernel: &'a ValidKernel, language: Language) -> Context<'a> {
         let kernel: &'a Kernel = kernel;
         let mut members = Namer::default();
-        let mut functions = Namer::default();
         let axes = kernel
             .axes
             .iter()
@@ -103,12 +112,8 @@ impl<'a> Context<'a> {
                 (value, members.name(wish))
             })
             .collect();
-        let operators = kernel
-            .operators
-            .iter()
-            .map(|operator| functions.family(&operator.name, &OPERATOR_NAMES))
-            .collect();
-        Context {
+        members.reserve(FILE_NAMES);
+        let mut context = Context {
             kernel,
             language,
             prefix: Namer::default().name(&kernel.name),
@@ -116,11 +121,34 @@ impl<'a> Context<'a> {
             buffers,
             tables,
             stored,
-            operators,
+            operators: Vec::new(),
             constant_only: constant_only(kernel),
             used: RefCell::default(),
-            functions: RefCell::new(functions),
-        }
+            functions: RefCell::default(),
+            avoided: members,
+        };
+        context.operators = kernel
+            .operators
+            .iter()
+            .map(|operator| context.function_name(&operator.name, &OPERATOR_NAMES))
+            .collect();
+        context
+    }
+
+    /// A new name of the file's scope, such that it followed by each ending is free as well. It differs from every
+    /// member, because local names are made of those.
+    pub fn function_name(&self, wish: &str, endings: &[&str]) -> String {
+        let mut functions = self.functions.borrow_mut();
+        let mut all = self.avoided.clone();
+        all.absorb(&functions);
+        let name = all.family(wish, endings);
+        functions.family(&name, endings);
+        name
+    }
+
+    /// Names for one function: those of the file's scope are taken.
+    pub fn local_names(&self) -> Namer {
+        self.functions.borrow().clone()
     }
 
     /// The last axis.
@@ -184,8 +212,10 @@ impl<'a> Context<'a> {
         let entry = &self.kernel.values[value.0];
         match &entry.operation {
             Operation::Parameter(parameter) => self.kernel.parameters[parameter.0].name.clone(),
-            Operation::InverseSpacing(axis) => format!("per_step_{}", self.kernel.axes[*axis].name),
+            Operation::InverseSpacing(axis) => format!("per_spacing_{}", self.kernel.axes[*axis].name),
             Operation::Literal(_) | Operation::Pi => "constant".to_owned(),
+            Operation::Time => "t".to_owned(),
+            Operation::Step => "dt".to_owned(),
             _ => entry.hint.clone().unwrap_or_else(|| "c".to_owned()),
         }
     }

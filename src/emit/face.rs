@@ -8,7 +8,7 @@ use crate::kernel::{BufferId, FaceWrite, Source, ValueId};
 
 /// Prints a face pass.
 pub fn face(context: &Context, pass: &FaceWrite, wish: &str) -> Routine {
-    let name = context.functions.borrow_mut().name(wish);
+    let name = context.function_name(wish, &[]);
     let written: Vec<BufferId> = pass.writes.iter().map(|write| write.buffer).collect();
     let values: Vec<ValueId> = pass.writes.iter().map(|write| write.value).collect();
     let mut roots = values.clone();

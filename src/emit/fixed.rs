@@ -147,7 +147,7 @@ pub fn tables(context: &Context) -> (Text, Vec<String>) {
     let mut text = Text::default();
     let mut functions = Vec::new();
     for id in (0..context.tables.len()).map(TableId) {
-        let name = context.functions.borrow_mut().name(&format!("fill_{}", context.tables[id.0]));
+        let name = context.function_name(&format!("fill_{}", context.tables[id.0]), &[]);
         table(context, &mut text, id, &name);
         functions.push(name);
     }
@@ -158,7 +158,7 @@ fn table(context: &Context, text: &mut Text, id: TableId, name: &str) {
     let language = context.language;
     let table = &context.kernel.tables[id.0];
     let mine: Vec<usize> = (0..context.axes.len()).filter(|axis| table.axes >> axis & 1 == 1).collect();
-    let mut names = Namer::default();
+    let mut names = context.local_names();
     for axis in &context.axes {
         names.name(&axis.count);
         names.name(&axis.index);

@@ -1,7 +1,7 @@
 //! What differs between C and Rust in a statement or an expression. Layout of files is elsewhere.
 
 use super::literal;
-use crate::model::{Function, Relation};
+use crate::kernel::{Function, Relation};
 
 /// A target language. C is C11, Rust is edition 2021 with the standard library.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, Hash)]

@@ -51,7 +51,7 @@ impl Ord for Source {
 impl<'a> Leaves<'a> {
     /// The leaves of everything that `roots` are made of. `written` arrays get names as well.
     pub fn new(context: &'a Context<'a>, roots: &[ValueId], written: &[BufferId]) -> Leaves<'a> {
-        let mut names = Namer::default();
+        let mut names = context.local_names();
         for axis in &context.axes {
             names.name(&axis.count);
             names.name(&axis.index);
@@ -131,6 +131,11 @@ impl<'a> Leaves<'a> {
 
     fn register(&mut self, value: ValueId) {
         if !self.uniform.contains_key(&value) {
+            if let Operation::Time | Operation::Step = self.context.kernel.values[value.0].operation {
+                // Parameters of the pass, under the same names.
+                self.uniform.insert(value, self.context.wish(value));
+                return;
+            }
             let wish = match self.context.stored.get(&value) {
                 Some(member) => member.clone(),
                 None => self.context.wish(value),
@@ -206,6 +211,7 @@ impl<'a> Leaves<'a> {
         let mut computed = Vec::new();
         for (value, name) in self.uniform.iter().filter(|(_, name)| super::text::mentions(body, name)) {
             match context.kernel.values[value.0].extent {
+                Extent::Uniform if name == "t" || name == "dt" => {}
                 Extent::Uniform => computed.push((*value, name.clone())),
                 _ => {
                     let storage = context.storage(*value).unwrap_or_else(|| "unknown".to_owned());

@@ -76,6 +76,7 @@ fn render(template: &str, values: &[(&'static str, String)]) -> String {
     for (name, value) in values {
         context.insert(*name, value);
     }
-    tera::Tera::one_off(template, &context, false)
-        .unwrap_or_else(|fault| panic!("a template of this crate does not render: {fault}"))
+    let text = tera::Tera::one_off(template, &context, false)
+        .unwrap_or_else(|fault| panic!("a template of this crate does not render: {fault}"));
+    text::tidy(&text)
 }

@@ -18,8 +18,8 @@ log2 logb modf scalbn cbrt fabs hypot pow sqrt erf erfc lgamma tgamma ceil floor
 trunc fmod remainder remquo copysign nan nextafter fdim fmax fmin fma j0 j1 jn y0 y1 yn gamma signgam powf abs
 null eof errno nan infinity huge_val assert stdin stdout stderr main exit malloc calloc free memcpy memset
 size_t ptrdiff_t int64_t uint64_t int32_t uint32_t uint8_t va_list file time clock signal rename remove index
-minimum maximum sign select opaque noise coordinate wrap at share part parts row rows first last end count scratch
-thread thread_number team step next dt s edge_row here inline_function rows_in_parallel along_the_row driver solver
+minimum maximum sign select opaque noise coordinate wrap at share part parts crew row rows first last end count scratch
+thread thread_number team step next dt t s edge_row here inline_function rows_in_parallel along_the_row driver solver
 array parameter parameters low high spacing inverse_spacing nodes points given values memory
 last_step parameter_low parameter_high parameter_scale start_time end_time step_duration every place scale field_scale
 ";
@@ -47,6 +47,16 @@ impl Namer {
             name = format!("{base}_{count}");
         }
         name
+    }
+
+    /// Takes these words.
+    pub fn reserve(&mut self, words: &str) {
+        self.taken.extend(words.split_whitespace().map(str::to_lowercase));
+    }
+
+    /// Takes everything that another one has taken.
+    pub fn absorb(&mut self, other: &Namer) {
+        self.taken.extend(other.taken.iter().cloned());
     }
 
     /// A new identifier `base` such that `base` followed by each of `endings` is free as well; all are taken.

@@ -125,7 +125,7 @@ impl Printer<'_> {
         });
         for (weight, what) in entries {
             let number = literal::rational(weight, language) + ",";
-            text.line(&format!("{number:<25} /* {} {what} */", literal::fraction(weight)));
+            text.line(&format!("{number:<25} /* {}, {what} */", literal::fraction(weight)));
         }
         text.close(language.pick("};", "];"));
     }
@@ -318,8 +318,8 @@ impl Printer<'_> {
             return "";
         }
         let language = self.language();
-        text.line(&language.double("sign", &language.choose("high", "-1.0", "1.0")));
-        "sign * "
+        text.line(&language.double("turn", &language.choose("high", "-1.0", "1.0")));
+        "turn * "
     }
 
     fn constant_at(&self, text: &mut Text, operator: &ConstantOperator) {

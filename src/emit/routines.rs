@@ -131,7 +131,7 @@ fn limit(context: &Context, all: &mut Routines) -> String {
         None if is_literal(context.kernel, rate) => leaves.values(&[rate], "0").1.remove(0),
         None => String::new(),
     };
-    let name = context.functions.borrow_mut().name("uniform_rate");
+    let name = context.function_name("uniform_rate", &[]);
     let mut body = Text::indented(1);
     body.lines(&leaves.uniform_declarations(&result));
     body.line(&context.language.result(&result));

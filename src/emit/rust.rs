@@ -8,7 +8,7 @@ use super::literal;
 use super::operators::operators;
 use super::routines::{Routines, routines};
 use super::rust_driver;
-use super::text::{Text, mentions};
+use super::text::{Text, calls, mentions};
 use super::{Form, Program, Provenance, render};
 use crate::kernel::{OutputKind, Step, ValidKernel};
 use std::collections::BTreeMap;
@@ -59,21 +59,34 @@ fn kernel_file(context: &Context, provenance: Provenance, common: &[(&'static st
     values.push(("prepare", prepare(context, &routines, &fills)));
     values.push(("description", description(context, provenance)));
     values.push(("interface", interface(context, &routines)));
-    let body: String = values.iter().map(|(_, value)| value.as_str()).collect::<Vec<_>>().join("\n");
+    let code =
+        ["operators", "tables", "routines", "fixed", "lifetime", "prepare", "description", "interface"];
+    let parts = values.iter().filter(|(name, _)| code.contains(name));
+    let body: String = parts.map(|(_, value)| value.as_str()).collect::<Vec<_>>().join("\n");
+    values.push(("imports", imports(&body)));
     values.push(("helpers", helpers(context, &body)));
     render(include_str!("../../templates/rust/kernel.rs"), &values)
+}
+
+/// Names from the driver that the description needs.
+fn imports(body: &str) -> String {
+    let names = ["AxisInfo", "Description", "FieldInfo", "Kind", "OutputInfo", "ParameterInfo", "Solver"];
+    let always = ["Description", "Solver"];
+    let wanted: Vec<&str> =
+        names.into_iter().filter(|name| always.contains(name) || mentions(body, name)).collect();
+    wanted.join(", ")
 }
 
 /// Small functions that the rest names.
 fn helpers(context: &Context, body: &str) -> String {
     let mut text = Text::default();
     for (name, source) in HELPERS {
-        if mentions(body, name) {
+        if calls(body, name) {
             text.lines(&source.lines().map(str::to_owned).collect::<Vec<_>>());
             text.blank();
         }
     }
-    if mentions(body, "coordinate") {
+    if calls(body, "coordinate") {
         let axes = &context.kernel.axes;
         let periodic: Vec<String> = axes.iter().map(|axis| axis.periodic.to_string()).collect();
         text.line(
@@ -160,6 +173,7 @@ fn members(context: &Context, wanted: MemberText) -> String {
     member("points", "isize", None, "0", "All nodes.");
     member("rows", "isize", None, "0", "Lines along the last axis.");
     member("team", "isize", None, "1", "Threads that share the rows.");
+    member("crew", "Option<Crew>", None, "None", "All but the caller's.");
     for name in ["low", "high", "spacing", "inverse_spacing"] {
         member(name, "f64", Some(axes), "0.0", "");
     }

@@ -111,13 +111,24 @@ impl Text {
     }
 }
 
-/// Whether the identifier occurs in the text as a whole word.
+/// Whether the identifier occurs in the text as a whole word, outside of comment lines.
 pub fn mentions(text: &str, name: &str) -> bool {
+    text.lines().any(|line| !is_comment(line.trim_start()) && occurs(line, name, |_| true))
+}
+
+/// Whether a function of that name is called, outside of comment lines.
+pub fn calls(text: &str, name: &str) -> bool {
+    text.lines()
+        .any(|line| !is_comment(line.trim_start()) && occurs(line, name, |rest| rest.starts_with('(')))
+}
+
+fn occurs(line: &str, name: &str, follows: impl Fn(&str) -> bool) -> bool {
     let word = |byte: u8| byte.is_ascii_alphanumeric() || byte == b'_';
-    text.match_indices(name).any(|(place, _)| {
-        let before = text.as_bytes()[..place].last().is_some_and(|byte| word(*byte));
-        let after = text.as_bytes().get(place + name.len()).is_some_and(|byte| word(*byte));
-        !before && !after
+    line.match_indices(name).any(|(place, _)| {
+        let rest = &line[place + name.len()..];
+        let before = line.as_bytes()[..place].last().is_some_and(|byte| word(*byte));
+        let after = rest.as_bytes().first().is_some_and(|byte| word(*byte));
+        !before && !after && follows(rest)
     })
 }
 
@@ -125,18 +136,55 @@ fn is_comment(line: &str) -> bool {
     line.starts_with("/*") || line.starts_with("//")
 }
 
-/// The last blank within the width, or the first one after it.
+/// Where a line is best broken: at a blank in the right half of the width where the fewest brackets are open, rather
+/// after a comma or a sum's sign than after a product's, and rather later; else at the first blank after the width.
 fn break_at(line: &str, width: usize) -> Option<usize> {
-    let blanks =
-        line.match_indices(' ').map(|(place, _)| place).filter(|place| !line[..*place].trim().is_empty());
-    let mut best = None;
-    for place in blanks {
-        if line[..place].chars().count() > width && best.is_some() {
-            break;
+    let mut depth = 0u32;
+    let mut best: Option<(u32, usize)> = None;
+    let mut previous = ' ';
+    let mut text_seen = false;
+    for (column, (place, character)) in line.char_indices().enumerate() {
+        match character {
+            '(' | '[' => depth += 1,
+            ')' | ']' => depth = depth.saturating_sub(1),
+            ' ' if text_seen && column > width => return best.map(|(_, place)| place).or(Some(place)),
+            ' ' if text_seen && column * 2 > width => {
+                let kind = match previous {
+                    ',' => 0,
+                    '+' | '-' | '=' | '&' | '|' | '?' | ':' | '{' => 1,
+                    '*' | '/' => 2,
+                    _ => 6,
+                };
+                let rank = 4 * depth + kind;
+                if best.is_none_or(|(least, _)| rank <= least) {
+                    best = Some((rank, place));
+                }
+            }
+            _ => {}
         }
-        best = Some(place);
+        text_seen |= character != ' ';
+        previous = character;
     }
-    best
+    best.map(|(_, place)| place)
+}
+
+/// At most one blank line in a row, none at the end.
+pub fn tidy(text: &str) -> String {
+    let mut result = String::new();
+    let mut blank = false;
+    for line in text.lines() {
+        if line.is_empty() {
+            blank = !result.is_empty();
+            continue;
+        }
+        if blank {
+            result.push('\n');
+            blank = false;
+        }
+        result.push_str(line);
+        result.push('\n');
+    }
+    result
 }
 
 #[cfg(test)]
@@ -155,5 +203,7 @@ mod tests {
     fn words_are_found_whole() {
         assert!(mentions("u_x + u", "u"));
         assert!(!mentions("u_x + v", "u"));
+        assert!(!mentions("    /* u */", "u"));
+        assert!(calls("x = sign(y);", "sign") && !calls("x = sign * y;", "sign"));
     }
 }

@@ -41,7 +41,7 @@ pub use operator::{ClosureRow, ConstantOperator, LineOperator, Parity, VaryingEn
 pub use validate::{KernelFault, ValidKernel, validate};
 
 use crate::exact::Rational;
-use crate::model::{Function, Relation};
+pub use crate::model::{Function, Relation};
 
 macro_rules! index {
     ($($(#[$doc:meta])* $name:ident;)*) => {$(

@@ -8,8 +8,11 @@
 // Names follow the model; loops over rows work on pointers, see `Arrays`.
 #![allow(non_snake_case, unsafe_op_in_unsafe_fn, clippy::too_many_arguments, clippy::excessive_precision)]
 
-use crate::driver::{AxisInfo, Description, FieldInfo, Kind, OutputInfo, ParameterInfo, Solver};
+use crate::driver::{ {{- imports -}} };
 use std::alloc::{Layout, alloc_zeroed, dealloc};
+use std::sync::atomic::{AtomicUsize, Ordering};
+use std::sync::{Arc, Condvar, Mutex, MutexGuard};
+use std::thread::JoinHandle;
 
 /// An array that starts a cache line.
 struct Array {
@@ -98,23 +101,157 @@ unsafe fn line<'a>(start: *mut f64, count: isize) -> &'a mut [f64] {
 }
 
 /// Calls `work` with the number of the thread and of the row, for all rows; each thread takes a range of rows.
-fn share(team: isize, rows: isize, work: &(impl Fn(isize, isize) + Sync)) {
+fn share(s: &Arrays, rows: isize, work: &(impl Fn(isize, isize) + Sync)) {
     let range = |thread: isize| {
-        for row in rows * thread / team..rows * (thread + 1) / team {
+        for row in rows * thread / s.team..rows * (thread + 1) / s.team {
             work(thread, row);
         }
     };
-    if team == 1 {
-        return range(0);
+    match &s.crew {
+        None => range(0),
+        Some(crew) => crew.run(&range),
     }
-    std::thread::scope(|scope| {
-        for thread in 1..team {
-            if std::thread::Builder::new().spawn_scoped(scope, move || range(thread)).is_err() {
-                range(thread);
+}
+
+/// Threads that wait for work.
+struct Crew {
+    shared: Arc<Shared>,
+    members: Vec<JoinHandle<()>>,
+}
+
+struct Shared {
+    order: Mutex<Order>,
+    given: Condvar,
+    done: Condvar,
+    /// Counts orders; looked at before a thread goes to sleep.
+    number: AtomicUsize,
+    /// Members that have not finished the present order.
+    busy: AtomicUsize,
+}
+
+#[derive(Clone, Copy)]
+struct Order {
+    number: usize,
+    work: Option<Work>,
+}
+
+/// Work with its lifetime forgotten; `Crew::run` returns only after all have let go of it.
+#[derive(Clone, Copy)]
+struct Work(*const (dyn Fn(isize) + Sync));
+
+// SAFETY: what it points at may be called from several threads, and lives while they do.
+unsafe impl Send for Work {}
+
+/// Looks at a counter before a thread sleeps; some microseconds.
+const PATIENCE: usize = 4000;
+
+impl Crew {
+    /// A crew of at most `wanted` threads, the caller's not counted; fewer when the system gives no more.
+    fn of(wanted: usize) -> Option<Crew> {
+        let shared = Arc::new(Shared {
+            order: Mutex::new(Order { number: 0, work: None }),
+            given: Condvar::new(),
+            done: Condvar::new(),
+            number: AtomicUsize::new(0),
+            busy: AtomicUsize::new(0),
+        });
+        let start = |thread: usize| {
+            let shared = Arc::clone(&shared);
+            std::thread::Builder::new().spawn(move || shared.obey(thread as isize))
+        };
+        let members: Vec<JoinHandle<()>> = (1..=wanted).map_while(|thread| start(thread).ok()).collect();
+        (!members.is_empty()).then_some(Crew { shared, members })
+    }
+
+    /// Calls `work` with 0 here and with 1, 2, ... on the other threads; returns when all are done.
+    fn run(&self, work: &(dyn Fn(isize) + Sync)) {
+        // SAFETY: only the lifetime changes, and `Waiting` waits until no thread uses the work any more.
+        let work_for_all = Work(unsafe {
+            std::mem::transmute::<*const (dyn Fn(isize) + Sync + '_), *const (dyn Fn(isize) + Sync + 'static)>(work)
+        });
+        self.shared.busy.store(self.members.len(), Ordering::Release);
+        self.shared.give(Some(work_for_all));
+        let _waiting = Waiting(&self.shared);
+        work(0);
+    }
+}
+
+/// Waits when it goes out of scope, also when the work panics.
+struct Waiting<'a>(&'a Shared);
+
+impl Drop for Waiting<'_> {
+    fn drop(&mut self) {
+        let done = || self.0.busy.load(Ordering::Acquire) == 0;
+        for _ in 0..PATIENCE {
+            if done() {
+                return;
             }
+            std::hint::spin_loop();
         }
-        range(0);
-    });
+        let mut order = self.0.lock();
+        while !done() {
+            order = self.0.done.wait(order).unwrap_or_else(|poisoned| poisoned.into_inner());
+        }
+    }
+}
+
+impl Drop for Crew {
+    fn drop(&mut self) {
+        self.shared.give(None);
+        for member in self.members.drain(..) {
+            // A member that panicked has nothing left to do.
+            let _ = member.join();
+        }
+    }
+}
+
+impl Shared {
+    fn lock(&self) -> MutexGuard<'_, Order> {
+        self.order.lock().unwrap_or_else(|poisoned| poisoned.into_inner())
+    }
+
+    fn give(&self, work: Option<Work>) {
+        let mut order = self.lock();
+        *order = Order { number: order.number + 1, work };
+        self.number.store(order.number, Ordering::Release);
+        self.given.notify_all();
+    }
+
+    /// The life of a member: order after order, until there is no work in one.
+    fn obey(&self, thread: isize) {
+        let mut last = 0;
+        loop {
+            for _ in 0..PATIENCE {
+                if self.number.load(Ordering::Acquire) != last {
+                    break;
+                }
+                std::hint::spin_loop();
+            }
+            let mut order = self.lock();
+            while order.number == last {
+                order = self.given.wait(order).unwrap_or_else(|poisoned| poisoned.into_inner());
+            }
+            let Order { number, work } = *order;
+            drop(order);
+            last = number;
+            let Some(work) = work else { return };
+            let _finished = Finished(self);
+            // SAFETY: the giver waits for `Finished`.
+            unsafe { (*work.0)(thread) };
+        }
+    }
+}
+
+/// Tells the giver, also when the work panics.
+struct Finished<'a>(&'a Shared);
+
+impl Drop for Finished<'_> {
+    fn drop(&mut self) {
+        if self.0.busy.fetch_sub(1, Ordering::AcqRel) == 1 {
+            let _order = self.0.lock();
+            self.0.done.notify_all();
+        }
+    }
 }
 
 {{ helpers }}{{ operators }}
@@ -162,7 +299,10 @@ impl Solver for Kernel {
         }
         s.rows = s.points / s.nodes[s.nodes.len() - 1];
         // Threads cost more than they bring on small grids.
-        s.team = if s.points > 20_000 { threads.clamp(1, 4096) as isize } else { 1 };
+        if s.points > 20_000 && threads > 1 {
+            s.crew = Crew::of(threads.min(4096) - 1);
+        }
+        s.team = 1 + s.crew.as_ref().map_or(0, |crew| crew.members.len() as isize);
 {{ prepare }}        self.s = s;
         Ok(())
     }

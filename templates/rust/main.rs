@@ -3,6 +3,7 @@
 //! Made by rimstone {{ version }}. Build with `cargo build --release`; for the instructions of this machine set
 //! `RUSTFLAGS=-Ctarget-cpu=native`. Results do not depend on it.
 
+#[allow(unused_imports, reason = "a program uses less of the driver than a library offers")]
 mod driver;
 mod kernel;
 

@@ -63,7 +63,7 @@ pub fn compile_c(program: &Program, folder: &Path, flags: &[&str]) -> PathBuf {
 
 /// One crate for all kernels; the program takes the kernel's place in the list as its first argument.
 pub fn compile_rust(programs: &[Program], folder: &Path) -> PathBuf {
-    let mut main = String::from("#![deny(warnings)]\nmod driver;\n");
+    let mut main = String::from("#![deny(warnings)]\n#[allow(unused_imports, dead_code)]\nmod driver;\n");
     for (place, program) in programs.iter().enumerate() {
         unpack(program, folder);
         let kernel = &program.files["src/kernel.rs"];

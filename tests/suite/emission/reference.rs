@@ -4,7 +4,7 @@
 use rimstone::exact::Rational;
 use rimstone::exact::round::nearest;
 use rimstone::kernel::{
-    Action, Extent, FaceSet, Kernel, LineOperator, Operation, OutputKind, Parity, Pass, Source, Stage, Sweep,
+    Action, FaceSet, Kernel, LineOperator, Operation, OutputKind, Parity, Pass, Source, Stage, Sweep,
     ValueId, Write,
 };
 use rimstone::model::{Function, Relation};
@@ -345,11 +345,6 @@ impl<'a> Reference<'a> {
                 self.sweep(sweep, time, self.last_step);
             }
         }
-    }
-
-    /// Values of table extent must never be asked for in a sweep; used by the tests of the tests.
-    pub fn extents(&self) -> impl Iterator<Item = Extent> + '_ {
-        self.kernel.values.iter().map(|value| value.extent)
     }
 }
 
