@@ -2,9 +2,12 @@
 //!
 //! Only this module knows clap, standard output and exit statuses.
 
+mod explain;
+mod format;
 mod weights;
 
 use std::io::{ErrorKind, Write};
+use std::panic::{self, PanicHookInfo};
 use std::process::ExitCode;
 
 use clap::{Parser, Subcommand};
@@ -18,11 +21,26 @@ pub enum Ending {
     Faults = 1,
     /// The environment failed: no permission, disk full, no compiler.
     Environment = 2,
+    /// The computation blew up.
+    BlewUp = 3,
+    /// Stopped on request.
+    Interrupted = 130,
 }
+
+const EXAMPLES: &str = "\
+Examples:
+  rimstone format --check vault_wall.rim               is the file in canonical layout?
+  rimstone explain E0121                               what a diagnostic means
+  rimstone weights --derivative 2 --order 4            finite-difference weights, no model needed
+`rimstone COMMAND --help` has more.
+
+Exit status: 0 done, 1 the model or the arguments have faults, 2 the environment failed,
+3 the computation blew up, 130 interrupted.
+Results go to standard output, everything else to standard error.";
 
 /// From one page of model equation to a solver that can be trusted.
 #[derive(Parser)]
-#[command(name = "rimstone", version, max_term_width = 100)]
+#[command(name = "rimstone", version, max_term_width = 100, after_help = EXAMPLES)]
 struct Program {
     #[command(subcommand)]
     command: Command,
@@ -32,25 +50,56 @@ struct Program {
 enum Command {
     /// Finite-difference weights for any nodes, exactly, with their order and error
     Weights(weights::Arguments),
+    /// Model files in canonical layout
+    Format(format::Arguments),
+    /// A diagnostic in full; without a code, the list of all
+    Explain(explain::Arguments),
 }
 
-pub mod explain;
-pub mod format;
+impl From<Ending> for ExitCode {
+    fn from(ending: Ending) -> ExitCode {
+        ExitCode::from(ending as u8)
+    }
+}
 
 /// Runs the program and returns its exit status.
 pub fn main() -> ExitCode {
-    let ending = match Program::try_parse() {
+    panic::set_hook(Box::new(|information| complain(&confession(information))));
+    // The hook has said everything.
+    panic::catch_unwind(obey).unwrap_or_else(|_| Ending::Environment.into())
+}
+
+fn obey() -> ExitCode {
+    match Program::try_parse() {
         Ok(program) => match program.command {
-            Command::Weights(arguments) => weights::run(&arguments),
+            Command::Weights(arguments) => weights::run(&arguments).into(),
+            Command::Format(arguments) => format::run(arguments),
+            Command::Explain(arguments) => explain::run(arguments),
         },
         Err(answer) if answer.use_stderr() => {
             // Nothing is left to be done where even standard error is gone.
             let _ = answer.print();
-            Ending::Faults
+            Ending::Faults.into()
         }
-        Err(help) => print(&help.render().to_string()),
-    };
-    ExitCode::from(ending as u8)
+        Err(help) => print(&help.render().to_string()).into(),
+    }
+}
+
+/// What is said about a fault of this program's own.
+fn confession(information: &PanicHookInfo<'_>) -> String {
+    let payload = information.payload();
+    let reason = payload
+        .downcast_ref::<&str>()
+        .copied()
+        .or_else(|| payload.downcast_ref::<String>().map(String::as_str));
+    let place = information
+        .location()
+        .map_or_else(String::new, |place| format!(" ({}:{})", place.file(), place.line()));
+    format!(
+        "rimstone: internal error: {}{place}\n  This is a fault of rimstone {}, not of your model. Please report it with the model and the command.\n",
+        reason.unwrap_or("no reason given"),
+        env!("CARGO_PKG_VERSION"),
+    )
 }
 
 /// Writes a result to standard output. A reader that has seen enough and left is no fault.

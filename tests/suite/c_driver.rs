@@ -231,6 +231,11 @@ fn an_interrupted_run_goes_on_to_the_last_bit() {
         bar.ends(&["--out", "whole"], 0);
         bar.ends(&["--out", "parts", "--set", "stop=5"], 130);
         assert_eq!(bar.summary("parts")["ended"], "interrupted");
+        let spent = bar.summary("parts")["stepping_seconds"].as_f64().expect("a time");
+        assert!(
+            spent > 0.0 && spent < bar.summary("parts")["wall_seconds"].as_f64().expect("a time"),
+            "{spent}"
+        );
         assert!(bar.path("parts/gauges.csv").exists());
         let mut rounds = 1;
         while bar.run(&["--out", "parts", "--resume", "--quiet"]).status.code() == Some(130) {
@@ -375,7 +380,7 @@ fn all_faulty_arguments_are_told_at_once() {
         assert!(errors.contains(wanted), "{wanted}: {errors}");
     }
     assert!(!bar.path("bar.run").exists());
-    assert!(bar.ends(&["--until", "0.5"], 1).contains("before its start"));
+    assert!(bar.ends(&["--until", "0.5", "--frob"], 1).contains("starts at 1 s"));
     assert!(bar.ends(&["--until", "2", "--steps", "3"], 1).contains("exclude"));
     let help = bar.run(&["--help"]);
     let page = String::from_utf8_lossy(&help.stdout).into_owned();

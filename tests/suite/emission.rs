@@ -1,7 +1,7 @@
 //! Emitted C and Rust against a slow reading of the same kernel, bit for bit; and that the text builds without warnings.
 
-mod build;
-mod kernels;
+pub mod build;
+pub mod kernels;
 mod reference;
 mod refused;
 

@@ -1,6 +1,8 @@
 //! The one test binary.
 
 mod c_driver;
+mod cli;
+mod drivers;
 mod emission;
 mod exactness;
 mod layering;

@@ -231,6 +231,9 @@ static void settle_constants(struct options *options, struct text *faults)
             }
         }
     }
+    if (options->until_given && options->until < {{ prefix }}_start_time(solver)) {
+        add_fault(faults, "--until %.9g: the run starts at %.9g s", options->until, {{ prefix }}_start_time(solver));
+    }
     {{ prefix }}_destroy(solver);
 }
 

@@ -45,7 +45,10 @@ struct run {
     uint64_t *due_next;   /* for each output: the number of its next time */
     double earlier_wall, earlier_stepping;
 
-    double started, stopped, output_seconds, checkpoint_at;
+    double started, checkpoint_at;
+    double loop_started, output_seconds; /* the stepping loop, and what of it was output */
+    double stepping_seconds;             /* the loop without output, up to the last look */
+    int loop_ended;
     double shown_at;      /* when progress was last said, */
     uint64_t shown_step;  /* and at which step */
     int terminal;

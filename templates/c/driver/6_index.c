@@ -165,7 +165,7 @@ static int write_summary(const struct run *run, const char *ended)
     add_number_entry(&page, "start", run->begin);
     add_number_entry(&page, "end", run->time);
     add_number_entry(&page, "wall_seconds", wall);
-    add_number_entry(&page, "stepping_seconds", run->earlier_stepping + (run->stopped - run->started - run->output_seconds));
+    add_number_entry(&page, "stepping_seconds", run->earlier_stepping + run->stepping_seconds);
     add_format(&page, ",\n  \"threads\": %d,\n  \"memory_bytes\": %zu", run->threads, {{ prefix }}_memory(run->solver));
     add_string_entry(&page, "ended", ended);
     add_string_entry(&page, "message", run->message == NULL ? "" : run->message);

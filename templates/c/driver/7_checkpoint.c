@@ -43,7 +43,7 @@ static void put_position(struct file *file, const struct run *run)
     put_double(file, run->constant_step);
     put_word(file, (uint64_t)run->above_limit);
     put_double(file, run->earlier_wall + (seconds_now() - run->started));
-    put_double(file, run->earlier_stepping + (seconds_now() - run->started - run->output_seconds));
+    put_double(file, run->earlier_stepping + run->stepping_seconds);
     put_word(file, run->about->outputs);
     for (k = 0; k < run->about->outputs; k++) {
         put_word(file, run->due_next[k]);
@@ -89,6 +89,9 @@ static int write_checkpoint(struct run *run)
         free(present);
         free(former);
         return status;
+    }
+    if (!run->loop_ended) {
+        run->stepping_seconds = began - run->loop_started - run->output_seconds;
     }
     file = open_file(run->folder, "checkpoint.bin");
     put_checked(&file, CHECKPOINT_MAGIC, 8);

@@ -187,7 +187,10 @@ static int end_run(struct run *run, int status)
 {
     const char *ended = status == FINISHED ? "finished" : status == BLEW_UP ? "blew up" : "interrupted";
     int written = FINISHED;
-    run->stopped = seconds_now();
+    if (run->loop_started > 0.0) { /* else the first state was faulty, and no loop began */
+        run->stepping_seconds = seconds_now() - run->loop_started - run->output_seconds;
+    }
+    run->loop_ended = 1;
     show_progress(run, LAST_LINE);
     if (status == INTERRUPTED) {
         struct text message = {NULL, 0, 0};
@@ -340,6 +343,8 @@ static int perform(struct options *options, const char *folder)
         run.shown_step = run.step;
         if (status == FINISHED) {
             show_progress(&run, FIRST_LINE);
+            run.loop_started = seconds_now();
+            run.output_seconds = 0.0;
             status = step_on(&run);
         }
         if (status == FINISHED || status == BLEW_UP || status == INTERRUPTED) {
