@@ -1,5 +1,6 @@
 //! `rimstone explain CODE`: a diagnostic in full; without a code, the list of all.
 
+use std::io::{ErrorKind, Write};
 use std::process::ExitCode;
 
 use crate::diagnostic::{Code, nearest::nearest, safe::safe};
@@ -17,15 +18,9 @@ pub struct Arguments {
 /// Prints the explanation, or the list; 1 for a code that there is not.
 pub fn run(arguments: Arguments) -> ExitCode {
     match arguments.code {
-        None => {
-            print(&list());
-            ExitCode::SUCCESS
-        }
+        None => print(&list()),
         Some(wanted) => match Code::find(&wanted) {
-            Some(code) => {
-                print(&explanation(code));
-                ExitCode::SUCCESS
-            }
+            Some(code) => print(&explanation(code)),
             None => {
                 eprintln!("error: there is no code `{}`{}", safe(&wanted), suggestion(&wanted));
                 ExitCode::from(1)
@@ -34,10 +29,16 @@ pub fn run(arguments: Arguments) -> ExitCode {
     }
 }
 
-/// Writes to standard output; a reader that has gone away (a pager that was closed) is no fault.
-fn print(text: &str) {
-    use std::io::Write;
-    let _ = std::io::stdout().write_all(text.as_bytes());
+/// Writes to standard output; a reader that has seen enough and left is no fault.
+fn print(text: &str) -> ExitCode {
+    let mut output = std::io::stdout().lock();
+    match output.write_all(text.as_bytes()).and_then(|()| output.flush()) {
+        Err(fault) if fault.kind() != ErrorKind::BrokenPipe => {
+            eprintln!("error: standard output cannot be written: {fault}");
+            ExitCode::from(2)
+        }
+        _ => ExitCode::SUCCESS,
+    }
 }
 
 fn suggestion(wanted: &str) -> String {

@@ -1,6 +1,6 @@
 //! `rimstone format MODEL`: a model file in canonical layout.
 
-use std::io::Write;
+use std::io::{ErrorKind, Write};
 use std::path::{Path, PathBuf};
 use std::process::ExitCode;
 
@@ -77,6 +77,8 @@ fn format_file(path: &Path, arguments: &Arguments) -> Outcome {
     };
     match written {
         Ok(()) => Outcome::Done,
+        // A reader that has seen enough and left.
+        Err(error) if !arguments.write && error.kind() == ErrorKind::BrokenPipe => Outcome::Done,
         Err(error) => {
             eprintln!("error: cannot write {}: {error}", path.display());
             Outcome::Environment
@@ -106,7 +108,7 @@ mod tests {
         let folder = tempfile::tempdir().expect("a folder for the test");
         let path = folder.path().join("wall.rim");
         let arguments = |write: bool| Arguments { models: vec![path.clone()], check: !write, write };
-        std::fs::write(&path, "model wall\naxes\n x:0 to 1,11 nodes\n").expect("a file for the test");
+        std::fs::write(&path, "model wall\naxes\n x:0 to 1 ,  11 nodes\n").expect("a file for the test");
         assert_eq!(format_file(&path, &arguments(false)), Outcome::Fault);
         assert_eq!(format_file(&path, &arguments(true)), Outcome::Done);
         assert_eq!(

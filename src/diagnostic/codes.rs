@@ -149,6 +149,10 @@ code_table! {
         "`4 m ^2` could be the square of four metres or four square metres.",
         wrong "4 m ^2",
         right "(4 m)^2    or    4 m^2";
+    UNIT_PRODUCT = "E0137", "a unit with the multiplication sign of formulas",
+        "Products within a unit are written with ·. In `0.72 W/(m*K)` the unit ends at W, and what follows is a quotient by names that are not declared.",
+        wrong "k = 0.72 W/(m*K)",
+        right "k = 0.72 W/(m·K)";
     NUMBER_FORM = "E0201", "a number that is not written as one",
         "Numbers are written 0.5, .5, 3e8 or 1.5e-3. Digits follow the decimal point.",
         wrong "5.",

@@ -256,7 +256,9 @@ impl<'a> Cutter<'a> {
 /// Whether a line holds one word and nothing else but perhaps a colon.
 fn is_lone_word(code: &str) -> bool {
     let word = code.trim_end_matches(':').trim_end();
-    !word.is_empty() && word.chars().all(|letter| letter.is_alphanumeric() || letter == '_' || letter == '-')
+    !word.is_empty()
+        && word != "model"
+        && word.chars().all(|letter| letter.is_alphanumeric() || letter == '_' || letter == '-')
 }
 
 /// Sections by the words that others would use.

@@ -9,8 +9,13 @@ use unicode_normalization::char::canonical_combining_class;
 use unicode_normalization::{IsNormalized, UnicodeNormalization, is_nfc_quick};
 
 use super::control;
+use super::cut::MOST_FAULTS;
+use super::names::raised_digit;
 use crate::diagnostic::{Diagnostic, Diagnostics, codes, safe::safe};
 use crate::source::Span;
+
+/// Longest text in the braces of a subscript, in characters.
+const LONGEST_SUBSCRIPT: usize = 64;
 
 /// A text in one spelling, with its way back.
 #[derive(Debug)]
@@ -165,7 +170,11 @@ impl Folder<'_> {
             }
             '\\' => return self.control_word(),
             '_' if self.braced_subscript() => return,
+            '^' if self.order_after_sign() => return,
             _ => {}
+        }
+        if !self.normal && self.compose(letter) {
+            return;
         }
         if letter.is_ascii() {
             match letter {
@@ -175,7 +184,6 @@ impl Folder<'_> {
             }
         } else if let Some(plain) = look_alike(letter) {
             self.replace(letter.len_utf8(), plain);
-        } else if !self.normal && self.compose(letter) {
         } else if is_allowed(letter) {
             self.copy(letter);
         } else {
@@ -185,6 +193,9 @@ impl Folder<'_> {
 
     /// Replaces a letter and its combining marks by their composed form; tells whether that changed anything.
     fn compose(&mut self, letter: char) -> bool {
+        if canonical_combining_class(letter) != 0 {
+            return false; // Looked at with the letter before it; again for each mark would take quadratic time.
+        }
         let rest = &self.text[self.at + letter.len_utf8()..];
         let marks: usize =
             rest.chars().take_while(|&mark| canonical_combining_class(mark) != 0).map(char::len_utf8).sum();
@@ -200,17 +211,26 @@ impl Folder<'_> {
 
     /// `_{…}` after a name: the braces of TeX.
     fn braced_subscript(&mut self) -> bool {
-        let rest = &self.text[self.at..];
-        let Some(inner) =
-            rest.strip_prefix("_{").and_then(|inner| inner.split_once('}')).map(|(inner, _)| inner)
-        else {
-            return false;
-        };
-        if inner.is_empty() || !inner.chars().all(|letter| is_xid_continue(letter) && is_allowed(letter)) {
+        let Some(rest) = self.text[self.at..].strip_prefix("_{") else { return false };
+        let letters = rest.chars().take(LONGEST_SUBSCRIPT);
+        let inner =
+            letters.take_while(|&letter| is_xid_continue(letter) && is_allowed(letter)).collect::<String>();
+        if inner.is_empty() || !rest[inner.len()..].starts_with('}') {
             return false;
         }
-        let folded = format!("_{inner}");
-        self.replace(inner.len() + 3, &folded);
+        self.replace(inner.len() + 3, &format!("_{inner}"));
+        true
+    }
+
+    /// `∂^2` and `∇^2`: the order stands where TeX puts it, and a name may follow without a space.
+    fn order_after_sign(&mut self) -> bool {
+        let rest = &self.text[self.at + 1..];
+        let digits = rest.bytes().take_while(u8::is_ascii_digit).count();
+        if digits == 0 || digits > 3 || !self.folded.text.ends_with(['∂', '∇']) {
+            return false;
+        }
+        let order = rest[..digits].chars().map(raised_digit).collect::<String>();
+        self.replace(digits + 1, &order);
         true
     }
 
@@ -228,14 +248,14 @@ impl Folder<'_> {
                 if joins {
                     self.replace(0, " ");
                 }
-                self.replace(length + 1, symbol);
-                // In `\sin x` and `\rho c` the space ends the word; two symbols side by side stay apart.
+                let blanks = self.swallowed_blanks(symbol, length + 1);
+                self.replace(length + 1 + blanks, symbol);
             }
             None => {
                 let span = Span::new(self.at as u32, (self.at + 1 + length) as u32);
                 let message = format!("`\\{}` is no control word of the language", safe(word));
                 self.folded.refused.push(self.folded.text.len() as u32);
-                self.diagnostics.push(
+                self.report(
                     Diagnostic::error(codes::UNKNOWN_CONTROL_WORD, span, message)
                         .with_text("not in the table")
                         .with_remedy(control::remedy(word)),
@@ -243,6 +263,19 @@ impl Folder<'_> {
                 self.replace(length + 1, "?");
             }
         }
+    }
+
+    /// Blanks after a control word that end it only, as in TeX: in units, which have no space in them, `m\cdot K`
+    /// and `5 \mu m` would fall apart.
+    fn swallowed_blanks(&self, symbol: &str, length: usize) -> usize {
+        let before = self.folded.text.as_bytes();
+        let joins = match symbol {
+            "·" => before.last().is_some_and(|last| *last != b' '),
+            "μ" => matches!(before, [.., digit, b' '] if digit.is_ascii_digit()),
+            _ => false,
+        };
+        let rest = &self.text[self.at + length..];
+        if joins { rest.len() - rest.trim_start_matches(' ').len() } else { 0 }
     }
 
     fn refuse_and_copy(&mut self, letter: char) {
@@ -265,14 +298,14 @@ impl Folder<'_> {
         } else {
             codes::STRAY_CHARACTER
         };
-        self.diagnostics.push(Diagnostic::error(code, span, message).with_remedy(remedy));
+        self.report(Diagnostic::error(code, span, message).with_remedy(remedy));
     }
 
     fn report_open_text(&mut self) {
         let end = self.text[self.at..].find('\n').map_or(self.text.len(), |_| self.at);
         let end = if self.text[..end].ends_with('\r') { end - 1 } else { end };
         self.folded.refused.push((self.folded.text.len() as u32).saturating_sub(1));
-        self.diagnostics.push(
+        self.report(
             Diagnostic::error(
                 codes::OPEN_TEXT,
                 Span::new(self.text_start as u32, end as u32),
@@ -281,6 +314,13 @@ impl Folder<'_> {
             .with_text("begins here")
             .with_remedy("close it with `\"`; a text cannot go on over a line end and knows no escapes"),
         );
+    }
+
+    /// Reports a fault; after so many they are only counted as refused places.
+    fn report(&mut self, fault: Diagnostic) {
+        if self.diagnostics.len() < MOST_FAULTS {
+            self.diagnostics.push(fault);
+        }
     }
 
     fn copy(&mut self, letter: char) {

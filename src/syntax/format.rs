@@ -208,6 +208,10 @@ struct Spacing {
 
 impl Spacing {
     fn line(&mut self, code: &str) -> String {
+        if code.starts_with("method ") && !code.contains('=') {
+            // Names of methods may have a hyphen.
+            return code.split_whitespace().collect::<Vec<_>>().join(" ");
+        }
         let mut out = String::with_capacity(code.len() + 16);
         let mut rest = code;
         while let Some(token) = next_token(rest.trim_start()) {

@@ -77,16 +77,20 @@ fn subscript_digit(letter: char) -> Option<char> {
 
 /// What `u_xx`, `u_t` or `du` over `dx` likely meant: a derivative of a declared field by axes or time.
 ///
-/// `axes` and `fields` are the declared names; the result is `∂²u/∂x²`, or nothing if the name is not made so.
-pub fn subscript_derivative(name: &str, fields: &[&str], axes: &[&str]) -> Option<String> {
+/// The result is `∂²u/∂x²`, or nothing if the name is not made so.
+pub fn subscript_derivative(
+    name: &str,
+    is_field: impl Fn(&str) -> bool,
+    is_axis: impl Fn(&str) -> bool,
+) -> Option<String> {
     let (field, index) = name.rsplit_once('_')?;
-    if !fields.contains(&field) || index.is_empty() {
+    if index.is_empty() || !is_field(field) {
         return None;
     }
     let mut variables: Vec<(String, usize)> = Vec::new();
     for letter in index.chars() {
         let variable = letter.to_string();
-        if variable != "t" && !axes.contains(&variable.as_str()) {
+        if variable != "t" && !is_axis(&variable) {
             return None;
         }
         match variables.last_mut() {
@@ -108,7 +112,8 @@ pub(super) fn raised(number: usize) -> String {
     number.to_string().chars().map(raised_digit).collect()
 }
 
-fn raised_digit(digit: char) -> char {
+/// A digit as a superscript.
+pub(super) fn raised_digit(digit: char) -> char {
     match digit {
         '1' => '¹',
         '2' => '²',
@@ -167,7 +172,13 @@ mod tests {
 
     #[test]
     fn index_notation_is_recognised() {
-        let read = |name| subscript_derivative(name, &["u", "T_a"], &["x", "y"]);
+        let read = |name| {
+            subscript_derivative(
+                name,
+                |field| ["u", "T_a"].contains(&field),
+                |axis| ["x", "y"].contains(&axis),
+            )
+        };
         assert_eq!(read("u_xx").as_deref(), Some("∂²u/∂x²"));
         assert_eq!(read("u_xy").as_deref(), Some("∂²u/∂x∂y"));
         assert_eq!(read("T_a_t").as_deref(), Some("∂T_a/∂t"));

@@ -37,7 +37,7 @@ pub fn print_comparison(comparison: &Comparison) -> String {
     out
 }
 
-/// A unit in canonical spelling: factors with positive exponents, then those below the line.
+/// A unit as it was spelled; `1` if it has no factors.
 pub fn print_unit(unit: &Unit) -> String {
     if unit.factors.is_empty() { "1".into() } else { unit.spelling.clone() }
 }

@@ -27,7 +27,7 @@ impl Reader<'_> {
         for part in pair.into_inner() {
             match part.as_rule() {
                 Rule::order => above = Some((self.order(&part), self.span(&part))),
-                Rule::derivative_fraction => read = self.fraction(part, above),
+                Rule::derivative_fraction | Rule::derivative_higher => read = self.fraction(part, above),
                 Rule::derivative_operator => read = self.operator_form(part),
                 _ => {}
             }
@@ -51,7 +51,7 @@ impl Reader<'_> {
                 Rule::trap_power => {
                     self.report_power(part.as_str().trim(), span, of.as_ref(), whole, above.is_some())
                 }
-                Rule::variables => below = Some(self.variables(part)),
+                Rule::variables | Rule::variables_higher => below = Some(self.variables(part)),
                 Rule::trap_bracket => {
                     let bracket = self.excerpt(span);
                     let fault = Diagnostic::error(

@@ -7,6 +7,7 @@ use super::{Reader, Rule, nothing};
 use crate::diagnostic::{Diagnostic, codes, safe::excerpt};
 use crate::exact::Rational;
 use crate::source::Span;
+use crate::syntax::cut::Home;
 use crate::syntax::names::{lowered, subscript_derivative};
 use crate::syntax::tree::{
     Branch, Comparison, Expression, ExpressionKind, Factor, Function, Operation, Relation, Section, Sign,
@@ -106,6 +107,9 @@ impl Reader<'_> {
         written: &str,
         value: Expression,
     ) {
+        if let Some(last) = factors.last() {
+            self.refuse_unit_product(operation, last.value.span, &last.value.kind, &value);
+        }
         if operation == "/" {
             self.refuse_quotient(before, written, factors, &value);
             factors.push(Factor { operation: Operation::Over, value });
@@ -123,6 +127,45 @@ impl Reader<'_> {
             return;
         }
         factors.push(Factor { operation: Operation::Times, value });
+    }
+
+    /// `3 N*m`, `0.72 W/(m*K)`: units written with the sign of formulas. Told from products by the missing spaces
+    /// and by names that are not declared.
+    fn refuse_unit_product(
+        &mut self,
+        operation: &str,
+        place: Span,
+        last: &ExpressionKind,
+        value: &Expression,
+    ) {
+        // Parameters of operators and the `s` of a graded axis are declared nowhere.
+        let free_names = matches!(self.home, Home::Section(Section::Operators | Section::Axes));
+        let tight = self.source.slice(Span::new(place.end, value.span.start)) == operation;
+        let ExpressionKind::Quantity { unit, .. } = last else { return };
+        if free_names || !tight || !self.is_unit_like(value) {
+            return;
+        }
+        let written = self.excerpt(place.to(value.span));
+        let meant = written.replace('*', "·");
+        let span = unit.span.to(value.span);
+        let fault = Diagnostic::error(
+            codes::UNIT_PRODUCT,
+            span,
+            format!("`{written}` is read as a product with names"),
+        )
+        .with_text("none of these names is declared")
+        .with_remedy(format!("products within a unit are written with `·`: `{meant}`"));
+        self.diagnostics.push(fault);
+    }
+
+    /// Whether a factor is made of undeclared names only.
+    fn is_unit_like(&self, value: &Expression) -> bool {
+        match &value.kind {
+            ExpressionKind::Name(name) => name != "t" && self.declared.section(name).is_none(),
+            ExpressionKind::Power { base, .. } => self.is_unit_like(base),
+            ExpressionKind::Product(factors) => factors.iter().all(|factor| self.is_unit_like(&factor.value)),
+            _ => false,
+        }
     }
 
     fn refuse_quotient(&mut self, before: &str, written: &str, factors: &[Factor], value: &Expression) {
@@ -185,9 +228,14 @@ impl Reader<'_> {
                     "a unit has no space in it: write `{left}·{right}`; a product of names is `{left} * {right}`"
                 )
             }
+            (ExpressionKind::Quantity { .. }, ExpressionKind::Number(_))
+                if before.span.end == after.span.start =>
+            {
+                format!("exponents in units are written `{left}^{right}` or with superscripts")
+            }
             (_, ExpressionKind::Name(name)) if !self.is_declared(after) => {
                 format!(
-                    "a unit follows a number literal only: write `{left} * 1 {name}`; a product is `{left} * {right}`"
+                    "write `{left} * {right}`; a unit follows a number literal only, as in `{left} * 1 {name}`"
                 )
             }
             _ => format!("write `{left} * {right}`"),
@@ -427,8 +475,10 @@ impl Reader<'_> {
                 remedy,
             );
         } else if self.declared.section(&name.text).is_none() {
-            let (fields, axes) = (self.declared.of(Section::Fields), self.declared.of(Section::Axes));
-            if let Some(derivative) = subscript_derivative(&name.text, &fields, &axes) {
+            let declared = self.declared;
+            let is = |section: Section| move |name: &str| declared.section(name) == Some(section);
+            if let Some(derivative) = subscript_derivative(&name.text, is(Section::Fields), is(Section::Axes))
+            {
                 let message = format!(
                     "`{}` is a name that is not declared; a derivative is written as a fraction",
                     name.text

@@ -110,7 +110,19 @@ fn hint(rule: Rule, text: &str, place: usize) -> Option<String> {
             return Some(format!("derive a formula as `∂({above} …)/∂x` or `∂/∂x({above} …)`"));
         }
     }
-    if rule == Rule::axis && rest.starts_with(|letter: char| letter.is_ascii_digit()) {
+    if rule == Rule::conditions {
+        if before.ends_with("start") && !before.ends_with("= start") {
+            return Some("the time is named too: `at t = start: …`".into());
+        }
+        if ["low", "high"].iter().any(|end| before.ends_with(end) && !before.contains('=')) {
+            return Some("the axis is named too: `at x = low: …`, `at x = high: …`".into());
+        }
+        if !text.starts_with("at") && rest.starts_with(':') {
+            return Some("a place begins with `at`: `at x = low: …`".into());
+        }
+    }
+    let counted = rest.starts_with("nodes") || rest.starts_with("cells");
+    if rule == Rule::axis && (counted || rest.starts_with(|letter: char| letter.is_ascii_digit())) {
         return Some("write a comma before the number of nodes: `0 m to 1 m, 101 nodes`".into());
     }
     if rest.starts_with("°") {
@@ -127,6 +139,10 @@ fn expectation(positives: &[Rule]) -> String {
         if !word.is_empty() && !words.contains(&word) {
             words.push(word);
         }
+    }
+    // Where an operator can stand, a formula is only let in to say that the operator is missing.
+    if words.iter().any(|word| word == "an operator") {
+        words.retain(|word| word != "a formula" && word != "`(`");
     }
     if words.len() > MOST_LISTED {
         words.truncate(MOST_LISTED);
@@ -166,7 +182,7 @@ fn rule_words(rule: Rule) -> String {
         | Rule::vector_operation => "a formula",
         Rule::equality => "an equality",
         Rule::comparison => "a comparison",
-        Rule::variables => "`∂x`",
+        Rule::variables | Rule::variables_higher => "`∂x`",
         Rule::comma => "`,`",
         Rule::colon => "`:`",
         Rule::semicolon => "`;`",

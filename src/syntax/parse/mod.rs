@@ -9,6 +9,7 @@ mod fault;
 mod statement;
 mod unit;
 
+use std::collections::HashMap;
 use std::num::NonZeroUsize;
 use std::sync::Once;
 
@@ -33,29 +34,28 @@ struct Grammar;
 /// [`super::scan`] takes. The parser keeps it for the whole process, so it is set once and never changed.
 const CALL_LIMIT: usize = 70_000_000;
 
-/// The names that a file declares, gathered before any formula is read.
+/// The names that a file declares, gathered before any formula is read, each with the first section that does.
 #[derive(Debug, Default)]
 pub(super) struct Declared {
-    names: Vec<(Section, String)>,
+    names: HashMap<String, Section>,
 }
 
 impl Declared {
     fn gather(cut: &Cut, folded: &Folded) -> Declared {
-        let declaring = |statement: &Statement| match statement.home {
-            Home::Section(section) => leading_name(section, &folded.text[statement.start..statement.end])
-                .map(|name| (section, canonical(name))),
-            _ => None,
-        };
-        Declared { names: cut.statements.iter().filter_map(declaring).collect() }
+        let mut names = HashMap::new();
+        for statement in &cut.statements {
+            if let Home::Section(section) = statement.home
+                && let Some(name) = leading_name(section, &folded.text[statement.start..statement.end])
+            {
+                names.entry(canonical(name)).or_insert(section);
+            }
+        }
+        Declared { names }
     }
 
     /// The section that declares a name.
     fn section(&self, name: &str) -> Option<Section> {
-        self.names.iter().find(|(_, known)| known == name).map(|(section, _)| *section)
-    }
-
-    fn of(&self, section: Section) -> Vec<&str> {
-        self.names.iter().filter(|(of, _)| *of == section).map(|(_, name)| name.as_str()).collect()
+        self.names.get(name).copied()
     }
 }
 
@@ -83,7 +83,6 @@ pub(super) fn read(
     let mut file = ModelFile { sections: cut.sections, ..ModelFile::default() };
     for (place, statement) in cut.statements.iter().enumerate() {
         if diagnostics.len() >= MOST_FAULTS {
-            report_too_many(folded, statement, diagnostics);
             break;
         }
         let mut reader = Reader {
@@ -91,16 +90,29 @@ pub(super) fn read(
             folded,
             declared: &declared,
             offset: statement.start,
+            home: statement.home,
             diagnostics,
             file: &mut file,
         };
         reader.statement(place, statement);
     }
-    if file.header.is_none() && !diagnostics.has(codes::NO_HEADER) && diagnostics.len() < MOST_FAULTS {
+    let tried = cut.statements.first().is_some_and(|first| is_header(&folded.text[first.start..first.end]));
+    if !tried && !diagnostics.has(codes::NO_HEADER) && diagnostics.len() < MOST_FAULTS {
         let end = folded.text.find('\n').unwrap_or(folded.text.len());
         diagnostics.push(no_header(folded.original(0, end)));
     }
+    if diagnostics.len() >= MOST_FAULTS {
+        report_too_many(folded, diagnostics);
+    }
     file
+}
+
+/// Whether a statement is (or tries to be) the first line of a file.
+fn is_header(text: &str) -> bool {
+    let rest = text.strip_prefix("model");
+    rest.is_some_and(|rest| {
+        (rest.is_empty() || rest.starts_with([' ', '"'])) && !rest.trim_start().starts_with('=')
+    })
 }
 
 fn no_header(span: Span) -> Diagnostic {
@@ -109,13 +121,13 @@ fn no_header(span: Span) -> Diagnostic {
         .with_remedy("begin the file with a line such as `model vault_wall \"Temperature of a wall\"`")
 }
 
-fn report_too_many(folded: &Folded, statement: &Statement, diagnostics: &mut Diagnostics) {
-    let span = folded.original(statement.start, statement.end);
+fn report_too_many(folded: &Folded, diagnostics: &mut Diagnostics) {
+    let end = folded.text.len();
     diagnostics.push(
         Diagnostic::error(
             codes::TOO_MANY_FAULTS,
-            span,
-            format!("more than {MOST_FAULTS} faults; the rest is not read"),
+            folded.original(end, end),
+            format!("{MOST_FAULTS} faults or more; the rest is not read"),
         )
         .with_remedy("is this a model file?"),
     );
@@ -128,6 +140,7 @@ struct Reader<'a> {
     declared: &'a Declared,
     /// Where the statement begins in the folded text.
     offset: usize,
+    home: Home,
     diagnostics: &'a mut Diagnostics,
     file: &'a mut ModelFile,
 }
@@ -136,10 +149,7 @@ impl Reader<'_> {
     fn statement(&mut self, place: usize, statement: &Statement) {
         let raw = &self.folded.text[statement.start..statement.end];
         let text = blanked(raw);
-        let is_header =
-            text.strip_prefix("model").is_some_and(|rest| rest.starts_with([' ', '"']) || rest.is_empty())
-                && !text[5..].trim_start().starts_with('=');
-        if is_header {
+        if is_header(&text) {
             if place == 0 {
                 return self.read(Rule::header, &text, statement);
             }

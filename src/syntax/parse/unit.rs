@@ -111,9 +111,8 @@ impl Reader<'_> {
         let (above, below) = spelling.split_once('/').unwrap_or((spelling, ""));
         let joined = below.replace('/', "·");
         let first = below.split(['·', '/']).next().unwrap_or(below);
-        let rest = below.get(first.len() + 1..).unwrap_or("");
         let mut readings = format!("write `{above}/({joined})`");
-        if below[first.len()..].starts_with('·') {
+        if let Some(rest) = below[first.len()..].strip_prefix('·') {
             readings = format!("{readings} or `{above}·{rest}/{first}`");
         }
         self.report(
