@@ -1,1 +1,3 @@
 //! From syntax to model.
+
+pub mod conditions;
