@@ -3,4 +3,4 @@
 mod compile;
 pub mod weights;
 
-pub use compile::{Checked, Compiled, Overrides, check, compile, hash, read};
+pub use compile::{Checked, Compiled, Overrides, build, check, compile, hash, read};

@@ -76,7 +76,9 @@ fn atom(expression: &Expression, model: &Model) -> String {
         Expression::Cases(cases, otherwise) => {
             let mut parts: Vec<String> = cases
                 .iter()
-                .map(|(condition, value)| format!("{}: {}", comparison(condition, model), formula(value, model)))
+                .map(|(condition, value)| {
+                    format!("{}: {}", comparison(condition, model), formula(value, model))
+                })
                 .collect();
             parts.push(format!("otherwise: {}", formula(otherwise, model)));
             format!("cases({})", parts.join(", "))
@@ -153,7 +155,11 @@ fn power(base: &Expression, exponent: &Rational, model: &Model) -> (String, Leve
     }
     let base = print(base, model, Level::Atom);
     let text = exponent.to_string();
-    if text.contains('/') { (format!("{base}^({text})"), Level::Atom) } else { (format!("{base}{}", superscript(&text)), Level::Atom) }
+    if text.contains('/') {
+        (format!("{base}^({text})"), Level::Atom)
+    } else {
+        (format!("{base}{}", superscript(&text)), Level::Atom)
+    }
 }
 
 /// Whole numbers as they are, others as decimals of at most six digits.

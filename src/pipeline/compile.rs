@@ -69,6 +69,15 @@ pub fn compile(source: &SourceFile, overrides: &Overrides) -> Result<(Compiled, 
             axis.nodes = *nodes;
         }
     }
+    let compiled = build(model, &mut diagnostics);
+    match compiled {
+        Some(compiled) if !diagnostics.has_errors() => Ok((compiled, diagnostics)),
+        _ => Err(diagnostics),
+    }
+}
+
+/// From a checked model to its kernel; what cannot be had is added to the diagnostics.
+pub fn build(model: Model, diagnostics: &mut Diagnostics) -> Option<Compiled> {
     let scheme = match discretize::assemble(&model) {
         Ok(scheme) => scheme,
         Err(faults) => {
@@ -77,16 +86,16 @@ pub fn compile(source: &SourceFile, overrides: &Overrides) -> Result<(Compiled, 
                     Diagnostic::error(codes_scheme::ORDER_NOT_REACHED, model.accuracy.span, fault.what);
                 diagnostics.push(message.with_remedy(fault.remedy));
             }
-            return Err(diagnostics);
+            return None;
         }
     };
-    check_sizes(&model, &scheme, &mut diagnostics);
+    check_sizes(&model, &scheme, diagnostics);
     if diagnostics.has_errors() {
-        return Err(diagnostics);
+        return None;
     }
     let law = limit::law(&model, &scheme, &stability::extents(model.time.method));
     let kernel = valid(validate(lower(&model, &scheme, &law, notes(&model, &scheme, &law))));
-    Ok((Compiled { model, scheme, law, kernel }, diagnostics))
+    Some(Compiled { model, scheme, law, kernel })
 }
 
 /// Closures of the two ends of an axis may not overlap.

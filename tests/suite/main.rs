@@ -2,6 +2,7 @@
 
 mod c_driver;
 mod cli;
+mod convergence;
 mod drivers;
 mod emission;
 mod exactness;

@@ -33,7 +33,8 @@ pub fn classify(model: &Model, raw: Vec<RawCondition>, diagnostics: &mut Diagnos
         {
             match reading.solved_for(model, &one, field, "the value") {
                 Ok(value) => {
-                    let slope = |of: &crate::model::Expression| partial(of, Variable::Time, &model.coefficients);
+                    let slope =
+                        |of: &crate::model::Expression| partial(of, Variable::Time, &model.coefficients);
                     let rate = slope(&value);
                     let second_rate = rate.as_ref().and_then(slope);
                     Treatment::Value { field, value, rate, second_rate }
@@ -47,7 +48,9 @@ pub fn classify(model: &Model, raw: Vec<RawCondition>, diagnostics: &mut Diagnos
             let fields: Vec<_> = reading.fields.iter().copied().collect();
             let coefficients =
                 fields.iter().filter_map(|field| Some((*field, reading.factor(model, *field)?))).collect();
-            Treatment::Upwind { relations: vec![FaceRelation { coefficients, data: reading.remainder(&fields) }] }
+            Treatment::Upwind {
+                relations: vec![FaceRelation { coefficients, data: reading.remainder(&fields) }],
+            }
         };
         found.push(Condition { face: one.face, patch: one.patch, treatment, text: one.text, span: one.span });
     }

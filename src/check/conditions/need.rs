@@ -94,7 +94,10 @@ pub(super) fn of_face(model: &Model, face: Face, diagnostics: &mut Diagnostics) 
 }
 
 fn nothing_acts(model: &Model, face: Face, names: &str) -> String {
-    format!("no derivative along {} in the equation of {names} needs a condition", model.axes[face.axis.0].name)
+    format!(
+        "no derivative along {} in the equation of {names} needs a condition",
+        model.axes[face.axis.0].name
+    )
 }
 
 fn transport(model: &Model, face: Face, block: Block, diagnostics: &mut Diagnostics) -> Need {
@@ -139,13 +142,17 @@ fn reason(model: &Model, face: Face, block: &Block, count: usize) -> String {
         (1, Side::High) => (speeds.into_iter().take(1).collect(), "enters"),
         _ => (speeds, "enter"),
     };
-    let noun = if entering.len() == 1 { "the characteristic with speed" } else { "the characteristics with speeds" };
+    let noun =
+        if entering.len() == 1 { "the characteristic with speed" } else { "the characteristics with speeds" };
     let verb = if words == "leave" && entering.len() == 1 { "leaves" } else { words };
     format!("{noun} {} along {axis} {verb} at {place}", entering.join(" and "))
 }
 
 fn equation_span(model: &Model, fields: &[FieldId]) -> crate::source::Span {
-    fields.first().and_then(|field| model.equations.get(field.0)).map_or_else(Default::default, |found| found.span)
+    fields
+        .first()
+        .and_then(|field| model.equations.get(field.0))
+        .map_or_else(Default::default, |found| found.span)
 }
 
 fn unknown(model: &Model, face: Face, block: &Block, speed: &Expression) -> Diagnostic {

@@ -39,7 +39,9 @@ impl Reading {
                 "a condition may hold the outward normal derivative of a field, and no other derivative",
             )
             .with_text("expected ∂u/∂n of a field u")
-            .with_remedy("write the condition with ∂u/∂n, the derivative of one field along the outward normal"));
+            .with_remedy(
+                "write the condition with ∂u/∂n, the derivative of one field along the outward normal",
+            ));
         }
         let count = model.fields.len();
         let (normals, fields): (BTreeSet<FieldId>, BTreeSet<FieldId>) =
@@ -79,9 +81,15 @@ impl Reading {
         name: &str,
     ) -> Result<Expression, Diagnostic> {
         let refuse = |why: String| {
-            Diagnostic::error(codes::NOT_SOLVABLE, raw.span, format!("the condition cannot be solved for {name}: {why}"))
-                .with_text(format!("expected {name} times a factor that is known and nowhere zero"))
-                .with_remedy(format!("write it as {name} = …, or bound what stands in the factor with `between A and B`"))
+            Diagnostic::error(
+                codes::NOT_SOLVABLE,
+                raw.span,
+                format!("the condition cannot be solved for {name}: {why}"),
+            )
+            .with_text(format!("expected {name} times a factor that is known and nowhere zero"))
+            .with_remedy(format!(
+                "write it as {name} = …, or bound what stands in the factor with `between A and B`"
+            ))
         };
         let Some(factor) = self.factor(model, variable) else {
             return Err(refuse(format!("it is not linear in {name}, or the factor depends on an unknown")));
