@@ -156,18 +156,21 @@ fn the_packages_build_as_they_are() {
     assert!(place("c_library/libdrum.a").is_file() && place("c_library/libdrum.so").is_file());
 }
 
-/// Negative control: the comparison above would see one weight that is off by its last bit, and numbers are numbers.
+/// Negative control: the comparison above would see one weight that is off by a part in a thousand million, and the
+/// numbers that it compares are numbers.
 #[test]
 fn the_judge_sees_a_changed_weight() {
     for (mut kernel, sizes) in kernels::all() {
         let good = expected(&kernel, &sizes[1]);
-        let not_numbers = good.split_whitespace().filter(|word| word.starts_with("7ff") || word.starts_with("fff"));
+        let not_numbers =
+            good.split_whitespace().filter(|word| word.starts_with("7ff") || word.starts_with("fff"));
         assert!(not_numbers.count() * 10 < good.split_whitespace().count(), "{} is not finite", kernel.name);
         if let LineOperator::Constant(operator) = &mut kernel.operators[0].operator {
             let weight = &mut operator.interior[0];
-            *weight = &*weight * &(Rational::from(1) + Rational::from(2).power(51).recip().expect("not zero"));
+            *weight =
+                &*weight * &(Rational::from(1) + Rational::from(2).power(30).recip().expect("not zero"));
         }
-        assert_ne!(good, expected(&kernel, &sizes[1]), "{}", kernel.name);
+        assert!(good != expected(&kernel, &sizes[1]), "{} hides the change", kernel.name);
     }
 }
 
@@ -183,7 +186,11 @@ fn both_programs_write_the_same_files() {
     ] {
         unpack(&package(&kernel, language, Form::Program), &place(name));
         let mut command = Command::new(build[0]);
-        command.args(&build[1..]).current_dir(place(name)).env_remove("MAKEFLAGS").env_remove("CARGO_TARGET_DIR");
+        command
+            .args(&build[1..])
+            .current_dir(place(name))
+            .env_remove("MAKEFLAGS")
+            .env_remove("CARGO_TARGET_DIR");
         assert!(command.status().expect("make and cargo are there").success(), "{name} does not build");
     }
     for (program, out) in [("c/drum", "from_c"), ("rust/target/release/drum", "from_rust")] {
@@ -193,7 +200,9 @@ fn both_programs_write_the_same_files() {
     }
     let mut compared = 0;
     for path in ["gauges.csv", "index.xmf", "model.rim", "u/000000.npy", "u/000001.npy", "speed/000003.npy"] {
-        let read = |out: &str| std::fs::read(place(out).join(path)).unwrap_or_else(|fault| panic!("{path}: {fault}"));
+        let read = |out: &str| {
+            std::fs::read(place(out).join(path)).unwrap_or_else(|fault| panic!("{path}: {fault}"))
+        };
         let (left, right) = (read("from_c"), read("from_rust"));
         assert!(left == right && !left.is_empty(), "{path} differs");
         compared += 1;
