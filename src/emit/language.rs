@@ -73,7 +73,10 @@ impl Language {
     }
 
     pub fn pi(self) -> String {
-        literal::double(std::f64::consts::PI, self)
+        match self {
+            Language::C => literal::double(std::f64::consts::PI, self),
+            Language::Rust => "std::f64::consts::PI".to_owned(),
+        }
     }
 
     /// Element `index` of what `pointer` points at.
@@ -184,6 +187,9 @@ impl Language {
                 let many = results.len() > 1;
                 if many {
                     list.extend(results.iter().map(|result| format!("double *{result}")));
+                }
+                if list.is_empty() {
+                    list.push("void".to_owned());
                 }
                 let kind = if results.len() == 1 { "double" } else { "void" };
                 let start = match linkage {

@@ -6,7 +6,8 @@
 //! widths and compilers do not change a bit of the results.
 
 // Names follow the model; loops over rows work on pointers, see `Arrays`.
-#![allow(non_snake_case, unsafe_op_in_unsafe_fn, clippy::too_many_arguments, clippy::excessive_precision)]
+#![allow(non_snake_case, unsafe_op_in_unsafe_fn)]
+#![allow(clippy::too_many_arguments, clippy::excessive_precision, clippy::approx_constant, clippy::missing_safety_doc)]
 
 use crate::driver::{ {{- imports -}} };
 use std::alloc::{Layout, alloc_zeroed, dealloc};

@@ -8,7 +8,8 @@ mod refused;
 use build::{MODEL, compile_c, compile_rust, package, run, unpack};
 use reference::Reference;
 use rimstone::emit::{Form, Language, Program};
-use rimstone::kernel::Kernel;
+use rimstone::exact::Rational;
+use rimstone::kernel::{Kernel, LineOperator};
 use std::process::Command;
 
 fn show(lines: &mut String, what: &str, values: &[f64]) {
@@ -153,6 +154,60 @@ fn the_packages_build_as_they_are() {
     }
     assert!(place("c/drum").is_file());
     assert!(place("c_library/libdrum.a").is_file() && place("c_library/libdrum.so").is_file());
+}
+
+/// Negative control: the comparison above would see one weight that is off by a part in a thousand million, and the
+/// numbers that it compares are numbers.
+#[test]
+fn the_judge_sees_a_changed_weight() {
+    for (mut kernel, sizes) in kernels::all() {
+        let good = expected(&kernel, &sizes[1]);
+        let not_numbers =
+            good.split_whitespace().filter(|word| word.starts_with("7ff") || word.starts_with("fff"));
+        assert!(not_numbers.count() * 10 < good.split_whitespace().count(), "{} is not finite", kernel.name);
+        if let LineOperator::Constant(operator) = &mut kernel.operators[0].operator {
+            let weight = &mut operator.interior[0];
+            *weight =
+                &*weight * &(Rational::from(1) + Rational::from(2).power(30).recip().expect("not zero"));
+        }
+        assert!(good != expected(&kernel, &sizes[1]), "{} hides the change", kernel.name);
+    }
+}
+
+/// Both whole programs, with their drivers: all data files are equal byte for byte.
+#[test]
+fn both_programs_write_the_same_files() {
+    let folder = tempfile::tempdir().expect("a temporary folder");
+    let place = |name: &str| folder.path().join(name);
+    let kernel = kernels::drum();
+    for (language, name, build) in [
+        (Language::C, "c", ["make", "-s", "portable"].as_slice()),
+        (Language::Rust, "rust", ["cargo", "build", "--release", "--offline", "-q"].as_slice()),
+    ] {
+        unpack(&package(&kernel, language, Form::Program), &place(name));
+        let mut command = Command::new(build[0]);
+        command
+            .args(&build[1..])
+            .current_dir(place(name))
+            .env_remove("MAKEFLAGS")
+            .env_remove("CARGO_TARGET_DIR");
+        assert!(command.status().expect("make and cargo are there").success(), "{name} does not build");
+    }
+    for (program, out) in [("c/drum", "from_c"), ("rust/target/release/drum", "from_rust")] {
+        let mut command = Command::new(place(program));
+        command.arg("--out").arg(place(out)).args(["--quiet", "--nodes", "x=17"]);
+        assert!(command.output().expect("the program starts").status.success(), "{program} fails");
+    }
+    let mut compared = 0;
+    for path in ["gauges.csv", "index.xmf", "model.rim", "u/000000.npy", "u/000001.npy", "speed/000003.npy"] {
+        let read = |out: &str| {
+            std::fs::read(place(out).join(path)).unwrap_or_else(|fault| panic!("{path}: {fault}"))
+        };
+        let (left, right) = (read("from_c"), read("from_rust"));
+        assert!(left == right && !left.is_empty(), "{path} differs");
+        compared += 1;
+    }
+    assert_eq!(compared, 6);
 }
 
 #[test]

@@ -400,6 +400,14 @@ pub fn block() -> Kernel {
         let part = sketch.derivative(operator, axis, Source::Buffer(u), coefficient.map(Source::Buffer), 1);
         sum = sketch.builder.add(sum, part);
     }
+    // A coefficient over the first and the last axis, so that its strides leave one out.
+    let (z, x) = (sketch.coordinate(0), sketch.coordinate(2));
+    let slanted = sketch.builder.multiply(z, x);
+    let slanted_table = sketch.builder.table(slanted);
+    let part = sketch.derivative(flux, 0, Source::Buffer(u), Some(Source::Table(slanted_table)), 1);
+    sum = sketch.builder.add(sum, part);
+    let stored = sketch.builder.stored(slanted);
+    sum = sketch.builder.subtract(sum, stored);
     let dt = sketch.dt();
     let change = sketch.builder.multiply(dt, sum);
     let now = sketch.load(u);
@@ -471,6 +479,7 @@ pub fn drum() -> Kernel {
     let back = sketch.builder.add(now, back);
     sketch.kernel.first_step = vec![stage(0, vec![Pass::Sweep(write("level before", old, back))])];
     let zero = sketch.builder.whole(0);
+    sketch.start(old, zero);
     let rim = FaceWrite { on: face(0, true), writes: vec![Write { buffer: u, value: zero }] };
     sketch.kernel.start.push(stage(0, vec![Pass::Face(rim)]));
     outputs(&mut sketch, u, old);
