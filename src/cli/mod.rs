@@ -2,8 +2,12 @@
 //!
 //! Only this module knows clap, standard output and exit statuses.
 
+mod check;
+mod emit;
 mod explain;
 mod format;
+mod model;
+mod run;
 mod weights;
 
 use std::io::{ErrorKind, Write};
@@ -27,10 +31,18 @@ pub enum Ending {
     Interrupted = 130,
 }
 
+impl Ending {
+    /// The worse of two: the environment's failure hides faults, and these hide success.
+    fn or(self, other: Ending) -> Ending {
+        if other as u8 > self as u8 { other } else { self }
+    }
+}
+
 const EXAMPLES: &str = "\
 Examples:
-  rimstone format --check vault_wall.rim               is the file in canonical layout?
-  rimstone explain E0121                               what a diagnostic means
+  rimstone check vault_wall.rim                        is the model sound?
+  rimstone run vault_wall.rim --out wall.run           build and run it
+  rimstone emit vault_wall.rim --target c --out wall   the program's text
   rimstone weights --derivative 2 --order 4            finite-difference weights, no model needed
 `rimstone COMMAND --help` has more.
 
@@ -48,6 +60,12 @@ struct Program {
 
 #[derive(Subcommand)]
 enum Command {
+    /// Every fault and warning of models, each with its place and a remedy
+    Check(check::Arguments),
+    /// The text of a C or Rust program
+    Emit(emit::Arguments),
+    /// Builds a model's program and runs it, or runs in process
+    Run(run::Arguments),
     /// Finite-difference weights for any nodes, exactly, with their order and error
     Weights(weights::Arguments),
     /// Model files in canonical layout
@@ -72,6 +90,9 @@ pub fn main() -> ExitCode {
 fn obey() -> ExitCode {
     match Program::try_parse() {
         Ok(program) => match program.command {
+            Command::Check(arguments) => check::run(&arguments).into(),
+            Command::Emit(arguments) => emit::run(&arguments).into(),
+            Command::Run(arguments) => run::run(&arguments).into(),
             Command::Weights(arguments) => weights::run(&arguments).into(),
             Command::Format(arguments) => format::run(arguments),
             Command::Explain(arguments) => explain::run(arguments),

@@ -21,6 +21,8 @@ pub enum ToolError {
     Compiler { command: String, output: String },
     /// A file or folder cannot be read or written.
     Folder { path: PathBuf, reason: String },
+    /// This version has no executor of its own.
+    NoExecutor,
     /// A program cannot be started.
     Start { program: PathBuf, reason: String },
 }
@@ -37,17 +39,16 @@ impl ToolError {
     pub fn hint(&self) -> &'static str {
         match self {
             ToolError::NoCompiler { language: "C", .. } => {
-                "install a C compiler (gcc or clang), name one with --cc or the variable CC, or run with --target builtin"
+                "install a C compiler (gcc or clang), or name one with --cc or the variable CC"
             }
-            ToolError::NoCompiler { .. } => {
-                "install Rust, name its compiler with the variable RUSTC, or run with --target builtin"
-            }
+            ToolError::NoCompiler { .. } => "install Rust, or name its compiler with the variable RUSTC",
             ToolError::Compiler { .. } => {
                 "the emitted program should compile everywhere; please report this with the model"
             }
             ToolError::Folder { .. } => {
                 "check permissions and free space; the variable XDG_CACHE_HOME moves the folder of built programs"
             }
+            ToolError::NoExecutor => "install a C compiler (gcc or clang) or Rust",
             ToolError::Start { .. } => {
                 "check that programs may be executed where it lies; the variable XDG_CACHE_HOME moves it"
             }
@@ -71,6 +72,7 @@ impl fmt::Display for ToolError {
             ToolError::Compiler { command, output } => {
                 write!(out, "the compiler failed: {command}\n{output}")
             }
+            ToolError::NoExecutor => write!(out, "this version cannot run a model without a compiler"),
             ToolError::Folder { path, reason } => write!(out, "cannot use '{}': {reason}", path.display()),
             ToolError::Start { program, reason } => {
                 write!(out, "cannot start '{}': {reason}", program.display())
