@@ -1,1 +1,3 @@
 //! The one place that knows the order of the stages.
+
+pub mod weights;

@@ -1,1 +1,3 @@
 //! Program text.
+
+pub mod weights;

@@ -1,1 +1,17 @@
-//! Facts of a discretization.
+//! Facts of a discretization: types whose constructors check, exactly, that what they say is true.
+//!
+//! Nothing here searches for weights; that is [`crate::discretize`]'s task. All weights are for unit spacing.
+
+pub mod norm;
+pub mod operator;
+pub mod second_derivative;
+pub mod squares;
+pub mod stencil;
+pub mod summation_by_parts;
+
+pub use norm::{Norm, NormFault};
+pub use operator::{ClosedRow, DifferenceOperator, EndRows, OperatorFault, Parity};
+pub use second_derivative::{FormFault, FormRow, LinearForm, SecondDerivativeForm};
+pub use squares::{RepeatedSquare, SquareTerm, SquaresFault, SumOfSquares};
+pub use stencil::{LeadingError, Stencil, StencilFault};
+pub use summation_by_parts::{SummationByParts, SummationFault};

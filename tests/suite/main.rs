@@ -1,1 +1,4 @@
 //! The one test binary.
+
+mod exactness;
+mod published;

@@ -1,0 +1,236 @@
+//! Operators on whole axes: closed first and second derivatives that keep an energy, and periodic ones.
+//!
+//! Each order is derived once a process and kept. The derivations are in the submodules; nothing is
+//! tabulated but which orders there are and how many rows they close.
+
+mod first_derivative;
+mod second_derivative;
+
+use std::fmt;
+use std::sync::OnceLock;
+
+use crate::exact::{AffineSolution, Inconsistent, Rational};
+use crate::scheme::{
+    FormFault, NormFault, OperatorFault, SecondDerivativeForm, SquaresFault, SummationByParts, SummationFault,
+};
+
+use super::WeightsFault;
+
+/// How the first derivative of one order is derived.
+struct Recipe {
+    order: usize,
+    /// How many rows are closed at each end.
+    closed_rows: usize,
+    /// Free coordinates of the optimum are rounded to multiples of 1/this.
+    tidy_denominator: Option<i64>,
+}
+
+/// The closed orders. Order 6 keeps the untidied optimum, which is a published operator (Del Rey Fernández
+/// et al. 2014, Computers & Fluids); order 8 is tidied because its optimum's fractions have 166 characters.
+const RECIPES: [Recipe; 4] = [
+    Recipe { order: 2, closed_rows: 1, tidy_denominator: None },
+    Recipe { order: 4, closed_rows: 4, tidy_denominator: None },
+    Recipe { order: 6, closed_rows: 6, tidy_denominator: None },
+    Recipe { order: 8, closed_rows: 8, tidy_denominator: Some(1024) },
+];
+
+/// The orders of [`periodic_first_derivative`].
+const PERIODIC_FIRST_ORDERS: [usize; 8] = [2, 4, 6, 8, 10, 12, 14, 16];
+/// The orders of [`periodic_second_derivative`]: those with non-negative averages, all of them checked.
+const PERIODIC_SECOND_ORDERS: [usize; 5] = [2, 4, 6, 8, 10];
+
+/// Why there is no such operator.
+#[derive(Clone, PartialEq, Eq, Debug)]
+pub enum ClosureFault {
+    /// This order is not offered.
+    NotAvailable {
+        /// The order that was asked for.
+        order: usize,
+        /// The orders that there are.
+        available: Vec<usize>,
+    },
+    /// The derivation of an offered order failed: a fault of this program.
+    Derivation(Impossible),
+}
+
+/// How a derivation can fail.
+#[derive(Clone, PartialEq, Eq, Debug)]
+pub enum Impossible {
+    /// The exactness conditions contradict each other.
+    Inconsistent,
+    /// The norm is not determined by the exactness conditions.
+    NormNotUnique,
+    /// The truncation stages left freedom.
+    FreedomLeft { directions: usize },
+    /// Narrow averages of the coefficient are not unique.
+    AveragesNotUnique,
+    /// The boundary weights do not settle to the interior's.
+    BoundaryWeightsUnsettled,
+    /// The interior weights were refused.
+    Weights(WeightsFault),
+    /// The operator was refused.
+    Operator(OperatorFault),
+    /// The norm was refused.
+    Norm(NormFault),
+    /// Summation by parts was refused.
+    Summation(SummationFault),
+    /// The certificate was refused.
+    Squares(SquaresFault),
+    /// The second derivative was refused.
+    Form(FormFault),
+}
+
+/// D = H⁻¹Q on an axis with two ends: interior order `order`, closed rows of half of it.
+pub fn first_derivative(order: usize) -> Result<&'static SummationByParts, ClosureFault> {
+    static KEPT: [OnceLock<Result<SummationByParts, ClosureFault>>; RECIPES.len()] =
+        [const { OnceLock::new() }; RECIPES.len()];
+    kept(&KEPT, &closed_orders(), order, derive_first_derivative)
+}
+
+/// −H⁻¹M(b) on an axis with two ends, in the norm of [`first_derivative`] of the same order.
+pub fn second_derivative(order: usize) -> Result<&'static SecondDerivativeForm, ClosureFault> {
+    static KEPT: [OnceLock<Result<SecondDerivativeForm, ClosureFault>>; RECIPES.len()] =
+        [const { OnceLock::new() }; RECIPES.len()];
+    kept(&KEPT, &closed_orders(), order, derive_second_derivative)
+}
+
+/// The centred first derivative on a periodic axis.
+pub fn periodic_first_derivative(order: usize) -> Result<&'static SummationByParts, ClosureFault> {
+    static KEPT: [OnceLock<Result<SummationByParts, ClosureFault>>; PERIODIC_FIRST_ORDERS.len()] =
+        [const { OnceLock::new() }; PERIODIC_FIRST_ORDERS.len()];
+    kept(&KEPT, &PERIODIC_FIRST_ORDERS, order, |order| Ok(first_derivative::periodic(order)?))
+}
+
+/// −M(b) on a periodic axis.
+pub fn periodic_second_derivative(order: usize) -> Result<&'static SecondDerivativeForm, ClosureFault> {
+    static KEPT: [OnceLock<Result<SecondDerivativeForm, ClosureFault>>; PERIODIC_SECOND_ORDERS.len()] =
+        [const { OnceLock::new() }; PERIODIC_SECOND_ORDERS.len()];
+    kept(&KEPT, &PERIODIC_SECOND_ORDERS, order, |order| Ok(second_derivative::periodic(order / 2)?))
+}
+
+/// [`first_derivative`], derived afresh.
+pub fn derive_first_derivative(order: usize) -> Result<SummationByParts, ClosureFault> {
+    Ok(first_derivative::closed(recipe(order)?)?)
+}
+
+/// The optimum of the truncation rule before it is tidied: [`derive_first_derivative`] with its fractions
+/// in full. Differs from it at order 8 alone.
+pub fn derive_untidied_first_derivative(order: usize) -> Result<SummationByParts, ClosureFault> {
+    let recipe = recipe(order)?;
+    let untidied = Recipe { tidy_denominator: None, ..*recipe };
+    Ok(first_derivative::closed(&untidied)?)
+}
+
+/// [`second_derivative`], derived afresh but for the first derivative that it starts from.
+pub fn derive_second_derivative(order: usize) -> Result<SecondDerivativeForm, ClosureFault> {
+    compatible_second_derivative(first_derivative(order)?)
+}
+
+/// The second derivative that belongs to a given first derivative with centred interior.
+pub fn compatible_second_derivative(first: &SummationByParts) -> Result<SecondDerivativeForm, ClosureFault> {
+    Ok(second_derivative::closed(first)?)
+}
+
+/// The orders with closures.
+pub fn closed_orders() -> [usize; RECIPES.len()] {
+    RECIPES.map(|recipe| recipe.order)
+}
+
+fn recipe(order: usize) -> Result<&'static Recipe, ClosureFault> {
+    RECIPES
+        .iter()
+        .find(|recipe| recipe.order == order)
+        .ok_or_else(|| ClosureFault::NotAvailable { order, available: closed_orders().to_vec() })
+}
+
+/// The kept result of an order, derived at its first use.
+fn kept<Fact>(
+    places: &'static [OnceLock<Result<Fact, ClosureFault>>],
+    orders: &[usize],
+    order: usize,
+    derive: impl FnOnce(usize) -> Result<Fact, ClosureFault>,
+) -> Result<&'static Fact, ClosureFault> {
+    let place = orders.iter().position(|&offered| offered == order).and_then(|index| places.get(index));
+    let Some(place) = place else {
+        return Err(ClosureFault::NotAvailable { order, available: orders.to_vec() });
+    };
+    place.get_or_init(|| derive(order)).as_ref().map_err(Clone::clone)
+}
+
+/// The one member of a family that must have no freedom.
+fn only_member(family: AffineSolution) -> Result<Vec<Rational>, Impossible> {
+    match family.directions.len() {
+        0 => Ok(family.particular),
+        directions => Err(Impossible::FreedomLeft { directions }),
+    }
+}
+
+impl fmt::Display for ClosureFault {
+    fn fmt(&self, formatter: &mut fmt::Formatter<'_>) -> fmt::Result {
+        match self {
+            ClosureFault::NotAvailable { order, available } => {
+                let listed: Vec<String> = available.iter().map(usize::to_string).collect();
+                write!(formatter, "order {order} is not offered: there are {}", listed.join(", "))
+            }
+            ClosureFault::Derivation(fault) => write!(formatter, "the derivation failed: {fault}"),
+        }
+    }
+}
+
+impl fmt::Display for Impossible {
+    fn fmt(&self, formatter: &mut fmt::Formatter<'_>) -> fmt::Result {
+        match self {
+            Impossible::Inconsistent => formatter.write_str("the exactness conditions contradict each other"),
+            Impossible::NormNotUnique => formatter.write_str("the norm is not determined"),
+            Impossible::FreedomLeft { directions } => {
+                write!(formatter, "{directions} directions of freedom are left")
+            }
+            Impossible::AveragesNotUnique => formatter.write_str("narrow averages are not unique"),
+            Impossible::BoundaryWeightsUnsettled => {
+                formatter.write_str("the boundary weights do not settle to the interior's")
+            }
+            Impossible::Weights(fault) => fault.fmt(formatter),
+            Impossible::Operator(fault) => fault.fmt(formatter),
+            Impossible::Norm(fault) => fault.fmt(formatter),
+            Impossible::Summation(fault) => fault.fmt(formatter),
+            Impossible::Squares(fault) => fault.fmt(formatter),
+            Impossible::Form(fault) => fault.fmt(formatter),
+        }
+    }
+}
+
+impl std::error::Error for ClosureFault {}
+
+impl std::error::Error for Impossible {}
+
+impl From<Impossible> for ClosureFault {
+    fn from(fault: Impossible) -> ClosureFault {
+        ClosureFault::Derivation(fault)
+    }
+}
+
+/// Lets `?` carry a fact's refusal out of a derivation.
+macro_rules! carried {
+    ($($fault:ty => $variant:ident),* $(,)?) => {
+        $(impl From<$fault> for Impossible {
+            fn from(fault: $fault) -> Impossible {
+                Impossible::$variant(fault)
+            }
+        })*
+    };
+}
+
+carried! {
+    WeightsFault => Weights,
+    OperatorFault => Operator,
+    NormFault => Norm,
+    SummationFault => Summation,
+    SquaresFault => Squares,
+    FormFault => Form,
+}
+
+impl From<Inconsistent> for Impossible {
+    fn from(_: Inconsistent) -> Impossible {
+        Impossible::Inconsistent
+    }
+}

@@ -1,0 +1,172 @@
+//! The search for closed first derivatives D = H⁻¹Q with Q + Qᵀ = B.
+//!
+//! Unknown are the norm weights h₀ … h_{b−1} and the upper triangle of Q's b × b corner; the rest of the
+//! corner follows by antisymmetry, everything else from the interior. Exactness of the rows is linear in
+//! them. What freedom is left goes into the least truncation error in the norm, degree after degree.
+//! Not here: the proof, which the constructors in [`crate::scheme`] make.
+
+use crate::discretize::interior;
+use crate::exact::{AffineSolution, Matrix, Rational, Residual};
+use crate::scheme::{ClosedRow, DifferenceOperator, Norm, Stencil, SummationByParts};
+
+use super::{Impossible, Recipe, only_member};
+
+/// Degrees of the truncation stages above the first; beyond them a direction that no error sees would be
+/// followed to an absurd spectral radius.
+const MOST_STAGES: usize = 8;
+
+/// Where the unknowns are, and the interior weights.
+struct Layout {
+    half: usize,
+    closed: usize,
+    /// c₁ … c_p.
+    interior: Vec<Rational>,
+}
+
+/// (D xᵈ)ᵢ hᵢ − hᵢ d i^(d−1) as a linear form in the unknowns plus a constant.
+struct RowCondition {
+    coefficients: Vec<Rational>,
+    constant: Rational,
+}
+
+pub(super) fn periodic(order: usize) -> Result<SummationByParts, Impossible> {
+    let operator = DifferenceOperator::periodic(interior::centred(1, order)?, order)?;
+    Ok(SummationByParts::new(operator, Norm::periodic())?)
+}
+
+pub(super) fn closed(recipe: &Recipe) -> Result<SummationByParts, Impossible> {
+    let stencil = interior::centred(1, recipe.order)?;
+    let half = recipe.order / 2;
+    let layout =
+        Layout { half, closed: recipe.closed_rows, interior: stencil.weights()[half + 1..].to_vec() };
+    let family = layout.exact_family()?;
+    if family.directions.iter().any(|direction| direction[..layout.closed].iter().any(|h| !h.is_zero())) {
+        return Err(Impossible::NormNotUnique);
+    }
+    let mut best = family.clone();
+    for degree in half + 1..=half + MOST_STAGES {
+        if best.directions.is_empty() {
+            break;
+        }
+        best = best.least_squares(&layout.truncation_errors(degree, &best)?);
+    }
+    let mut unknowns = only_member(best)?;
+    if let Some(denominator) = recipe.tidy_denominator {
+        unknowns = tidied(&family, &unknowns, denominator);
+    }
+    layout.operator(stencil, recipe.order, &unknowns)
+}
+
+/// The family's member whose free coordinates are rounded to multiples of 1/denominator.
+fn tidied(family: &AffineSolution, unknowns: &[Rational], denominator: i64) -> Vec<Rational> {
+    let scale = Rational::from(denominator);
+    let coordinates: Vec<Rational> = family
+        .free
+        .iter()
+        .map(|&index| (&unknowns[index] - &family.particular[index]) * &scale)
+        .map(|scaled| scaled.rounded() / &scale)
+        .collect();
+    family.at(&coordinates)
+}
+
+impl Layout {
+    /// How many columns the closed rows reach.
+    fn width(&self) -> usize {
+        self.closed + self.half
+    }
+
+    fn unknowns(&self) -> usize {
+        self.closed + self.closed * (self.closed - 1) / 2
+    }
+
+    /// The place of q_ij, i < j < b, among the unknowns: row after row behind the norm.
+    fn place(&self, row: usize, column: usize) -> usize {
+        self.closed + row * (2 * self.closed - row - 1) / 2 + (column - row - 1)
+    }
+
+    /// The interior's weight in Q for a distance to the right.
+    fn beyond(&self, distance: usize) -> Rational {
+        self.interior.get(distance - 1).cloned().unwrap_or_else(Rational::zero)
+    }
+
+    fn condition(&self, row: usize, degree: usize) -> RowCondition {
+        let mut coefficients = vec![Rational::zero(); self.unknowns()];
+        let mut constant = Rational::zero();
+        for column in 0..self.width() {
+            let value = Rational::from(column as i64).power(degree as u32);
+            if column >= self.closed {
+                constant += self.beyond(column - row) * value;
+            } else if row < column {
+                coefficients[self.place(row, column)] += value;
+            } else if row > column {
+                coefficients[self.place(column, row)] -= value;
+            } else if row == 0 {
+                constant -= value * Rational::ratio(1, 2);
+            }
+        }
+        if let Some(lower) = degree.checked_sub(1) {
+            let slope = Rational::from(degree as i64) * Rational::from(row as i64).power(lower as u32);
+            coefficients[row] -= slope;
+        }
+        RowCondition { coefficients, constant }
+    }
+
+    /// All unknowns for which every closed row is exact up to the degree p.
+    fn exact_family(&self) -> Result<AffineSolution, Impossible> {
+        let conditions: Vec<RowCondition> = (0..self.closed)
+            .flat_map(|row| (0..=self.half).map(move |degree| (row, degree)))
+            .map(|(row, degree)| self.condition(row, degree))
+            .collect();
+        let right_side: Vec<Rational> = conditions.iter().map(|condition| -&condition.constant).collect();
+        let rows = conditions.into_iter().map(|condition| condition.coefficients).collect();
+        let system = Matrix::from_rows(rows).expect("all conditions have one entry an unknown");
+        Ok(system.solve_affine(&right_side)?)
+    }
+
+    /// hᵢ eᵢ² of every closed row at one degree, the norm being known.
+    fn truncation_errors(&self, degree: usize, best: &AffineSolution) -> Result<Vec<Residual>, Impossible> {
+        (0..self.closed)
+            .map(|row| {
+                let RowCondition { coefficients, constant } = self.condition(row, degree);
+                // hᵢ eᵢ is the condition's value, so hᵢ eᵢ² is its square over hᵢ.
+                let height = &best.particular[row];
+                let weight = height.recip().filter(Rational::is_positive).ok_or(Impossible::NormNotUnique)?;
+                Ok(Residual { row: coefficients, constant, weight })
+            })
+            .collect()
+    }
+
+    /// Passes the found numbers through the constructors of the facts.
+    fn operator(
+        &self,
+        stencil: Stencil,
+        order: usize,
+        unknowns: &[Rational],
+    ) -> Result<SummationByParts, Impossible> {
+        let norm = Norm::bounded(unknowns[..self.closed].to_vec())?;
+        let rows = (0..self.closed).map(|row| self.closed_row(row, unknowns)).collect();
+        let operator = DifferenceOperator::bounded(stencil, order, rows, self.half)?;
+        Ok(SummationByParts::new(operator, norm)?)
+    }
+
+    /// Row `row` of D = H⁻¹Q without the noughts at its ends.
+    fn closed_row(&self, row: usize, unknowns: &[Rational]) -> ClosedRow {
+        let entry = |column: usize| {
+            if column >= self.closed {
+                self.beyond(column - row)
+            } else if row < column {
+                unknowns[self.place(row, column)].clone()
+            } else if row > column {
+                -&unknowns[self.place(column, row)]
+            } else if row == 0 {
+                Rational::ratio(-1, 2)
+            } else {
+                Rational::zero()
+            }
+        };
+        let weights: Vec<Rational> = (0..self.width()).map(|column| entry(column) / &unknowns[row]).collect();
+        let first = weights.iter().take_while(|weight| weight.is_zero()).count();
+        let end = weights.iter().rposition(|weight| !weight.is_zero()).map_or(first, |last| last + 1);
+        ClosedRow { first, weights: weights[first..end].to_vec() }
+    }
+}
