@@ -2,7 +2,7 @@
 //!
 //! The builder never reorders operands: the order in which a caller combines values is the order in which they are computed.
 
-use super::{BufferId, Extent, Operation, OperatorId, Source, TableId, Table, Value, ValueId};
+use super::{BufferId, Extent, Operation, OperatorId, Source, Table, TableId, Value, ValueId};
 use crate::exact::Rational;
 use crate::model::{Function, Relation};
 use std::collections::HashMap;
@@ -49,7 +49,9 @@ impl Builder {
         }
         let operands = operation.operands();
         let extents: Vec<Extent> = operands.iter().map(|operand| self.extent(*operand)).collect();
-        let extent = operation.own_extent(self.all_axes).join(extents.iter().copied().fold(Extent::Fixed, Extent::join));
+        let extent = operation
+            .own_extent(self.all_axes)
+            .join(extents.iter().copied().fold(Extent::Fixed, Extent::join));
         if extent == Extent::Varying && extents.iter().any(|extent| matches!(extent, Extent::Table(_))) {
             let mut tabled = operation.clone();
             tabled.map_operands(&mut |operand| self.stored(operand));
@@ -182,11 +184,24 @@ impl Builder {
         self.value(Operation::Load(buffer))
     }
 
-    pub fn apply(&mut self, operator: OperatorId, axis: usize, source: Source, coefficient: Option<Source>) -> ValueId {
+    pub fn apply(
+        &mut self,
+        operator: OperatorId,
+        axis: usize,
+        source: Source,
+        coefficient: Option<Source>,
+    ) -> ValueId {
         self.value(Operation::Apply { operator, axis, source, coefficient })
     }
 
-    pub fn select(&mut self, left: ValueId, relation: Relation, right: ValueId, then: ValueId, otherwise: ValueId) -> ValueId {
+    pub fn select(
+        &mut self,
+        left: ValueId,
+        relation: Relation,
+        right: ValueId,
+        then: ValueId,
+        otherwise: ValueId,
+    ) -> ValueId {
         self.value(Operation::Select { left, relation, right, then, otherwise })
     }
 }
@@ -247,7 +262,9 @@ impl Operation {
             Operation::Time | Operation::Step => Extent::Uniform,
             Operation::Coordinate(axis) => Extent::Table(1 << axis),
             Operation::Noise(_) => Extent::Table(all_axes),
-            Operation::Load(_) | Operation::Apply { .. } | Operation::Rate(_) | Operation::Table(_) => Extent::Varying,
+            Operation::Load(_) | Operation::Apply { .. } | Operation::Rate(_) | Operation::Table(_) => {
+                Extent::Varying
+            }
             _ => Extent::Fixed,
         }
     }

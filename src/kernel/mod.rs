@@ -32,15 +32,14 @@
 //! A **stage** is a list of passes at one time. A **step** is the list of stages, then the swaps of `rotation`.
 
 pub mod build;
+pub mod lower;
 pub mod operator;
-pub mod validate;
 
 pub use build::Builder;
 pub use operator::{ClosureRow, ConstantOperator, LineOperator, Parity, VaryingEntry, VaryingOperator};
 
 use crate::exact::Rational;
 use crate::model::{Function, Relation};
-
 
 macro_rules! index {
     ($($(#[$doc:meta])* $name:ident;)*) => {$(
@@ -152,7 +151,7 @@ pub enum Operation {
     Parameter(ParameterId),
     /// Time of the stage.
     Time,
-    /// dt.
+    /// dt; in outputs, the dt of the last step taken.
     Step,
     /// 1/spacing of an axis.
     InverseSpacing(usize),
@@ -165,7 +164,12 @@ pub enum Operation {
     /// The table at this node.
     Table(TableId),
     /// An operator applied along an axis, in units of the spacing.
-    Apply { operator: OperatorId, axis: usize, source: Source, coefficient: Option<Source> },
+    Apply {
+        operator: OperatorId,
+        axis: usize,
+        source: Source,
+        coefficient: Option<Source>,
+    },
     /// The rate k of the sweep, after its face terms; only in writes.
     Rate(usize),
     Negate(ValueId),
@@ -182,7 +186,13 @@ pub enum Operation {
     /// a > b ? a : b
     Maximum(ValueId, ValueId),
     /// left RELATION right ? then : otherwise
-    Select { left: ValueId, relation: Relation, right: ValueId, then: ValueId, otherwise: ValueId },
+    Select {
+        left: ValueId,
+        relation: Relation,
+        right: ValueId,
+        then: ValueId,
+        otherwise: ValueId,
+    },
 }
 
 /// An array that an operator reads along a line. A table always holds the operator's axis.
@@ -295,7 +305,7 @@ pub struct FaceWrite {
 #[derive(Clone, Debug)]
 pub struct Limit {
     pub rate: ValueId,
-    /// Sweeps that fill buffers which `rate` loads, if any.
+    /// Whether it changes with the state (or time) and must be found anew before each step.
     pub state_dependent: bool,
     /// How it was found, for readers.
     pub law: String,
@@ -327,8 +337,8 @@ pub struct Output {
     /// SI value of one `unit`: results are divided by it before they are written.
     pub scale: ValueId,
     pub kind: OutputKind,
-    /// Fills `buffer` before it is read; `None` when the buffer is a field's.
-    pub sweep: Option<Sweep>,
+    /// Fill `buffer` before it is read, in order; empty when the buffer is a field's.
+    pub sweeps: Vec<Sweep>,
     pub buffer: BufferId,
     /// Seconds between outputs, fixed; `None`: snapshots at start and end, gauges and integrals after each step.
     pub every: Option<ValueId>,
@@ -341,6 +351,8 @@ pub enum OutputKind {
     /// A coordinate for each axis, fixed.
     Gauge(Vec<ValueId>),
     Integral,
-    /// `sweep` keeps the largest value so far in `buffer`; `begin` sets it at the start.
-    Maximum { begin: Sweep },
+    /// `sweeps` keep the largest value so far in `buffer`; `begin` set it at the start.
+    Maximum {
+        begin: Vec<Sweep>,
+    },
 }

@@ -84,7 +84,9 @@ impl LineOperator {
                 .closure
                 .iter()
                 .flatten()
-                .map(|entry| entry.weights.iter().map(|(node, _)| node + 1).max().unwrap_or(0).max(entry.column + 1))
+                .map(|entry| {
+                    entry.weights.iter().map(|(node, _)| node + 1).max().unwrap_or(0).max(entry.column + 1)
+                })
                 .max()
                 .unwrap_or(0),
         }
@@ -93,6 +95,10 @@ impl LineOperator {
     /// The least number of nodes on a line so that closure rows of the two ends do not overlap and every load is in bounds.
     pub fn least_nodes(&self) -> usize {
         let rows = self.closure_rows();
-        if rows == 0 { 2 * self.reach() + 1 } else { (2 * rows).max(self.closure_width()).max(rows + self.reach()) }
+        if rows == 0 {
+            2 * self.reach() + 1
+        } else {
+            (2 * rows).max(self.closure_width()).max(rows + self.reach())
+        }
     }
 }

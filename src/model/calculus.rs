@@ -56,7 +56,9 @@ fn collect(expression: &Expression, coefficients: &[Coefficient], found: &mut De
             found.rates.insert(*field);
         }
         Expression::Noise(_) => found.noise = true,
-        Expression::Derivative(_) | Expression::Applied(_) | Expression::Normal(_) => found.derivatives = true,
+        Expression::Derivative(_) | Expression::Applied(_) | Expression::Normal(_) => {
+            found.derivatives = true
+        }
         Expression::Coefficient(id) => {
             if let Some(coefficient) = coefficients.get(id.0) {
                 collect(&coefficient.value, coefficients, found);
@@ -121,7 +123,8 @@ pub fn partial(expression: &Expression, by: Variable, coefficients: &[Coefficien
             if slope_below.is_zero() {
                 return Some(first);
             }
-            let second = (**above).clone().times(slope_below).over((**below).clone().power(Rational::from(2)));
+            let second =
+                (**above).clone().times(slope_below).over((**below).clone().power(Rational::from(2)));
             Some(first.minus(second))
         }
         Expression::Power(base, exponent) => {
@@ -152,7 +155,9 @@ pub fn partial(expression: &Expression, by: Variable, coefficients: &[Coefficien
 fn mentions(expression: &Expression, by: Variable, coefficients: &[Coefficient]) -> bool {
     let found = dependence(expression, coefficients);
     match by {
-        Variable::Field(field) => found.fields.contains(&field) || found.derivatives && inside(expression, by, coefficients),
+        Variable::Field(field) => {
+            found.fields.contains(&field) || found.derivatives && inside(expression, by, coefficients)
+        }
         Variable::Rate(field) => found.rates.contains(&field),
         Variable::Coordinate(axis) => found.coordinates.contains(&axis) || found.derivatives,
         Variable::Time => found.time,
@@ -177,7 +182,7 @@ fn outer_slope(function: Function, inner: &Expression) -> Option<Expression> {
         Function::Tan => Expression::sum([Expression::one(), square(call(Function::Tan))]),
         Function::Exp => call(Function::Exp),
         Function::Log => Expression::one().over(inner.clone()),
-        Function::Sqrt => Expression::Number(Rational::new(1, 2)).over(call(Function::Sqrt)),
+        Function::Sqrt => Expression::Number(Rational::ratio(1, 2)).over(call(Function::Sqrt)),
         Function::Tanh => Expression::one().minus(square(call(Function::Tanh))),
         Function::Sinh => call(Function::Cosh),
         Function::Cosh => call(Function::Sinh),
@@ -267,7 +272,8 @@ pub fn derivative_terms(expression: &Expression) -> Option<(Vec<DerivativeTerm>,
             Some((all, Expression::sum(rest)))
         }
         Expression::Product(_) => {
-            let (with, without): (Vec<_>, Vec<_>) = factors(expression.clone()).into_iter().partition(|part| holds(part));
+            let (with, without): (Vec<_>, Vec<_>) =
+                factors(expression.clone()).into_iter().partition(|part| holds(part));
             let [single] = with.as_slice() else { return None };
             let (terms, rest) = derivative_terms(single)?;
             Some(scale(terms, rest, &|part| Expression::product(without.iter().cloned().chain([part]))))

@@ -26,7 +26,8 @@ pub fn own_second_terms(model: &Model, field: FieldId, axis: AxisId) -> Vec<Deri
         .filter(|term| match &term.derivative.kind {
             DerivativeKind::Second { axis: along, of, .. } => {
                 *along == axis
-                    && partial(of, Variable::Field(field), &model.coefficients).is_none_or(|slope| !slope.is_zero())
+                    && partial(of, Variable::Field(field), &model.coefficients)
+                        .is_none_or(|slope| !slope.is_zero())
             }
             _ => false,
         })
@@ -166,15 +167,14 @@ fn sign_of(expression: &Expression, model: &Model) -> Sign {
 /// Eigenvalues of a block's matrix as expressions: the mean of the diagonal and the root that is added to and subtracted
 /// from it; for one field the root is zero. `None` for larger blocks.
 pub fn mean_and_root(matrix: &[Vec<Expression>]) -> Option<(Expression, Expression)> {
-    let half = |value: Expression| Expression::Number(Rational::new(1, 2)).times(value);
+    let half = |value: Expression| Expression::Number(Rational::ratio(1, 2)).times(value);
     match matrix.len() {
         1 => Some((matrix[0][0].clone(), Expression::zero())),
         2 => {
             let [a, b, c, d] = [&matrix[0][0], &matrix[0][1], &matrix[1][0], &matrix[1][1]];
             let mean = half(Expression::sum([a.clone(), d.clone()]));
             let difference = half(a.clone().minus(d.clone()));
-            let radicand =
-                Expression::sum([difference.power(Rational::from(2)), b.clone().times(c.clone())]);
+            let radicand = Expression::sum([difference.power(Rational::from(2)), b.clone().times(c.clone())]);
             let root = if radicand.is_zero() { Expression::zero() } else { radicand.square_root() };
             Some((mean, root))
         }

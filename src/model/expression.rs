@@ -181,11 +181,16 @@ impl Expression {
         let mut above = factors(self);
         let mut below = factors(other);
         if below.iter().any(Expression::is_zero) {
-            return Expression::Quotient(Box::new(Expression::product(above)), Box::new(Expression::product(below)));
+            return Expression::Quotient(
+                Box::new(Expression::product(above)),
+                Box::new(Expression::product(below)),
+            );
         }
         let mut index = 0;
         while index < above.len() {
-            let twin = below.iter().position(|factor| *factor == above[index] && !matches!(factor, Expression::Number(_)));
+            let twin = below
+                .iter()
+                .position(|factor| *factor == above[index] && !matches!(factor, Expression::Number(_)));
             match twin {
                 Some(place) => {
                     below.remove(place);
@@ -220,24 +225,25 @@ impl Expression {
         if exponent == Rational::from(1) {
             return self;
         }
-        if let (Expression::Number(base), Some(whole)) = (&self, exponent.to_i32())
-            && whole.abs() <= 64
-            && !(base.is_zero() && whole < 0)
+        if let (Expression::Number(base), Some(whole @ -64..=64)) = (&self, exponent.to_i64())
+            && let Some(value) = base.pow(whole as i32)
         {
-            return Expression::Number(base.pow(whole));
+            return Expression::Number(value);
         }
         Expression::Power(Box::new(self), exponent)
     }
 
     /// Square root, kept exact as a power.
     pub fn square_root(self) -> Expression {
-        self.power(Rational::new(1, 2))
+        self.power(Rational::ratio(1, 2))
     }
 
     /// The direct children.
     pub fn children(&self) -> Vec<&Expression> {
         match self {
-            Expression::Sum(items) | Expression::Product(items) | Expression::Call(_, items) => items.iter().collect(),
+            Expression::Sum(items) | Expression::Product(items) | Expression::Call(_, items) => {
+                items.iter().collect()
+            }
             Expression::Quotient(a, b) => vec![a, b],
             Expression::Power(base, _) => vec![base],
             Expression::Normal(of) => vec![of],
@@ -251,7 +257,8 @@ impl Expression {
             }
             Expression::Derivative(derivative) => match &derivative.kind {
                 DerivativeKind::First { of, .. } | DerivativeKind::Higher { of, .. } => vec![of],
-                DerivativeKind::Second { coefficient, of, .. } | DerivativeKind::Mixed { coefficient, of, .. } => {
+                DerivativeKind::Second { coefficient, of, .. }
+                | DerivativeKind::Mixed { coefficient, of, .. } => {
                     vec![coefficient, of]
                 }
             },
@@ -262,7 +269,9 @@ impl Expression {
     /// Rebuilds the expression bottom-up through the folding constructors, replacing each node by `change` of it.
     pub fn rewrite(&self, change: &mut dyn FnMut(Expression) -> Expression) -> Expression {
         let rebuilt = match self {
-            Expression::Sum(items) => Expression::sum(items.iter().map(|item| item.rewrite(change)).collect::<Vec<_>>()),
+            Expression::Sum(items) => {
+                Expression::sum(items.iter().map(|item| item.rewrite(change)).collect::<Vec<_>>())
+            }
             Expression::Product(items) => {
                 Expression::product(items.iter().map(|item| item.rewrite(change)).collect::<Vec<_>>())
             }
@@ -281,7 +290,9 @@ impl Expression {
             }
             Expression::Derivative(derivative) => {
                 let kind = match &derivative.kind {
-                    DerivativeKind::First { axis, of } => DerivativeKind::First { axis: *axis, of: of.rewrite(change) },
+                    DerivativeKind::First { axis, of } => {
+                        DerivativeKind::First { axis: *axis, of: of.rewrite(change) }
+                    }
                     DerivativeKind::Higher { axis, degree, of } => {
                         DerivativeKind::Higher { axis: *axis, degree: *degree, of: of.rewrite(change) }
                     }
@@ -312,7 +323,11 @@ impl Expression {
 
 impl Comparison {
     fn rewrite(&self, change: &mut dyn FnMut(Expression) -> Expression) -> Comparison {
-        Comparison { left: self.left.rewrite(change), relation: self.relation, right: self.right.rewrite(change) }
+        Comparison {
+            left: self.left.rewrite(change),
+            relation: self.relation,
+            right: self.right.rewrite(change),
+        }
     }
 }
 
@@ -332,7 +347,11 @@ pub fn terms(expression: Expression) -> Vec<Expression> {
     }
 }
 
-fn gather(items: Vec<Expression>, neutral: Rational, combine: fn(&Rational, &Rational) -> Rational) -> Vec<Expression> {
+fn gather(
+    items: Vec<Expression>,
+    neutral: Rational,
+    combine: fn(&Rational, &Rational) -> Rational,
+) -> Vec<Expression> {
     let mut number: Option<(usize, Rational)> = None;
     let mut rest: Vec<Expression> = Vec::with_capacity(items.len());
     for item in items {

@@ -81,14 +81,14 @@ impl Interval {
     fn inverse(&self) -> Interval {
         match self.sign() {
             Sign::Positive | Sign::Negative => Interval {
-                low: self.high.as_ref().map_or(
-                    (self.sign() == Sign::Positive).then(|| Rational::from(0)),
-                    Rational::recip,
-                ),
-                high: self.low.as_ref().map_or(
-                    (self.sign() == Sign::Negative).then(|| Rational::from(0)),
-                    Rational::recip,
-                ),
+                low: self
+                    .high
+                    .as_ref()
+                    .map_or((self.sign() == Sign::Positive).then(|| Rational::from(0)), Rational::recip),
+                high: self
+                    .low
+                    .as_ref()
+                    .map_or((self.sign() == Sign::Negative).then(|| Rational::from(0)), Rational::recip),
             },
             Sign::NonNegative => Interval {
                 low: Some(self.high.as_ref().and_then(Rational::recip).unwrap_or_else(|| Rational::from(0))),
@@ -116,9 +116,10 @@ impl Interval {
 pub fn interval(expression: &Expression, model: &Model) -> Interval {
     match expression {
         Expression::Number(value) => Interval::point(value.clone()),
-        Expression::Pi => {
-            Interval { low: Some(Rational::new(314_159_265, 100_000_000)), high: Some(Rational::new(314_159_266, 100_000_000)) }
-        }
+        Expression::Pi => Interval {
+            low: Some(Rational::ratio(314_159_265, 100_000_000)),
+            high: Some(Rational::ratio(314_159_266, 100_000_000)),
+        },
         Expression::Constant(id) => match model.free_constants.get(id.0) {
             Some(constant) => match &constant.bounds {
                 Some((low, high)) => interval(low, model).union(interval(high, model)),
@@ -126,18 +127,24 @@ pub fn interval(expression: &Expression, model: &Model) -> Interval {
             },
             None => Interval::all(),
         },
-        Expression::Coefficient(id) => {
-            model.coefficients.get(id.0).map_or_else(Interval::all, |coefficient| interval(&coefficient.value, model))
-        }
+        Expression::Coefficient(id) => model
+            .coefficients
+            .get(id.0)
+            .map_or_else(Interval::all, |coefficient| interval(&coefficient.value, model)),
         Expression::Coordinate(id) => match model.axes.get(id.0) {
             Some(axis) => interval(&axis.low, model).union(interval(&axis.high, model)),
             None => Interval::all(),
         },
-        Expression::Time => Interval { low: interval(&model.time.start, model).low, high: interval(&model.time.end, model).high },
-        Expression::Field(FieldId(index)) => match model.fields.get(*index).and_then(|field| field.bounds.as_ref()) {
-            Some((low, high)) => interval(low, model).union(interval(high, model)),
-            None => Interval::all(),
+        Expression::Time => Interval {
+            low: interval(&model.time.start, model).low,
+            high: interval(&model.time.end, model).high,
         },
+        Expression::Field(FieldId(index)) => {
+            match model.fields.get(*index).and_then(|field| field.bounds.as_ref()) {
+                Some((low, high)) => interval(low, model).union(interval(high, model)),
+                None => Interval::all(),
+            }
+        }
         Expression::Sum(items) => items
             .iter()
             .map(|item| interval(item, model))
@@ -179,10 +186,10 @@ fn product_interval(items: &[Expression], model: &Model) -> Interval {
 
 fn power(base: &Interval, exponent: &Rational) -> Interval {
     let positive_base = matches!(base.sign(), Sign::Positive | Sign::NonNegative);
-    match exponent.to_i32() {
+    match exponent.to_i64() {
         Some(whole) if whole.abs() <= 16 => {
             if whole < 0 {
-                return power(base, &Rational::from(i64::from(-whole))).inverse();
+                return power(base, &Rational::from(-whole)).inverse();
             }
             let mut total = Interval::point(Rational::from(1));
             for _ in 0..whole / 2 {
@@ -196,7 +203,11 @@ fn power(base: &Interval, exponent: &Rational) -> Interval {
             let above_one = base.low.as_ref().is_some_and(|low| *low >= one) && *exponent > Rational::from(0);
             // Only the sign and the side of one are used; a tighter bound of an irrational root is never needed.
             let low = if above_one { one } else { Rational::from(0) };
-            if strict && !above_one { open_positive(base, exponent) } else { Interval { low: Some(low), high: None } }
+            if strict && !above_one {
+                open_positive(base, exponent)
+            } else {
+                Interval { low: Some(low), high: None }
+            }
         }
         _ => Interval::all(),
     }
@@ -211,8 +222,9 @@ fn open_positive(base: &Interval, exponent: &Rational) -> Interval {
         // For 0 < b < 1 and 0 < e ≤ 1, b^e ≥ b; larger exponents are bounded by the next whole power.
         Some(value) if value < one => {
             let magnitude = exponent.abs();
-            let whole = (1..=16).find(|whole| Rational::from(i64::from(*whole)) >= magnitude).unwrap_or(16);
-            Interval { low: Some(value.pow(whole)), high: None }
+            let whole =
+                (1..=16u32).find(|whole| Rational::from(i64::from(*whole)) >= magnitude).unwrap_or(16);
+            Interval { low: Some(value.power(whole)), high: None }
         }
         Some(_) => Interval { low: Some(one), high: None },
         None => Interval { low: Some(Rational::from(0)), high: None },
@@ -237,22 +249,25 @@ fn square(base: &Interval) -> Interval {
 fn call(function: Function, arguments: &[Interval]) -> Interval {
     let first = arguments.first().cloned().unwrap_or_else(Interval::all);
     match function {
-        Function::Sin | Function::Cos | Function::Tanh | Function::Erf | Function::Sign => Interval::between(-1, 1),
+        Function::Sin | Function::Cos | Function::Tanh | Function::Erf | Function::Sign => {
+            Interval::between(-1, 1)
+        }
         Function::Erfc => Interval::between(0, 2),
         // exp is positive: e^x ≥ 2^(−n) for x ≥ −n·ln 2, and a coarse power of two is enough for a sign.
         Function::Exp => match &first.low {
             Some(low) if *low > Rational::from(-64) => {
-                Interval { low: Some(Rational::from(2).pow(-96)), high: exp_high(&first) }
+                Interval { low: Rational::from(2).pow(-96), high: exp_high(&first) }
             }
             _ => Interval { low: Some(Rational::from(0)), high: exp_high(&first) },
         },
         Function::Cosh => Interval { low: Some(Rational::from(1)), high: None },
-        Function::Sqrt => power(&first, &Rational::new(1, 2)),
+        Function::Sqrt => power(&first, &Rational::ratio(1, 2)),
         Function::Abs => match first.sign() {
             Sign::Positive | Sign::NonNegative | Sign::Zero => first,
             Sign::Negative | Sign::NonPositive => first.negative(),
             Sign::Unknown => {
-                let magnitude = first.low.as_ref().zip(first.high.as_ref()).map(|(a, b)| a.abs().max(b.abs()));
+                let magnitude =
+                    first.low.as_ref().zip(first.high.as_ref()).map(|(a, b)| a.abs().max(b.abs()));
                 Interval { low: Some(Rational::from(0)), high: magnitude }
             }
         },

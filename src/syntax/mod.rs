@@ -1,1 +1,3 @@
-//! The language's tree.
+//! The front end of the model language: text → tree with spans.
+
+pub mod tree;

@@ -1,0 +1,1 @@
+//! Diagnostics for people, as text.
