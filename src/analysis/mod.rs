@@ -1,1 +1,4 @@
-//! What follows from a scheme.
+//! What follows from a scheme: symbols, stability regions, the law of the step limit. Never fails: not knowing is a finding.
+
+pub mod spectrum;
+pub mod symbol;
