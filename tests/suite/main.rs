@@ -1,4 +1,5 @@
 //! The one test binary.
 
 mod exactness;
+mod limits;
 mod published;
