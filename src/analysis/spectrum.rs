@@ -68,7 +68,7 @@ pub fn symmetric_eigenvalues(rows: &[Vec<f64>]) -> Result<Vec<f64>, NotConverged
 /// part, and unlike eigenvalues a bound of growth at every time (the numerical abscissa in that norm).
 pub fn energy_growth(rows: &[Vec<f64>], weights: &[f64]) -> Result<f64, NotConverged> {
     let size = rows.len();
-    if weights.len() != size || !is_sound(rows) || weights.iter().any(|weight| !(*weight > 0.0)) {
+    if weights.len() != size || !is_sound(rows) || !weights.iter().all(|weight| *weight > 0.0) {
         return Err(NotConverged { size });
     }
     // H^{1/2} A H^{-1/2}, its symmetric part.

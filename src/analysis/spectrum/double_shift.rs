@@ -124,8 +124,8 @@ fn sweep(matrix: &mut DMatrix<f64>, start: usize, end: usize, shifts: Shifts) {
             // The entries below are negligible products here; only the sign of the kept one changes.
             matrix[(row, row - 1)] = -matrix[(row, row - 1)];
         }
-        reflection.from_left(matrix, row, height, end);
-        reflection.from_right(matrix, row, height, start..(row + 4).min(end));
+        reflection.on_rows(matrix, row, height, end);
+        reflection.on_columns(matrix, row, height, start..(row + 4).min(end));
     }
 }
 
@@ -171,7 +171,7 @@ impl Reflection {
     }
 
     /// On rows row … row + height − 1, columns from `row` to `end`.
-    fn from_left(&self, matrix: &mut DMatrix<f64>, row: usize, height: usize, end: usize) {
+    fn on_rows(&self, matrix: &mut DMatrix<f64>, row: usize, height: usize, end: usize) {
         for column in row..end {
             let mut entries = matrix.column_mut(column);
             if height == 3 {
@@ -189,7 +189,7 @@ impl Reflection {
     }
 
     /// On columns column … column + width − 1, the given rows.
-    fn from_right(
+    fn on_columns(
         &self,
         matrix: &mut DMatrix<f64>,
         column: usize,
