@@ -575,3 +575,39 @@ fn what_cannot_be_built_is_said() {
     assert!(matches!(short, Err(ClosedFault::TooFewNodes { .. })));
     assert!(varying_diffusion(second(2), &[], face_pair(FaceCondition::Flux)).is_err());
 }
+
+/// Limits of the interior alone, c dt/h and dt/h² on periodic axes (reference computation), and those published for the classical
+/// method of four stages with central differences of orders 2 and 4 (Strikwerda 2004, from memory).
+#[test]
+fn limits_of_interiors() {
+    let advection = [
+        (2, [1.7320508098783, 2.8284271251439, 3.3407179867242]),
+        (4, [1.2622236584633, 2.0612026005443, 2.4345320905415]),
+        (6, [1.0921026215534, 1.7833961109141, 2.1064086863760]),
+        (8, [1.0008395461390, 1.6343641330102, 1.9303837130773]),
+    ];
+    for (order, limits) in advection {
+        for (method, limit) in RUNGE_KUTTA.into_iter().zip(limits) {
+            let found = extents(method).imaginary / symbol::radius(1, order);
+            // The reference samples angles, which misses the largest symbol by a little.
+            agree(found, limit, 1e-6, &format!("advection, {order}, {method:?}"));
+            assert!(found <= limit, "rounded to the safe side: {order}, {method:?}");
+        }
+    }
+    let diffusion = [
+        (2, [0.5000000002500, 0.6281863318066, 0.6963233910171, 1.1641892666889]),
+        (4, [0.3750000001875, 0.4711397488550, 0.5222425432629, 0.8731419500167]),
+        (6, [0.3308823531066, 0.4157115431073, 0.4608022440555, 0.7704193676618]),
+        (8, [0.3076171876539, 0.3864818252326, 0.4284020862703, 0.7162492558730]),
+    ];
+    for (order, limits) in diffusion {
+        let methods = [Method::Euler, Method::Ssprk3, Method::Rk4, Method::Lsrk4];
+        for (method, limit) in methods.into_iter().zip(limits) {
+            let found = extents(method).real / symbol::radius(2, order);
+            agree(found, limit, PARTS, &format!("diffusion, {order}, {method:?}"));
+        }
+    }
+    let classical = |order| extents(Method::Rk4).imaginary / symbol::radius(1, order);
+    agree(classical(2), 2.82842712474619, 1e-11, "order 2");
+    agree(classical(4), 2.06120231739147, 1e-11, "order 4");
+}
