@@ -113,6 +113,27 @@ pub fn closed_wave_limit(method: Method, wave: &ClosedWave) -> Result<f64, NotCo
     }
 }
 
+/// Angles at which a symbol is sampled.
+const ANGLES: usize = 720;
+
+/// Σ w_k e^{ikθ} over the angles of the upper half circle, the weights on consecutive offsets from `first` on: the eigenvalues of the
+/// interior alone, conjugates left out.
+///
+/// Where closed rows are far from normal (dissipation, one-sided weights), powers of one step grow by factors that rise
+/// exponentially with the number of nodes although every eigenvalue of the closed operator is in the region: the step limit is
+/// the lesser of that of this list and that of the closed eigenvalues.
+pub fn interior_symbol(first: i64, weights: &[f64]) -> Vec<Eigenvalue> {
+    (0..=ANGLES)
+        .map(|index| {
+            let angle = std::f64::consts::PI * index as f64 / ANGLES as f64;
+            (first..).zip(weights).fold((0.0, 0.0), |(re, im), (offset, weight)| {
+                let phase = angle * offset as f64;
+                (re + weight * phase.cos(), im + weight * phase.sin())
+            })
+        })
+        .collect()
+}
+
 /// u_t = −u_x on [0, 1] with this inflow at 0 and nothing at 1, for an operator that integrates by parts.
 pub fn advection(first: &SummationByParts, intervals: usize, inflow: Inflow) -> Result<Rows, ClosedFault> {
     let Inflow::Flux { strength } = inflow else {

@@ -7,13 +7,13 @@ use std::sync::OnceLock;
 
 use rimstone::analysis::closed::{
     ClosedFault, FaceCondition, Inflow, WaveFace, acoustics, advection, closed_limit, closed_wave_limit,
-    dense, diffusion, examine, injected_advection, varying_diffusion, wave,
+    dense, diffusion, examine, injected_advection, interior_symbol, varying_diffusion, wave,
 };
 use rimstone::analysis::spectrum::{self, Rows, eigenvalues, energy_growth};
 use rimstone::analysis::stability::{extents, one_step_limit, second_order_growth, second_order_limit};
 use rimstone::analysis::symbol;
 use rimstone::discretize::{closure, interior};
-use rimstone::exact::{Rational, round};
+use rimstone::exact::{Rational, binomial, round};
 use rimstone::model::Method;
 use rimstone::scheme::{ClosedRow, DifferenceOperator, SecondDerivativeForm, SummationByParts};
 
@@ -610,4 +610,37 @@ fn limits_of_interiors() {
     let classical = |order| extents(Method::Rk4).imaginary / symbol::radius(1, order);
     agree(classical(2), 2.82842712474619, 1e-11, "order 2");
     agree(classical(4), 2.06120231739147, 1e-11, "order 4");
+}
+
+/// Advection with dissipation sin²ᵏ(θ/2), k = order/2 + 1: limits of the interior symbol (reference computation, four digits), on
+/// both sides of the limits without.
+#[test]
+fn limits_of_dissipative_symbols() {
+    let known = [
+        (2, [2.313, 2.529, 3.036]),
+        (4, [1.590, 2.043, 2.355]),
+        (6, [1.330, 1.847, 2.098]),
+        (8, [1.191, 1.697, 1.947]),
+    ];
+    for (order, limits) in known {
+        let half = order / 2;
+        // −4⁻ᵏ Δᵏ against its mirror image: weights −4⁻ᵏ (−1)ʲ C(2k, k + j).
+        let reach = half + 1;
+        let damping = |offset: usize| {
+            let sign = if offset % 2 == 0 { -1.0 } else { 1.0 };
+            sign * round::nearest(&binomial(2 * reach, reach + offset)) / 4.0_f64.powi(reach as i32)
+        };
+        let centred = interior::centred(1, order).expect("centred weights exist");
+        let weights: Vec<f64> = (0..=2 * reach)
+            .map(|index| {
+                let transport = index.checked_sub(1).and_then(|inner| centred.weights().get(inner));
+                damping(index.abs_diff(reach)) - transport.map_or(0.0, round::nearest)
+            })
+            .collect();
+        let symbol = interior_symbol(-(reach as i64), &weights);
+        for (method, limit) in RUNGE_KUTTA.into_iter().zip(limits) {
+            let found = one_step_limit(&symbol, method);
+            assert!((found - limit).abs() < 1.1e-3, "{order} {method:?}: {found} instead of {limit}");
+        }
+    }
 }
