@@ -627,7 +627,7 @@ fn limits_of_dissipative_symbols() {
         // −4⁻ᵏ Δᵏ against its mirror image: weights −4⁻ᵏ (−1)ʲ C(2k, k + j).
         let reach = half + 1;
         let damping = |offset: usize| {
-            let sign = if offset % 2 == 0 { -1.0 } else { 1.0 };
+            let sign = if offset.is_multiple_of(2) { -1.0 } else { 1.0 };
             sign * round::nearest(&binomial(2 * reach, reach + offset)) / 4.0_f64.powi(reach as i32)
         };
         let centred = interior::centred(1, order).expect("centred weights exist");
