@@ -1,10 +1,22 @@
-//! Stability regions of the explicit one-step methods: how far they reach along the axes, and how much of the triangle between they hold.
+//! Stability regions of the explicit methods: how far they reach along the axes, how much of the triangle between they hold, and the
+//! longest step for a list of eigenvalues.
+//!
+//! Extents are proved: polynomials of rationals, roots counted by Sturm chains. Limits for eigenvalues are doubles, as those are.
+//! Which eigenvalues a scheme has is said in [`super::closed`] and [`super::symbol`].
 
+mod edges;
+mod roots;
+#[cfg(test)]
+mod tests;
+
+use std::sync::OnceLock;
+
+use super::spectrum::{self, Eigenvalue};
 use crate::exact::{Rational, factorial, round};
 use crate::model::Method;
-use crate::scheme::step_rule;
+use crate::scheme::step_rule::{Accuracy, StepRule};
 
-/// Extents of a region |R(z)| ≤ 1, rounded to the safe side.
+/// Extents of a region |R(z)| ≤ 1, rounded down to twelve digits.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct Extents {
     /// The region holds [−real, 0].
@@ -15,144 +27,205 @@ pub struct Extents {
     pub combined: f64,
 }
 
-/// The extents of a method's region. Leapfrog has none of its own here (its limit for u_tt is 2/√ρ): all zero.
+/// The extents of a method's region, derived once. Leapfrog has no region of its own here (its limit for u_tt is 2/√ρ): zero.
 pub fn extents(method: Method) -> Extents {
-    let Some(polynomial) = polynomial(method) else {
+    static KNOWN: PerMethod<Extents> = [const { OnceLock::new() }; Method::ALL.len()];
+    *KNOWN[place(method)].get_or_init(|| derive(method))
+}
+
+/// What is derived once for each method.
+type PerMethod<T> = [OnceLock<T>; Method::ALL.len()];
+
+/// The place of a method in the list of all; were one missing from it, it would share the first place, which the test on the list
+/// excludes.
+fn place(method: Method) -> usize {
+    Method::ALL.iter().position(|(known, _)| *known == method).unwrap_or(0)
+}
+
+/// The factor by which the triangle with corners ±iβᵢ and −βᵣ must be shrunk to lie in the region; 1 where it lies in it.
+pub fn combined_factor(method: Method) -> f64 {
+    extents(method).combined
+}
+
+fn derive(method: Method) -> Extents {
+    let Some(polynomial) = nominal_polynomial(method) else {
         return Extents { real: 0.0, imaginary: 0.0, combined: 1.0 };
     };
-    let coefficients: Vec<f64> = polynomial.iter().map(round::nearest).collect();
-    let real = reach(&coefficients, (-1.0, 0.0));
-    let imaginary = reach(&coefficients, (0.0, 1.0));
-    Extents { real, imaginary, combined: combined(&coefficients, real, imaginary) }
+    let real = roots::first_exit(&edges::along_negative_real(&polynomial));
+    let imaginary = roots::first_exit(&edges::along_imaginary(&polynomial));
+    let combined =
+        if imaginary.is_zero() { Rational::one() } else { shrinking(&polynomial, &real, &imaginary) };
+    Extents {
+        real: round::nearest(&real),
+        imaginary: round::nearest(&imaginary),
+        combined: round::nearest(&combined),
+    }
 }
 
-/// R(z) by ascending powers, exact from the method's coefficients.
+/// R(z) by ascending powers, exact from the method's coefficients; nothing for leapfrog.
 pub fn polynomial(method: Method) -> Option<Vec<Rational>> {
-    let taylor = |degree: usize| {
-        (0..=degree).map(|power| factorial(power).recip().unwrap_or_else(Rational::zero)).collect::<Vec<_>>()
+    Some(StepRule::of(method)?.stability_polynomial())
+}
+
+/// R(z) as the method was meant: where published rationals meet 1/k! to their tolerance they are taken as 1/k!, the rest rounded to
+/// 2⁻¹⁰⁰. Without that, an excess of 10⁻²⁶ would count as leaving the region at the origin.
+fn nominal_polynomial(method: Method) -> Option<Vec<Rational>> {
+    let rule = StepRule::of(method)?;
+    let exact = rule.stability_polynomial();
+    let Accuracy::Published { .. } = rule.accuracy() else { return Some(exact) };
+    let grid = Rational::from(2).power(100);
+    let nominal = exact.iter().enumerate().map(|(power, coefficient)| match factorial(power).recip() {
+        Some(taylor) if power <= rule.order() => taylor,
+        _ => (coefficient * &grid).rounded() / &grid,
+    });
+    Some(nominal.collect())
+}
+
+/// The largest factor, to six digits and rounded down, by which the triangle fits. |R| has its maximum over a triangle on the
+/// triangle's edge (it is subharmonic), the part on the imaginary axis is inside, the two others mirror each other. A smaller
+/// triangle lies within a larger one, so bisection finds the largest.
+fn shrinking(polynomial: &[Rational], real: &Rational, imaginary: &Rational) -> Rational {
+    let fits = |factor: &Rational| {
+        let edge = edges::along_slanted(polynomial, &(factor * real), &(factor * imaginary));
+        roots::never_positive_on_unit_interval(&edge)
     };
-    match method {
-        Method::Euler => Some(taylor(1)),
-        Method::Ssprk3 => Some(taylor(3)),
-        Method::Rk4 => Some(taylor(4)),
-        Method::Lsrk4 => Some(low_storage_polynomial()),
-        Method::Leapfrog => None,
+    if fits(&Rational::one()) {
+        return Rational::one();
     }
+    let million = 1_000_000;
+    let (mut low, mut high) = (0, million);
+    while high - low > 1 {
+        let middle = i64::midpoint(low, high);
+        if fits(&Rational::ratio(middle, million)) { low = middle } else { high = middle }
+    }
+    Rational::ratio(low, million)
 }
 
-/// k ← a k + z u, u ← u + b k on polynomials in z.
-fn low_storage_polynomial() -> Vec<Rational> {
-    let rule = step_rule::carpenter_kennedy();
-    let stages = rule.a.len();
-    let mut u = vec![Rational::zero(); stages + 1];
-    u[0] = Rational::one();
-    let mut k = vec![Rational::zero(); stages + 1];
-    for stage in 0..stages {
-        let mut next: Vec<Rational> = k.iter().map(|value| value * &rule.a[stage]).collect();
-        for power in 0..stages {
-            next[power + 1] = &next[power + 1] + &u[power];
+/// Relative size below which real parts of computed eigenvalues are taken for nought, and whole eigenvalues for the zero of a mode
+/// that stays.
+const SPECTRAL_NOISE: f64 = 1e-10;
+/// What |R| may exceed one by: rounding of the polynomial near the origin is not growth.
+const ROUNDING: f64 = 1e-12;
+/// Regions are scanned along rays in steps of this.
+const SCAN: f64 = 1.0 / 64.0;
+/// No region of a method here reaches this far.
+const FARTHEST: f64 = 64.0;
+
+/// |R(z)| for z = (real, imaginary).
+pub fn amplification(method: Method, z: (f64, f64)) -> Option<f64> {
+    Some(Region::of(method)?.amplification(z))
+}
+
+/// Whether |R(z)| ≤ 1, to rounding; nothing for leapfrog.
+pub fn contains(method: Method, z: (f64, f64)) -> Option<bool> {
+    Some(Region::of(method)?.contains(z))
+}
+
+/// The longest step dt for u' = A u with these eigenvalues: dt λ is in the region for every λ, and for all shorter steps too.
+/// Zero where some mode grows or the region has nothing of the axis on which modes lie; infinite where all modes stay. Leapfrog is
+/// no method for u' = A u: zero.
+///
+/// Real parts within 10⁻¹⁰ of the spectral radius count as nought. For a matrix far from normal (dissipation or one-sided weights
+/// near a wall) eigenvalues alone are no step limit: take the least of this and the limit of the interior symbol.
+pub fn one_step_limit(eigenvalues: &[Eigenvalue], method: Method) -> f64 {
+    let Some(region) = Region::of(method) else { return 0.0 };
+    let noise = SPECTRAL_NOISE * spectrum::radius(eigenvalues);
+    let mut limit = f64::INFINITY;
+    for (re, im) in eigenvalues {
+        let re = if re.abs() <= noise { 0.0 } else { *re };
+        let size = re.hypot(*im);
+        if size <= noise {
+            continue;
         }
-        k = next;
-        for power in 0..=stages {
-            u[power] = &u[power] + &(&rule.b[stage] * &k[power]);
+        if re > 0.0 || !size.is_finite() {
+            return 0.0;
         }
+        // The conjugate has the same limit.
+        let reach = region.reach(re / size, im.abs() / size);
+        limit = limit.min(reach / size);
     }
-    u
+    limit
 }
 
-fn magnitude(coefficients: &[f64], z: (f64, f64)) -> f64 {
-    let mut value = (0.0, 0.0);
-    for coefficient in coefficients.iter().rev() {
-        value = (value.0 * z.0 - value.1 * z.1 + coefficient, value.0 * z.1 + value.1 * z.0);
+/// The longest step for u_tt = L u with these eigenvalues of L: 2/√ρ for leapfrog, else that of the system (u, u_t) with
+/// eigenvalues ±√λ. Zero where an eigenvalue of L is positive or complex, for then some mode grows.
+pub fn second_order_limit(eigenvalues: &[Eigenvalue], method: Method) -> f64 {
+    let radius = spectrum::radius(eigenvalues);
+    if radius == 0.0 {
+        return f64::INFINITY;
     }
-    value.0.hypot(value.1)
-}
-
-/// Rounding of the polynomial near the origin is not growth.
-const ROUNDING: f64 = 1e-13;
-
-fn inside(coefficients: &[f64], z: (f64, f64)) -> bool {
-    magnitude(coefficients, z) <= 1.0 + ROUNDING
-}
-
-/// How far the ray from the origin stays inside, scanned and then bisected; rounded down.
-fn reach(coefficients: &[f64], direction: (f64, f64)) -> f64 {
-    let at = |length: f64| (direction.0 * length, direction.1 * length);
-    let step = 1.0 / 256.0;
-    let mut low = 0.0;
-    while low < 64.0 && inside(coefficients, at(low + step)) {
-        low += step;
-    }
-    // Forward Euler leaves the region at once along the imaginary axis: |1 + iy|² = 1 + y².
-    if low == 0.0 && !inside(coefficients, at(1e-3)) {
+    if second_order_growth(eigenvalues) > 0.0 || !radius.is_finite() {
         return 0.0;
     }
-    let mut high = low + step;
-    for _ in 0..80 {
-        let middle = 0.5 * (low + high);
-        if inside(coefficients, at(middle)) { low = middle } else { high = middle }
+    match method {
+        Method::Leapfrog => 2.0 / radius.sqrt(),
+        _ => one_step_limit(&[(0.0, radius.sqrt())], method),
     }
-    low * (1.0 - 1e-12)
 }
 
-/// The largest factor by which the triangle fits, by scanning its upper edge (the region is symmetric).
-fn combined(coefficients: &[f64], real: f64, imaginary: f64) -> f64 {
-    if imaginary <= 0.0 {
-        return 1.0;
-    }
-    let samples = 2000;
-    let edge = (0..=samples).map(|index| {
-        let share = f64::from(index) / f64::from(samples);
-        (-real * share, imaginary * (1.0 - share))
-    });
-    let fits = |factor: f64| {
-        edge.clone().all(|(x, y)| {
-            // Every point between the origin and the edge, not only the edge.
-            (1..=20).all(|part| {
-                let scale = factor * f64::from(part) / 20.0;
-                inside(coefficients, (x * scale, y * scale))
-            })
+/// Relative size of what rounding makes of a real, possibly double, eigenvalue of L.
+const DOUBLE_NOISE: f64 = 1e-8;
+
+/// The growth rate of u_tt = L u: the largest real part of ±√λ. Eigenvalues nought or negative and real within 10⁻⁸ of the spectral
+/// radius do not grow.
+pub fn second_order_growth(eigenvalues: &[Eigenvalue]) -> f64 {
+    let noise = DOUBLE_NOISE * spectrum::radius(eigenvalues);
+    eigenvalues
+        .iter()
+        .filter(|(re, im)| *re > noise || im.abs() > noise)
+        .map(|(re, im)| {
+            // Re √λ = √((|λ| + Re λ)/2), without cancellation where Re λ < 0.
+            let size = re.hypot(*im);
+            if *re > 0.0 { ((size + re) / 2.0).sqrt() } else { im.abs() / (2.0 * (size - re)).sqrt() }
         })
-    };
-    if fits(1.0) {
-        return 1.0;
-    }
-    let (mut low, mut high) = (0.0, 1.0);
-    for _ in 0..40 {
-        let middle = 0.5 * (low + high);
-        if fits(middle) { low = middle } else { high = middle }
-    }
-    low
+        .fold(0.0, f64::max)
 }
 
-#[cfg(test)]
-mod tests {
-    use super::*;
+/// A region |R(z)| ≤ 1 in doubles.
+struct Region {
+    coefficients: Vec<f64>,
+}
 
-    /// Extents of the classical methods (Hairer & Wanner 1996, IV.2, from memory; 2√2 and √3 are exact).
-    #[test]
-    fn extents_meet_known_values() {
-        let close = |value: f64, known: f64| {
-            assert!((value - known).abs() < 1e-9 && value <= known, "{value} {known}")
+impl Region {
+    fn of(method: Method) -> Option<&'static Region> {
+        static KNOWN: PerMethod<Option<Region>> = [const { OnceLock::new() }; Method::ALL.len()];
+        let derive = || {
+            let coefficients = nominal_polynomial(method)?.iter().map(round::nearest).collect();
+            Some(Region { coefficients })
         };
-        close(extents(Method::Euler).real, 2.0);
-        assert!(extents(Method::Euler).imaginary == 0.0);
-        close(extents(Method::Ssprk3).imaginary, 3.0_f64.sqrt());
-        close(extents(Method::Ssprk3).real, 2.512_745_326_618_33);
-        close(extents(Method::Rk4).imaginary, 8.0_f64.sqrt());
-        close(extents(Method::Rk4).real, 2.785_293_563_405_29);
+        KNOWN[place(method)].get_or_init(derive).as_ref()
     }
 
-    /// 1 + z + z²/2 + z³/6 + z⁴/24 + 0.005 z⁵ to the digits of the published coefficients; limits of the table of step limits.
-    #[test]
-    fn low_storage_polynomial_is_of_fourth_order() {
-        let polynomial = polynomial(Method::Lsrk4).expect("explicit");
-        for (power, coefficient) in polynomial.iter().enumerate().take(5) {
-            let wanted = factorial(power).recip().expect("not zero");
-            assert!(round::nearest(&(coefficient - &wanted)).abs() < 1e-12, "power {power}");
+    fn amplification(&self, (x, y): (f64, f64)) -> f64 {
+        let (mut re, mut im) = (0.0, 0.0);
+        for coefficient in self.coefficients.iter().rev() {
+            (re, im) = (re * x - im * y + coefficient, re * y + im * x);
         }
-        assert!((round::nearest(&polynomial[5]) - 0.005).abs() < 1e-4);
-        assert!((extents(Method::Lsrk4).imaginary - 3.340_717_986_724_18).abs() < 1e-6);
-        assert!((extents(Method::Lsrk4).real - 4.0 * 1.164_189_266_688_828).abs() < 1e-5);
+        f64::hypot(re, im)
+    }
+
+    fn contains(&self, z: (f64, f64)) -> bool {
+        self.amplification(z) <= 1.0 + ROUNDING
+    }
+
+    /// How far the ray from the origin in this direction (a unit vector, its real part not positive) stays inside, rounded down.
+    fn reach(&self, x: f64, y: f64) -> f64 {
+        let inside = |length: f64| self.contains((x * length, y * length));
+        let mut low = 0.0;
+        while low < FARTHEST && inside(low + SCAN) {
+            low += SCAN;
+        }
+        let mut high = low + SCAN;
+        while high - low > 1e-13 * high && high > 1e-9 {
+            let middle = 0.5 * (low + high);
+            if inside(middle) { low = middle } else { high = middle }
+        }
+        // Forward Euler along the imaginary axis: |R|² = 1 + y² is within rounding of one below 10⁻⁶.
+        let least = 4.0 * ROUNDING.sqrt();
+        if low <= least && self.amplification((x * least, y * least)) > 1.0 {
+            0.0
+        } else {
+            low * (1.0 - 1e-12)
+        }
     }
 }
