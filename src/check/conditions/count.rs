@@ -146,7 +146,7 @@ fn patches(model: &Model, face: Face, need: &Need, own: &[&Placed]) -> Option<Di
 }
 
 /// Nodes of a face, thinned out where there are many; the ends are among them.
-pub(super) fn points_of_face(model: &Model, face: Face) -> Vec<Point> {
+pub(in crate::check) fn points_of_face(model: &Model, face: Face) -> Vec<Point> {
     let mut points: Vec<Vec<f64>> = vec![Vec::new()];
     for axis in (0..model.axes.len()).map(AxisId) {
         let Some(all) = nodes(model, axis) else { return Vec::new() };
@@ -172,7 +172,7 @@ pub(super) fn points_of_face(model: &Model, face: Face) -> Vec<Point> {
 }
 
 /// A node in the middle of a face, at the start.
-pub(super) fn middle_of_face(model: &Model, face: Face) -> Point {
+pub(in crate::check) fn middle_of_face(model: &Model, face: Face) -> Point {
     let points = points_of_face(model, face);
     let middle = points.len() / 2;
     points.into_iter().nth(middle).unwrap_or_default()

@@ -14,6 +14,7 @@ pub use super::raw::RawCondition;
 use crate::diagnostic::{Diagnostic, Diagnostics, codes_conditions as codes};
 use crate::model::{AxisId, Condition, Face, FaceRelation, Model, Side, Treatment};
 use count::Placed;
+pub(super) use count::{middle_of_face, points_of_face};
 use kind::Kind;
 use need::Need;
 
