@@ -34,7 +34,9 @@ pub fn assemble(model: &Model) -> Result<Scheme, Vec<NotAvailable>> {
     }
     let corrections = face::corrections(model, &plans);
     let injections = face::injections(model);
-    let least: Vec<usize> = (0..model.axes.len()).map(|axis| assembly.least_nodes(AxisId(axis))).collect();
+    let interpolation = plans.iter().map(|plan| interpolation_nodes(plan.solution_order)).max().unwrap_or(2);
+    let least: Vec<usize> =
+        (0..model.axes.len()).map(|axis| assembly.least_nodes(AxisId(axis)).max(interpolation)).collect();
     let Assembly { operators, applications, choices, .. } = assembly;
     let axes = plans
         .into_iter()
@@ -46,7 +48,17 @@ pub fn assemble(model: &Model) -> Result<Scheme, Vec<NotAvailable>> {
             solution_order: plan.solution_order,
         })
         .collect();
-    Ok(Scheme { axes, operators, applications, rates, outputs, corrections, injections, choices })
+    Ok(Scheme {
+        axes,
+        interpolation_nodes: interpolation,
+        operators,
+        applications,
+        rates,
+        outputs,
+        corrections,
+        injections,
+        choices,
+    })
 }
 
 /// Operators and applications found so far.
@@ -210,10 +222,11 @@ impl Assembly<'_> {
 
     fn least_nodes(&self, axis: AxisId) -> usize {
         let used = self.applications.iter().filter(|application| application.axis == axis);
+        let norm = self.plans[axis.0].norm.map_or(0, |norm| 2 * norm.left().len());
         used.map(|application| self.operators[application.operator].rule.least_nodes())
             .max()
-            .unwrap_or(1)
-            .max(if self.model.axes[axis.0].periodic { 1 } else { 2 })
+            .unwrap_or(2)
+            .max(norm)
     }
 }
 
@@ -231,6 +244,11 @@ fn observed(value: &Expression) -> Expression {
         };
         first(coefficient.clone().times(first(of.clone())))
     })
+}
+
+/// An even number of nodes, two more than the order of the solution: the error of a gauge between nodes stays below the solution's.
+fn interpolation_nodes(solution_order: usize) -> usize {
+    solution_order.div_ceil(2) * 2 + 2
 }
 
 /// 1/spacingᵈ.

@@ -8,7 +8,7 @@
 
 use super::choose::AxisPlan;
 use crate::exact::Rational;
-use crate::model::calculus::{Variable, derivative_terms, partial};
+use crate::model::calculus::{Variable, dependence, derivative_terms, partial};
 use crate::model::characteristics::{Block, Entering, blocks, entering, mean_and_root, outward};
 use crate::model::expression::DerivativeKind;
 use crate::model::{Condition, Expression, Face, FaceRelation, FieldId, Model, Side, Treatment};
@@ -30,6 +30,7 @@ pub(super) fn corrections(model: &Model, plans: &[AxisPlan]) -> Vec<Correction> 
             Treatment::Flux { field, normal_derivative } => {
                 flux(model, condition.face, *field, normal_derivative)
             }
+            Treatment::Upwind { .. } if moving_inflow(model, condition).is_some() => Vec::new(),
             Treatment::Upwind { relations } => upwind(model, condition.face, relations),
             Treatment::InflowValue { field, value } => inflow(model, condition.face, *field, value),
         };
@@ -47,10 +48,10 @@ pub(super) fn corrections(model: &Model, plans: &[AxisPlan]) -> Vec<Correction> 
 
 /// All settings of values, in the order of the conditions.
 pub(super) fn injections(model: &Model) -> Vec<Injection> {
-    model.conditions.iter().filter_map(injection).collect()
+    model.conditions.iter().filter_map(|condition| injection(model, condition)).collect()
 }
 
-fn injection(condition: &Condition) -> Option<Injection> {
+fn injection(model: &Model, condition: &Condition) -> Option<Injection> {
     match &condition.treatment {
         Treatment::Value { field, value, rate, second_rate } => Some(Injection {
             face: condition.face,
@@ -60,8 +61,33 @@ fn injection(condition: &Condition) -> Option<Injection> {
             rate: rate.clone(),
             second_rate: second_rate.clone(),
         }),
+        Treatment::Upwind { .. } => moving_inflow(model, condition),
         _ => None,
     }
+}
+
+/// The value of a single transported field whose data move in time, where they can be differentiated: set rather than replaced as a
+/// flux. Both are stable (−a u_N² against −a u_N² − a u_0² in the energy rate), but only a value that is advanced by its own
+/// derivative keeps the order of a Runge–Kutta method of order four.
+fn moving_inflow(model: &Model, condition: &Condition) -> Option<Injection> {
+    let Treatment::Upwind { relations } = &condition.treatment else { return None };
+    let [relation] = relations.as_slice() else { return None };
+    let [(field, weight)] = relation.coefficients.as_slice() else { return None };
+    let alone = blocks(model, condition.face.axis)?.iter().any(|block| block.fields == [*field]);
+    let value = relation.data.clone().over(weight.clone());
+    if !alone || !dependence(&value, &model.coefficients).time {
+        return None;
+    }
+    let slope = |of: &Expression| partial(of, Variable::Time, &model.coefficients);
+    let rate = slope(&value)?;
+    Some(Injection {
+        face: condition.face,
+        patch: condition.patch.clone(),
+        field: *field,
+        second_rate: slope(&rate),
+        rate: Some(rate),
+        value,
+    })
 }
 
 fn flux(

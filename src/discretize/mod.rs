@@ -10,6 +10,7 @@ pub mod interior;
 mod split;
 
 pub use assemble::assemble;
+pub mod weights;
 
 pub use closure::{ClosureFault, Impossible};
 pub use interior::{LargestRequest, NodeFamily, WeightsFault};

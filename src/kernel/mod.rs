@@ -35,12 +35,14 @@ pub mod build;
 pub mod interpret;
 pub mod lower;
 pub mod operator;
+pub mod validate;
 
 pub use build::Builder;
 pub use operator::{ClosureRow, ConstantOperator, LineOperator, Parity, VaryingEntry, VaryingOperator};
+pub use validate::{KernelFault, ValidKernel, validate};
 
 use crate::exact::Rational;
-use crate::model::{Function, Relation};
+pub use crate::model::{Function, Relation};
 
 macro_rules! index {
     ($($(#[$doc:meta])* $name:ident;)*) => {$(
@@ -356,4 +358,22 @@ pub enum OutputKind {
     Maximum {
         begin: Vec<Sweep>,
     },
+}
+
+impl Kernel {
+    /// The values that these are made of, themselves included, in graph order.
+    pub fn needed(&self, roots: impl IntoIterator<Item = ValueId>) -> Vec<ValueId> {
+        let mut marked = vec![false; self.values.len()];
+        for root in roots {
+            marked[root.0] = true;
+        }
+        for index in (0..marked.len()).rev() {
+            if marked[index] {
+                for operand in self.values[index].operation.operands() {
+                    marked[operand.0] = true;
+                }
+            }
+        }
+        (0..marked.len()).filter(|index| marked[*index]).map(ValueId).collect()
+    }
 }

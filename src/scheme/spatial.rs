@@ -12,6 +12,8 @@ use std::sync::Arc;
 #[derive(Clone, Debug)]
 pub struct Scheme {
     pub axes: Vec<SchemeAxis>,
+    /// Nodes along each axis that a value between nodes is interpolated from.
+    pub interpolation_nodes: usize,
     pub operators: Vec<SchemeOperator>,
     pub applications: Vec<Application>,
     /// The explicit right side for each field, with `Applied` in the place of derivatives.
@@ -124,6 +126,7 @@ impl Scheme {
     pub fn empty() -> Scheme {
         Scheme {
             axes: Vec::new(),
+            interpolation_nodes: 2,
             operators: Vec::new(),
             applications: Vec::new(),
             rates: Vec::new(),

@@ -130,6 +130,7 @@ pub struct Axis {
 
 /// Where the nodes of an axis lie.
 #[derive(Clone, Debug, PartialEq)]
+#[expect(clippy::large_enum_variant, reason = "a file has three axes at most, and nearly all are intervals")]
 pub enum Extent {
     /// `A to B, N nodes` or `N cells`.
     Interval { low: Expression, high: Expression, count: Count },

@@ -18,7 +18,7 @@ impl Lowering<'_> {
     }
 
     fn output(&mut self, output: &model::Output, value: &Expression, present: &Binding) -> Output {
-        let fixed = Binding { field: Vec::new(), rate: Vec::new(), applied: Vec::new() };
+        let fixed = Binding::fixed();
         let direct = match value {
             Expression::Field(field) => Some(present.field[field.0]),
             _ => None,
