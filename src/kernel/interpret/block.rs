@@ -89,7 +89,12 @@ pub(super) fn block_length(registers: usize) -> usize {
 impl<'a> Desk<'a> {
     pub(super) fn new(program: &Program, written: Vec<&'a mut [f64]>, first: usize) -> Desk<'a> {
         let length = block_length(program.registers);
-        Desk { registers: vec![vec![0.0; length]; program.registers], weight: vec![0.0; length], written, first }
+        Desk {
+            registers: vec![vec![0.0; length]; program.registers],
+            weight: vec![0.0; length],
+            written,
+            first,
+        }
     }
 }
 
@@ -127,7 +132,9 @@ impl Surroundings<'_> {
         match operand {
             Operand::Number(value) => Argument::Number(self.numbers[value]),
             Operand::Register(register) => Argument::Row(&desk.registers[register][..at.length]),
-            Operand::Buffer(buffer) => Argument::Row(&self.buffers[buffer].data[at.start..at.start + at.length]),
+            Operand::Buffer(buffer) => {
+                Argument::Row(&self.buffers[buffer].data[at.start..at.start + at.length])
+            }
             Operand::Written(place) => {
                 let from = at.start - desk.first;
                 Argument::Row(&desk.written[place][from..from + at.length])
@@ -253,7 +260,10 @@ impl Surroundings<'_> {
         let low = edge.clamp(start, end);
         let high = nodes.saturating_sub(edge).clamp(low, end);
         let base = |array: &Array<'_>| {
-            (0..AXES).filter(|axis| *axis != fast).map(|axis| array.strides[axis] * at.index[axis]).sum::<usize>()
+            (0..AXES)
+                .filter(|axis| *axis != fast)
+                .map(|axis| array.strides[axis] * at.index[axis])
+                .sum::<usize>()
         };
         let (f_row, b_row) = (&field.data[base(&field)..], &coefficient.data[base(&coefficient)..]);
         let (f_step, b_step) = (field.strides[fast], coefficient.strides[fast]);
@@ -272,7 +282,15 @@ impl Surroundings<'_> {
             let part = |row, step, distance| part(row, step, low, length, distance);
             let f = |distance: isize| part(f_row, f_step, distance);
             let b = |distance: isize| part(b_row, b_step, distance);
-            line.nodes(self.vectors, low, nodes, f, b, &mut target[low - start..high - start], &mut weight[..length]);
+            line.nodes(
+                self.vectors,
+                low,
+                nodes,
+                f,
+                b,
+                &mut target[low - start..high - start],
+                &mut weight[..length],
+            );
         }
     }
 
@@ -301,7 +319,11 @@ impl Surroundings<'_> {
         }
         for node in 0..here.length {
             let value = |operand: Operand| self.argument(operand, desk, here).at(node);
-            if !face.patch.iter().all(|(left, relation, right)| scalar::holds(value(*left), *relation, value(*right))) {
+            if !face
+                .patch
+                .iter()
+                .all(|(left, relation, right)| scalar::holds(value(*left), *relation, value(*right)))
+            {
                 continue;
             }
             for (effect, operand) in &face.effects {

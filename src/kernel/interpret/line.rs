@@ -174,12 +174,14 @@ impl Line {
             }
             (Rule::Constant { low, .. }, Place::Low(at)) => {
                 let (first, weights) = &low[at];
-                let terms = weights.iter().enumerate().map(|(j, weight)| (*weight, slice(f(distance(first + j)))));
+                let terms =
+                    weights.iter().enumerate().map(|(j, weight)| (*weight, slice(f(distance(first + j)))));
                 linear(vectors, terms, target);
             }
             (Rule::Constant { high, .. }, Place::High(at)) => {
                 let (first, weights) = &high[at];
-                let terms = weights.iter().enumerate().map(|(j, weight)| (*weight, slice(f(distance(first + j)))));
+                let terms =
+                    weights.iter().enumerate().map(|(j, weight)| (*weight, slice(f(distance(first + j)))));
                 linear(vectors, terms, target);
             }
             (Rule::Varying { forms, .. }, Place::Inside) => {
@@ -214,7 +216,10 @@ impl Rule {
         let Rule::Varying { forms, .. } = self else { return 0 };
         let reach = |(index, form): (usize, &Vec<(isize, f64)>)| {
             let s = index as isize + 1;
-            form.iter().map(|(offset, _)| offset.unsigned_abs().max((offset - s).unsigned_abs())).max().unwrap_or(0)
+            form.iter()
+                .map(|(offset, _)| offset.unsigned_abs().max((offset - s).unsigned_abs()))
+                .max()
+                .unwrap_or(0)
         };
         forms.iter().enumerate().map(reach).max().unwrap_or(0)
     }

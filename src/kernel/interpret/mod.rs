@@ -11,7 +11,7 @@ mod row;
 mod scalar;
 mod traverse;
 
-use super::{BufferId, Kernel, OutputKind, Pass, Stage, Step, Sweep};
+use super::{BufferId, Kernel, OutputKind, Pass, Stage, Step, Sweep, ValidKernel};
 use crate::exact::round::nearest;
 use block::{AXES, Array, Grid, Surroundings};
 use line::Line;
@@ -21,7 +21,7 @@ use row::Vectors;
 
 /// A kernel made ready to run. Indices are those of the kernel, values in SI, times in seconds.
 pub struct Executor {
-    kernel: Kernel,
+    kernel: ValidKernel,
     plan: Plan,
     numbers: Numbers,
     memory: Memory,
@@ -76,7 +76,8 @@ fn compile_stages(kernel: &Kernel, stages: &[Stage]) -> Vec<CompiledStage> {
 
 impl Plan {
     fn new(kernel: &Kernel) -> Plan {
-        let sweeps = |sweeps: &[Sweep]| sweeps.iter().map(|sweep| Program::sweep(kernel, sweep)).collect::<Vec<_>>();
+        let sweeps =
+            |sweeps: &[Sweep]| sweeps.iter().map(|sweep| Program::sweep(kernel, sweep)).collect::<Vec<_>>();
         let outputs = kernel.outputs.iter().map(|output| {
             let begin = match &output.kind {
                 OutputKind::Maximum { begin } => sweeps(begin),
@@ -120,6 +121,11 @@ impl Memory {
     fn allocate(kernel: &Kernel, numbers: &Numbers, nodes: &[usize]) -> Result<Memory, String> {
         let mut memory = Memory::empty();
         memory.grid.fast = nodes.len() - 1;
+        let points = nodes.iter().try_fold(1usize, |points, nodes| points.checked_mul(*nodes));
+        let points = points.ok_or("not enough memory for so many nodes; ask for fewer with --nodes")?;
+        for _ in &kernel.buffers {
+            memory.buffers.push(zeros(points)?);
+        }
         for (axis, nodes) in nodes.iter().enumerate() {
             memory.grid.sizes[axis] = *nodes;
             memory.periodic[axis] = kernel.axes[axis].periodic;
@@ -129,10 +135,6 @@ impl Memory {
                 *last = high;
             }
             memory.coordinates.push(line);
-        }
-        let points = memory.grid.points();
-        for _ in &kernel.buffers {
-            memory.buffers.push(zeros(points)?);
         }
         Ok(memory)
     }
@@ -152,7 +154,13 @@ impl Memory {
     }
 
     /// Tables are computed once, each on the grid of its own axes.
-    fn fill_tables(&mut self, kernel: &Kernel, plan: &Plan, numbers: &Numbers, threads: usize) -> Result<(), String> {
+    fn fill_tables(
+        &mut self,
+        kernel: &Kernel,
+        plan: &Plan,
+        numbers: &Numbers,
+        threads: usize,
+    ) -> Result<(), String> {
         for (table, program) in kernel.tables.iter().zip(&plan.tables) {
             let has = |axis: usize| axis < kernel.axes.len() && table.axes & (1 << axis) != 0;
             let mut grid = Grid { sizes: [1; AXES], fast: 0 };
@@ -161,14 +169,25 @@ impl Memory {
                 grid.fast = axis;
             }
             let mut data = zeros(grid.points())?;
-            traverse::everywhere(&self.around(&grid, numbers, &plan.lines), program, vec![&mut data], threads);
+            traverse::everywhere(
+                &self.around(&grid, numbers, &plan.lines),
+                program,
+                vec![&mut data],
+                threads,
+            );
             self.tables.push((data, grid.strides(has)));
         }
         Ok(())
     }
 
     /// The buffers that a program writes leave the others while it runs.
-    fn run(&mut self, program: &Program, numbers: &Numbers, lines: &[Line], how: impl FnOnce(&Surroundings<'_>, Vec<&mut [f64]>)) {
+    fn run(
+        &mut self,
+        program: &Program,
+        numbers: &Numbers,
+        lines: &[Line],
+        how: impl FnOnce(&Surroundings<'_>, Vec<&mut [f64]>),
+    ) {
         let mut written: Vec<Vec<f64>> =
             program.written.iter().map(|buffer| std::mem::take(&mut self.buffers[*buffer])).collect();
         how(
@@ -181,13 +200,15 @@ impl Memory {
     }
 
     fn sweep(&mut self, program: &Program, numbers: &Numbers, lines: &[Line], threads: usize) {
-        self.run(program, numbers, lines, |around, written| traverse::everywhere(around, program, written, threads));
+        self.run(program, numbers, lines, |around, written| {
+            traverse::everywhere(around, program, written, threads)
+        });
     }
 }
 
 impl Executor {
     /// Compiles a kernel; nothing is allocated yet.
-    pub fn new(kernel: Kernel) -> Executor {
+    pub fn new(kernel: ValidKernel) -> Executor {
         let (plan, numbers) = (Plan::new(&kernel), Numbers::new(&kernel));
         Executor { kernel, plan, numbers, memory: Memory::empty(), threads: 1, step: 0.0 }
     }
@@ -200,7 +221,12 @@ impl Executor {
     ///
     /// # Errors
     /// Sizes that the operators cannot serve, or too little memory.
-    pub fn prepare(&mut self, nodes: &[usize], parameters: &[Option<f64>], threads: usize) -> Result<(), String> {
+    pub fn prepare(
+        &mut self,
+        nodes: &[usize],
+        parameters: &[Option<f64>],
+        threads: usize,
+    ) -> Result<(), String> {
         let axes = self.kernel.axes.len();
         if nodes.len() != axes || axes == 0 || axes > AXES {
             return Err(format!("the grid has {axes} axes, but {} sizes were given", nodes.len()));
@@ -208,7 +234,10 @@ impl Executor {
         for (axis, nodes) in self.kernel.axes.iter().zip(nodes) {
             let least = axis.least_nodes.max(if axis.periodic { 1 } else { 2 });
             if *nodes < least {
-                return Err(format!("{nodes} nodes along {} are too few: at least {least} are needed", axis.name));
+                return Err(format!(
+                    "{nodes} nodes along {} are too few: at least {least} are needed",
+                    axis.name
+                ));
             }
         }
         self.memory = Memory::empty();
@@ -222,6 +251,11 @@ impl Executor {
     /// A fixed value, after `prepare`.
     pub fn fixed(&self, value: super::ValueId) -> f64 {
         self.numbers.get(value)
+    }
+
+    /// The value in force, SI.
+    pub fn parameter(&self, parameter: usize) -> f64 {
+        self.numbers.parameter(&self.kernel, parameter)
     }
 
     /// Low end, high end, spacing.
@@ -285,7 +319,7 @@ impl Executor {
 
     /// The largest value of the limit's rate over all nodes; NaN when one is.
     pub fn largest_rate(&mut self, time: f64) -> f64 {
-        self.numbers.at(&self.kernel, time, self.step);
+        self.numbers.at(&self.kernel, time, 0.0);
         let around = self.memory.around(&self.memory.grid, &self.numbers, &self.plan.lines);
         traverse::largest(&around, &self.plan.rate, self.threads)
     }

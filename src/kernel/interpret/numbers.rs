@@ -35,6 +35,11 @@ impl Numbers {
         self.values[value.0]
     }
 
+    /// The value in force.
+    pub(super) fn parameter(&self, kernel: &Kernel, parameter: usize) -> f64 {
+        self.given[parameter].unwrap_or_else(|| self.get(kernel.parameters[parameter].default))
+    }
+
     /// Evaluates what is fixed.
     pub(super) fn settle(&mut self, kernel: &Kernel, nodes: &[usize], given: &[Option<f64>]) {
         self.nodes = nodes.to_vec();

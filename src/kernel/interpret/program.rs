@@ -223,7 +223,8 @@ impl<'a> Compiler<'a> {
             };
             return Work::WithProduct(how, self.operand(other), self.operand(x), self.operand(y));
         }
-        let mut binary = |kind: Binary, a: &ValueId, b: &ValueId| Work::Binary(kind, self.operand(*a), self.operand(*b));
+        let mut binary =
+            |kind: Binary, a: &ValueId, b: &ValueId| Work::Binary(kind, self.operand(*a), self.operand(*b));
         match operation {
             Operation::Add(a, b) => binary(Binary::Add, a, b),
             Operation::Subtract(a, b) => binary(Binary::Subtract, a, b),
@@ -266,8 +267,10 @@ impl<'a> Compiler<'a> {
         roots.extend(effects.iter().map(|(_, value)| *value));
         inner.registers = self.registers;
         let mut instructions = inner.compile(&roots);
-        let patch =
-            on.patch.iter().map(|(left, relation, right)| (inner.operand(*left), *relation, inner.operand(*right)));
+        let patch = on
+            .patch
+            .iter()
+            .map(|(left, relation, right)| (inner.operand(*left), *relation, inner.operand(*right)));
         let patch = patch.collect();
         let mut placed = Vec::new();
         for (effect, value) in effects {
@@ -402,7 +405,8 @@ impl Program {
     fn write_directly(&mut self) {
         let mut reads: HashMap<Operand, usize> = HashMap::new();
         let mut count = |operand: Operand| *reads.entry(operand).or_default() += 1;
-        self.instructions().for_each(|instruction| instruction.work.operands().into_iter().for_each(&mut count));
+        self.instructions()
+            .for_each(|instruction| instruction.work.operands().into_iter().for_each(&mut count));
         for face in &self.faces {
             face.patch.iter().flat_map(|(left, _, right)| [*left, *right]).for_each(&mut count);
             face.effects.iter().for_each(|(_, operand)| count(*operand));

@@ -144,7 +144,13 @@ fn map2(target: &mut [f64], a: Argument<'_>, b: Argument<'_>, f: impl Fn(f64, f6
 }
 
 #[inline(always)]
-fn map3(target: &mut [f64], a: Argument<'_>, b: Argument<'_>, c: Argument<'_>, f: impl Fn(f64, f64, f64) -> f64) {
+fn map3(
+    target: &mut [f64],
+    a: Argument<'_>,
+    b: Argument<'_>,
+    c: Argument<'_>,
+    f: impl Fn(f64, f64, f64) -> f64,
+) {
     match (a, b, c) {
         (Argument::Number(a), b, c) => map2(target, b, c, |b, c| f(a, b, c)),
         (a, Argument::Number(b), c) => map2(target, a, c, |a, c| f(a, b, c)),
@@ -325,7 +331,13 @@ fn paired_of<const N: usize>(
 }
 
 #[inline(always)]
-fn scaled_difference_loop(begin: Begin, target: &mut [f64], c: Argument<'_>, a: Argument<'_>, b: Argument<'_>) {
+fn scaled_difference_loop(
+    begin: Begin,
+    target: &mut [f64],
+    c: Argument<'_>,
+    a: Argument<'_>,
+    b: Argument<'_>,
+) {
     match begin {
         Begin::Afresh => map3(target, c, a, b, |c, a, b| c * (a - b)),
         Begin::OnTop => on_top3(target, c, a, b, |t, c, a, b| t + c * (a - b)),

@@ -18,7 +18,9 @@ fn chunks(grid: &Grid, cost: usize, threads: usize) -> Vec<Range<usize>> {
     let unit = if points / row >= 8 * count { row } else { 64.min(points) };
     let units = points.div_ceil(unit);
     (0..count)
-        .map(|chunk| (chunk * units / count * unit).min(points)..((chunk + 1) * units / count * unit).min(points))
+        .map(|chunk| {
+            (chunk * units / count * unit).min(points)..((chunk + 1) * units / count * unit).min(points)
+        })
         .filter(|range| !range.is_empty())
         .collect()
 }
@@ -43,7 +45,12 @@ fn segments(grid: &Grid, range: Range<usize>, longest: usize, mut visit: impl Fn
 }
 
 /// Runs a program at all nodes; `written` are the arrays of its written places.
-pub(super) fn everywhere(around: &Surroundings<'_>, program: &Program, written: Vec<&mut [f64]>, threads: usize) {
+pub(super) fn everywhere(
+    around: &Surroundings<'_>,
+    program: &Program,
+    written: Vec<&mut [f64]>,
+    threads: usize,
+) {
     let longest = block_length(program.registers);
     let work = |range: Range<usize>, written: Vec<&mut [f64]>| {
         let mut desk = Desk::new(program, written, range.start);
