@@ -32,6 +32,7 @@
 //! A **stage** is a list of passes at one time. A **step** is the list of stages, then the swaps of `rotation`.
 
 pub mod build;
+pub mod interpret;
 pub mod lower;
 pub mod operator;
 pub mod validate;

@@ -2,7 +2,7 @@
 
 pub mod build;
 pub mod kernels;
-mod reference;
+pub mod reference;
 mod refused;
 
 use build::{MODEL, compile_c, compile_rust, package, run, unpack};

@@ -6,6 +6,7 @@ mod convergence;
 mod drivers;
 mod emission;
 mod exactness;
+mod executor;
 mod layering;
 mod limits;
 mod lowering;
