@@ -15,7 +15,7 @@ const EXAMPLES: &str = "\
 Examples:
   rimstone run vault_wall.rim --out wall.run                   the model as written
   rimstone run vault_wall.rim --out fine --nodes x=257         a finer grid
-  rimstone run vault_wall.rim --out warm --set k=0.9           another constant, in its unit
+  rimstone run vault_wall.rim --out warm --set h=12            another constant, in its unit
   rimstone run vault_wall.rim --out wall.run --resume          go on after Ctrl-C
   rimstone run vault_wall.rim --target rust --until 3600       an earlier end
 

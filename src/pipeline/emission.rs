@@ -4,6 +4,8 @@ use std::ffi::OsString;
 
 use crate::emit::{self, Form, Language, Program, Provenance, Target};
 use crate::source::SourceFile;
+use crate::verify::driver;
+use crate::verify::in_process::InProcess;
 use crate::verify::run::{self, Ending};
 use crate::verify::toolchain::{self, Compiler, ToolError};
 
@@ -55,9 +57,19 @@ pub fn run(
     let (compiler, language) = match engine {
         Engine::C(compiler) => (compiler, Language::C),
         Engine::Rust(compiler) => (compiler, Language::Rust),
-        Engine::Builtin => return Err(ToolError::NoExecutor),
+        Engine::Builtin => return Ok(run_in_process(compiled, source, arguments)),
     };
     let program = emit(compiled, source, Target { language, form: Form::Program });
     let built = compiler.build(&program.files, &program.prefix)?;
     run::attached(&built.program, arguments)
+}
+
+/// The same driver as that of emitted Rust programs, around the executor.
+fn run_in_process(compiled: &Compiled, source: &SourceFile, arguments: &[OsString]) -> Ending {
+    let hash = hash(source);
+    let provenance =
+        Provenance { model_text: source.text(), hash: &hash, version: env!("CARGO_PKG_VERSION") };
+    let mut solver = InProcess::new(compiled.kernel.clone(), provenance);
+    let words: Vec<String> = arguments.iter().map(|word| word.to_string_lossy().into_owned()).collect();
+    Ending::Status(driver::run(&mut solver, &words))
 }

@@ -21,8 +21,6 @@ pub enum ToolError {
     Compiler { command: String, output: String },
     /// A file or folder cannot be read or written.
     Folder { path: PathBuf, reason: String },
-    /// This version has no executor of its own.
-    NoExecutor,
     /// A program cannot be started.
     Start { program: PathBuf, reason: String },
 }
@@ -48,7 +46,6 @@ impl ToolError {
             ToolError::Folder { .. } => {
                 "check permissions and free space; the variable XDG_CACHE_HOME moves the folder of built programs"
             }
-            ToolError::NoExecutor => "install a C compiler (gcc or clang) or Rust",
             ToolError::Start { .. } => {
                 "check that programs may be executed where it lies; the variable XDG_CACHE_HOME moves it"
             }
@@ -72,7 +69,6 @@ impl fmt::Display for ToolError {
             ToolError::Compiler { command, output } => {
                 write!(out, "the compiler failed: {command}\n{output}")
             }
-            ToolError::NoExecutor => write!(out, "this version cannot run a model without a compiler"),
             ToolError::Folder { path, reason } => write!(out, "cannot use '{}': {reason}", path.display()),
             ToolError::Start { program, reason } => {
                 write!(out, "cannot start '{}': {reason}", program.display())

@@ -13,6 +13,8 @@ use rimstone::emit::{Form, Language, Provenance, Target, emit};
 use rimstone::model::{Axis, Expression, FieldId, Model, Output, OutputKind};
 use rimstone::pipeline;
 use rimstone::source::Span;
+use rimstone::verify::driver;
+use rimstone::verify::in_process::InProcess;
 use rimstone::verify::run::{self, Ending};
 use rimstone::verify::toolchain;
 
@@ -168,6 +170,26 @@ fn solvers_in_c_keep_the_order() {
 #[test]
 fn solvers_in_rust_keep_the_order() {
     compiled_targets(Language::Rust, "Rust");
+}
+
+#[test]
+fn the_executor_keeps_the_order() {
+    for path in models() {
+        let model = model_with_solutions(&path);
+        let compiled = pipeline::build(model.clone(), &mut Diagnostics::new()).expect("builds");
+        let folder = tempfile::tempdir().expect("a temporary folder");
+        check(&path, &model, "in process", &|nodes| {
+            let out = folder.path().join(format!("{nodes:?}"));
+            let mut arguments = vec!["--out".to_owned(), out.display().to_string(), "--quiet".to_owned()];
+            for (axis, count) in model.axes.iter().zip(nodes) {
+                arguments.extend(["--nodes".to_owned(), format!("{}={count}", axis.name)]);
+            }
+            let provenance = Provenance { model_text: "", hash: "0", version: "test" };
+            let mut solver = InProcess::new(compiled.kernel.clone(), provenance);
+            assert_eq!(driver::run(&mut solver, &arguments), 0, "{}", path.display());
+            error_in(&out, &model)
+        });
+    }
 }
 
 /// A check that cannot fail is a defect: a wrong sign in an exact solution is noticed.
