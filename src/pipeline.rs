@@ -1,5 +1,6 @@
 //! The one place that knows the order of the stages.
 
+pub mod closed;
 mod compile;
 pub mod emission;
 pub mod weights;

@@ -4,10 +4,12 @@ use std::path::Path;
 
 use sha2::{Digest, Sha256};
 
+use super::closed::{self, Closed};
 use crate::analysis::{limit, stability};
 use crate::check;
 use crate::diagnostic::{Diagnostic, Diagnostics, codes_scheme};
 use crate::discretize;
+use crate::exact::{Rational, round};
 use crate::kernel::lower::lower;
 use crate::kernel::validate::{KernelFault, ValidKernel, validate};
 use crate::model::Model;
@@ -93,8 +95,14 @@ pub fn build(model: Model, diagnostics: &mut Diagnostics) -> Option<Compiled> {
     if diagnostics.has_errors() {
         return None;
     }
-    let law = limit::law(&model, &scheme, &stability::extents(model.time.method));
-    let kernel = valid(validate(lower(&model, &scheme, &law, notes(&model, &scheme, &law))));
+    let mut law = limit::law(&model, &scheme, &stability::extents(model.time.method));
+    let mut kernel = valid(validate(lower(&model, &scheme, &law, notes(&model, &scheme, &law))));
+    let closed = closed::examine(&kernel);
+    law.text = format!("{}; {}", law.text, closed.describe());
+    if let Closed::Lowered { factor, .. } = &closed {
+        law.lower(round::from_f64(*factor).unwrap_or_else(Rational::one));
+    }
+    kernel = valid(validate(lower(&model, &scheme, &law, notes(&model, &scheme, &law))));
     Some(Compiled { model, scheme, law, kernel })
 }
 

@@ -137,3 +137,13 @@ impl Scheme {
         }
     }
 }
+
+impl LimitLaw {
+    /// Takes only this share (0 < share ≤ 1) of the limit.
+    pub fn lower(&mut self, share: Rational) {
+        if let Some(inverse) = share.recip() {
+            self.rate = Expression::Number(inverse).times(self.rate.clone());
+            self.closed_factor = share;
+        }
+    }
+}

@@ -2,6 +2,7 @@
 
 mod c_driver;
 mod cli;
+mod closed;
 mod convergence;
 mod drivers;
 mod emission;
