@@ -36,7 +36,10 @@ pub fn law(model: &Model, scheme: &Scheme, extents: &Extents) -> LimitLaw {
         let frequency = if stiffness.is_zero() { stiffness } else { stiffness.square_root() };
         let (share, word) = match model.time.method {
             Method::Leapfrog => (Rational::ratio(1, 2), "leapfrog: dt ≤ 2/√ρ".to_owned()),
-            _ => (inverse(extents.imaginary), format!("dt ≤ {:.6}/√ρ on the imaginary axis", extents.imaginary)),
+            _ => (
+                inverse(extents.imaginary),
+                format!("dt ≤ {:.6}/√ρ on the imaginary axis", extents.imaginary),
+            ),
         };
         words.push(word);
         rates.push(Expression::Number(share).times(frequency));
@@ -50,7 +53,13 @@ pub fn law(model: &Model, scheme: &Scheme, extents: &Extents) -> LimitLaw {
     LimitLaw { rate, text: words.join("; "), closed_factor: Rational::from(1) }
 }
 
-fn combine(model: &Model, odd: Expression, even: Expression, extents: &Extents, words: &mut Vec<String>) -> Expression {
+fn combine(
+    model: &Model,
+    odd: Expression,
+    even: Expression,
+    extents: &Extents,
+    words: &mut Vec<String>,
+) -> Expression {
     match (odd.is_zero(), even.is_zero()) {
         (true, _) => {
             words.push(format!("dt ≤ {:.6}/R on the negative real axis", extents.real));
@@ -62,7 +71,10 @@ fn combine(model: &Model, odd: Expression, even: Expression, extents: &Extents, 
         }
         (false, false) if extents.imaginary <= 0.0 => {
             // Forward Euler: |1 + dt λ| ≤ 1 on every mode asks for dt ≤ 2R/(R² + I²); the long waves ask for dt ≤ 2k/a².
-            words.push("dt ≤ 1/(R/2 + Σ a²/(2k)): diffusion carries the transport of a forward Euler step".to_owned());
+            words.push(
+                "dt ≤ 1/(R/2 + Σ a²/(2k)): diffusion carries the transport of a forward Euler step"
+                    .to_owned(),
+            );
             let reader = Reader { model, scheme: &Scheme::empty() };
             Expression::sum([Expression::Number(inverse(extents.real)).times(even), reader.long_waves()])
         }
@@ -110,8 +122,10 @@ struct Reader<'a> {
 impl Reader<'_> {
     /// Bound of the spectral radius of the part of that parity, over a group of fields.
     fn radius(&self, fields: &[FieldId], parity: Parity) -> Expression {
-        let sizes: Vec<Vec<Expression>> =
-            fields.iter().map(|row| fields.iter().map(|column| self.size(*row, *column, parity)).collect()).collect();
+        let sizes: Vec<Vec<Expression>> = fields
+            .iter()
+            .map(|row| fields.iter().map(|column| self.size(*row, *column, parity)).collect())
+            .collect();
         let diagonal = |index: usize| sizes[index][index].clone();
         let pair = |a: usize, b: usize| {
             if sizes[a][b].is_zero() || sizes[b][a].is_zero() {
@@ -133,9 +147,12 @@ impl Reader<'_> {
                 // An arm is bounded by its centre's row.
                 Expression::zero()
             } else if centre_of_star {
-                Expression::sum(others.iter().map(|other| pair(index, *other)).collect::<Vec<_>>()).square_root()
+                Expression::sum(others.iter().map(|other| pair(index, *other)).collect::<Vec<_>>())
+                    .square_root()
             } else {
-                Expression::sum(others.iter().map(|other| pair(index, *other).square_root()).collect::<Vec<_>>())
+                Expression::sum(
+                    others.iter().map(|other| pair(index, *other).square_root()).collect::<Vec<_>>(),
+                )
             });
         }
         Expression::sum([largest(own), largest(couplings)])
@@ -180,7 +197,8 @@ impl Reader<'_> {
     fn gain(&self, axis: AxisId, degree: usize) -> Expression {
         let order = self.scheme.axes.get(axis.0).map_or(2, |facts| 2 * facts.half_order);
         let radius = round::from_f64(symbol::radius(degree, order)).unwrap_or_else(Rational::one);
-        Expression::Number(radius).times(Expression::InverseSpacing(axis).power(Rational::from(degree as i64)))
+        Expression::Number(radius)
+            .times(Expression::InverseSpacing(axis).power(Rational::from(degree as i64)))
     }
 
     /// What flux conditions that depend on the field itself (Robin) add at the face.
@@ -193,7 +211,8 @@ impl Reader<'_> {
             });
             if by_flux
                 && fields.contains(&correction.field)
-                && let Some(slope) = partial(&correction.value, Variable::Field(correction.field), &self.model.coefficients)
+                && let Some(slope) =
+                    partial(&correction.value, Variable::Field(correction.field), &self.model.coefficients)
                 && !slope.is_zero()
             {
                 added.push(magnitude(slope));
@@ -213,13 +232,21 @@ impl Reader<'_> {
                 for term in &terms {
                     match &term.derivative.kind {
                         DerivativeKind::First { axis: along, of } if *along == axis => {
-                            if let Some(slope) = partial(of, Variable::Field(equation.field), &self.model.coefficients) {
+                            if let Some(slope) =
+                                partial(of, Variable::Field(equation.field), &self.model.coefficients)
+                            {
                                 speed.push(term.factor.clone().times(slope));
                             }
                         }
                         DerivativeKind::Second { axis: along, coefficient, of } if *along == axis => {
-                            if let Some(slope) = partial(of, Variable::Field(equation.field), &self.model.coefficients) {
-                                diffusion.push(Expression::product([term.factor.clone(), coefficient.clone(), slope]));
+                            if let Some(slope) =
+                                partial(of, Variable::Field(equation.field), &self.model.coefficients)
+                            {
+                                diffusion.push(Expression::product([
+                                    term.factor.clone(),
+                                    coefficient.clone(),
+                                    slope,
+                                ]));
                             }
                         }
                         _ => {}

@@ -31,7 +31,13 @@ impl Code {
 
     /// All codes, in the order of their strings.
     pub fn all() -> Vec<Code> {
-        let mut all = [super::codes::TABLE, super::codes_check::TABLE].concat();
+        let mut all = [
+            super::codes::TABLE,
+            super::codes_check::TABLE,
+            super::codes_conditions::TABLE,
+            super::codes_scheme::TABLE,
+        ]
+        .concat();
         all.sort_by_key(|code| code.as_str());
         all
     }

@@ -7,6 +7,8 @@
 pub mod code;
 pub mod codes;
 pub mod codes_check;
+pub mod codes_conditions;
+pub mod codes_scheme;
 pub mod json;
 pub mod nearest;
 pub mod safe;

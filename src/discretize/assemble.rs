@@ -3,10 +3,10 @@
 //! The three moves at a face are those of the summation-by-parts identity: a given flux replaces the boundary flux, the
 //! flux of the upwind state replaces that of the inside, a given value is set. Deriving weights is not done here.
 
+use super::NotAvailable;
 use super::choose::{AxisPlan, plan_axes};
 use super::face;
 use super::split::split_first;
-use super::NotAvailable;
 use crate::exact::Rational;
 use crate::model::calculus::{DerivativeTerm, dependence, derivative_terms};
 use crate::model::expression::{Derivative, DerivativeKind};
@@ -16,7 +16,13 @@ use crate::scheme::{Application, OperatorRule, Scheme, SchemeAxis, SchemeOperato
 /// Discretizes a model in space.
 pub fn assemble(model: &Model) -> Result<Scheme, Vec<NotAvailable>> {
     let plans = plan_axes(model)?;
-    let mut assembly = Assembly { model, plans: &plans, operators: Vec::new(), applications: Vec::new(), choices: Vec::new() };
+    let mut assembly = Assembly {
+        model,
+        plans: &plans,
+        operators: Vec::new(),
+        applications: Vec::new(),
+        choices: Vec::new(),
+    };
     assembly.choices.extend(plans.iter().zip(&model.axes).map(|(plan, axis)| plan.describe(axis)));
     let mut rates = Vec::new();
     for equation in &model.equations {
@@ -28,7 +34,9 @@ pub fn assemble(model: &Model) -> Result<Scheme, Vec<NotAvailable>> {
     }
     let corrections = face::corrections(model, &plans);
     let injections = face::injections(model);
-    let least: Vec<usize> = (0..model.axes.len()).map(|axis| assembly.least_nodes(AxisId(axis))).collect();
+    let interpolation = plans.iter().map(|plan| interpolation_nodes(plan.solution_order)).max().unwrap_or(2);
+    let least: Vec<usize> =
+        (0..model.axes.len()).map(|axis| assembly.least_nodes(AxisId(axis)).max(interpolation)).collect();
     let Assembly { operators, applications, choices, .. } = assembly;
     let axes = plans
         .into_iter()
@@ -40,7 +48,17 @@ pub fn assemble(model: &Model) -> Result<Scheme, Vec<NotAvailable>> {
             solution_order: plan.solution_order,
         })
         .collect();
-    Ok(Scheme { axes, operators, applications, rates, outputs, corrections, injections, choices })
+    Ok(Scheme {
+        axes,
+        interpolation_nodes: interpolation,
+        operators,
+        applications,
+        rates,
+        outputs,
+        corrections,
+        injections,
+        choices,
+    })
 }
 
 /// Operators and applications found so far.
@@ -119,8 +137,12 @@ impl Assembly<'_> {
             DerivativeKind::Higher { axis, degree, of } => {
                 let of = self.replace(of)?;
                 let plan = &self.plans[axis.0];
-                let operator = super::interior::periodic(*degree, plan.interior_order())?;
-                let name = format!("derivative_{degree}_{}_order_{}", self.model.axes[axis.0].name, plan.interior_order());
+                let operator = super::centred::operator(*degree, plan.interior_order())?;
+                let name = format!(
+                    "derivative_{degree}_{}_order_{}",
+                    self.model.axes[axis.0].name,
+                    plan.interior_order()
+                );
                 let applied = self.applied(name, OperatorRule::Centred(operator), *axis, of, None);
                 Ok(applied.times(scale(*axis, *degree)))
             }
@@ -137,7 +159,12 @@ impl Assembly<'_> {
         Ok(Expression::product([outside, applied, scale(axis, 1)]))
     }
 
-    fn second(&mut self, axis: AxisId, coefficient: Expression, of: Expression) -> Result<Expression, Vec<NotAvailable>> {
+    fn second(
+        &mut self,
+        axis: AxisId,
+        coefficient: Expression,
+        of: Expression,
+    ) -> Result<Expression, Vec<NotAvailable>> {
         let plan = &self.plans[axis.0];
         let (outside, of) = self.constant_factors(of);
         let found = dependence(&coefficient, &self.model.coefficients);
@@ -150,7 +177,8 @@ impl Assembly<'_> {
         }
         let rule = plan.varying_second_derivative()?;
         let (factor, coefficient) = self.constant_factors(coefficient);
-        let applied = self.applied(format!("varying_second_{name}_order_{order}"), rule, axis, of, Some(coefficient));
+        let applied =
+            self.applied(format!("varying_second_{name}_order_{order}"), rule, axis, of, Some(coefficient));
         Ok(Expression::product([outside, factor, applied, scale(axis, 2)]))
     }
 
@@ -194,10 +222,11 @@ impl Assembly<'_> {
 
     fn least_nodes(&self, axis: AxisId) -> usize {
         let used = self.applications.iter().filter(|application| application.axis == axis);
+        let norm = self.plans[axis.0].norm.map_or(0, |norm| 2 * norm.left().len());
         used.map(|application| self.operators[application.operator].rule.least_nodes())
             .max()
-            .unwrap_or(1)
-            .max(if self.model.axes[axis.0].periodic { 1 } else { 2 })
+            .unwrap_or(2)
+            .max(norm)
     }
 }
 
@@ -215,6 +244,11 @@ fn observed(value: &Expression) -> Expression {
         };
         first(coefficient.clone().times(first(of.clone())))
     })
+}
+
+/// An even number of nodes, two more than the order of the solution: the error of a gauge between nodes stays below the solution's.
+fn interpolation_nodes(solution_order: usize) -> usize {
+    solution_order.div_ceil(2) * 2 + 2
 }
 
 /// 1/spacingᵈ.

@@ -5,19 +5,18 @@
 //! All operators of an axis share one norm, because the energy estimate of a sum of terms needs one: the axis takes the
 //! largest half order that any of its derivatives needs.
 
-use super::{NotAvailable, closure, interior};
+use super::{NotAvailable, centred, closure};
 use crate::exact::Rational;
 use crate::model::expression::DerivativeKind;
 use crate::model::{AskedOrder, Axis, AxisId, Expression, Model};
 use crate::scheme::{Norm, OperatorRule};
-use std::sync::Arc;
 
 /// The decision for one axis.
 #[derive(Clone, Debug)]
 pub(super) struct AxisPlan {
     pub(super) half_order: usize,
     pub(super) periodic: bool,
-    pub(super) norm: Option<Arc<Norm>>,
+    pub(super) norm: Option<&'static Norm>,
     pub(super) solution_order: usize,
     first: bool,
     second: bool,
@@ -46,7 +45,7 @@ fn plan_axis(model: &Model, id: AxisId, axis: &Axis) -> Result<AxisPlan, NotAvai
     .max(1)
     .max(used.asked.div_ceil(2));
     if axis.periodic {
-        interior::available(2 * half_order)?;
+        centred::operator(1, 2 * half_order)?;
         return Ok(AxisPlan {
             half_order,
             periodic: true,
@@ -56,11 +55,13 @@ fn plan_axis(model: &Model, id: AxisId, axis: &Axis) -> Result<AxisPlan, NotAvai
             second: used.second,
         });
     }
-    let norm = closure::first_derivative(2 * half_order)?.norm().clone();
+    let norm = closure::first_derivative(2 * half_order)
+        .map_err(|fault| NotAvailable::closure(axis, asked, used.reachable(), fault))?
+        .norm();
     Ok(AxisPlan {
         half_order,
         periodic: false,
-        norm: Some(Arc::new(norm)),
+        norm: Some(norm),
         solution_order: used.solution_order(half_order),
         first: used.first,
         second: used.second,
@@ -112,6 +113,11 @@ impl Used {
         }
     }
 
+    /// The highest order of the solution that the offered closures reach.
+    fn reachable(self) -> usize {
+        closure::closed_orders().iter().map(|order| self.solution_order(order / 2)).max().unwrap_or(1)
+    }
+
     /// The least p whose closures let the solution converge at `order`.
     fn half_order(self, order: usize) -> usize {
         (1..=order.max(1)).find(|p| self.solution_order(*p) >= order).unwrap_or(order)
@@ -139,16 +145,16 @@ impl AxisPlan {
 
     pub(super) fn first_derivative(&self) -> Result<OperatorRule, Vec<NotAvailable>> {
         if self.periodic {
-            return Ok(OperatorRule::Centred(interior::periodic(1, self.interior_order())?));
+            return Ok(OperatorRule::Centred(centred::operator(1, self.interior_order())?));
         }
         Ok(OperatorRule::First(closure::first_derivative(self.interior_order())?))
     }
 
     pub(super) fn second_derivative(&self) -> Result<OperatorRule, Vec<NotAvailable>> {
         if self.periodic {
-            return Ok(OperatorRule::Centred(interior::periodic(2, self.interior_order())?));
+            return Ok(OperatorRule::Centred(centred::operator(2, self.interior_order())?));
         }
-        Ok(OperatorRule::Second(closure::second_derivative(self.interior_order())?))
+        Ok(OperatorRule::Second(closure::constant_second_derivative(self.interior_order())?))
     }
 
     pub(super) fn varying_second_derivative(&self) -> Result<OperatorRule, Vec<NotAvailable>> {

@@ -7,11 +7,12 @@ mod first_derivative;
 mod second_derivative;
 
 use std::fmt;
-use std::sync::OnceLock;
+use std::sync::{Arc, OnceLock};
 
 use crate::exact::{AffineSolution, Inconsistent, Rational};
 use crate::scheme::{
-    FormFault, NormFault, OperatorFault, SecondDerivativeForm, SquaresFault, SummationByParts, SummationFault,
+    DifferenceOperator, FormFault, NormFault, OperatorFault, SecondDerivativeForm, SquaresFault,
+    SummationByParts, SummationFault,
 };
 
 use super::WeightsFault;
@@ -92,6 +93,17 @@ pub fn second_derivative(order: usize) -> Result<&'static SecondDerivativeForm, 
     static KEPT: [OnceLock<Result<SecondDerivativeForm, ClosureFault>>; RECIPES.len()] =
         [const { OnceLock::new() }; RECIPES.len()];
     kept(&KEPT, &closed_orders(), order, derive_second_derivative)
+}
+
+/// −H⁻¹M(1) on an axis with two ends: the rows of [`second_derivative`] for a coefficient of one.
+pub fn constant_second_derivative(order: usize) -> Result<Arc<DifferenceOperator>, ClosureFault> {
+    static KEPT: [OnceLock<Result<Arc<DifferenceOperator>, ClosureFault>>; RECIPES.len()] =
+        [const { OnceLock::new() }; RECIPES.len()];
+    let derive = |order| {
+        let form = second_derivative(order)?;
+        Ok(Arc::new(form.constant().clone()))
+    };
+    kept(&KEPT, &closed_orders(), order, derive).cloned()
 }
 
 /// The centred first derivative on a periodic axis.

@@ -8,7 +8,7 @@
 
 use super::choose::AxisPlan;
 use crate::exact::Rational;
-use crate::model::calculus::{Variable, derivative_terms, partial};
+use crate::model::calculus::{Variable, dependence, derivative_terms, partial};
 use crate::model::characteristics::{Block, Entering, blocks, entering, mean_and_root, outward};
 use crate::model::expression::DerivativeKind;
 use crate::model::{Condition, Expression, Face, FaceRelation, FieldId, Model, Side, Treatment};
@@ -20,12 +20,17 @@ pub(super) fn corrections(model: &Model, plans: &[AxisPlan]) -> Vec<Correction> 
     for condition in &model.conditions {
         let weight = plans[condition.face.axis.0].face_weight();
         let strength = match weight.recip() {
-            Some(inverse) => Expression::Number(inverse).times(Expression::InverseSpacing(condition.face.axis)),
+            Some(inverse) => {
+                Expression::Number(inverse).times(Expression::InverseSpacing(condition.face.axis))
+            }
             None => continue,
         };
         let additions = match &condition.treatment {
             Treatment::Value { .. } => Vec::new(),
-            Treatment::Flux { field, normal_derivative } => flux(model, condition.face, *field, normal_derivative),
+            Treatment::Flux { field, normal_derivative } => {
+                flux(model, condition.face, *field, normal_derivative)
+            }
+            Treatment::Upwind { .. } if moving_inflow(model, condition).is_some() => Vec::new(),
             Treatment::Upwind { relations } => upwind(model, condition.face, relations),
             Treatment::InflowValue { field, value } => inflow(model, condition.face, *field, value),
         };
@@ -43,10 +48,10 @@ pub(super) fn corrections(model: &Model, plans: &[AxisPlan]) -> Vec<Correction> 
 
 /// All settings of values, in the order of the conditions.
 pub(super) fn injections(model: &Model) -> Vec<Injection> {
-    model.conditions.iter().filter_map(injection).collect()
+    model.conditions.iter().filter_map(|condition| injection(model, condition)).collect()
 }
 
-fn injection(condition: &Condition) -> Option<Injection> {
+fn injection(model: &Model, condition: &Condition) -> Option<Injection> {
     match &condition.treatment {
         Treatment::Value { field, value, rate, second_rate } => Some(Injection {
             face: condition.face,
@@ -56,11 +61,41 @@ fn injection(condition: &Condition) -> Option<Injection> {
             rate: rate.clone(),
             second_rate: second_rate.clone(),
         }),
+        Treatment::Upwind { .. } => moving_inflow(model, condition),
         _ => None,
     }
 }
 
-fn flux(model: &Model, face: Face, field: FieldId, normal_derivative: &Expression) -> Vec<(FieldId, Expression)> {
+/// The value of a single transported field whose data move in time, where they can be differentiated: set rather than replaced as a
+/// flux. Both are stable (−a u_N² against −a u_N² − a u_0² in the energy rate), but only a value that is advanced by its own
+/// derivative keeps the order of a Runge–Kutta method of order four.
+fn moving_inflow(model: &Model, condition: &Condition) -> Option<Injection> {
+    let Treatment::Upwind { relations } = &condition.treatment else { return None };
+    let [relation] = relations.as_slice() else { return None };
+    let [(field, weight)] = relation.coefficients.as_slice() else { return None };
+    let alone = blocks(model, condition.face.axis)?.iter().any(|block| block.fields == [*field]);
+    let value = relation.data.clone().over(weight.clone());
+    if !alone || !dependence(&value, &model.coefficients).time {
+        return None;
+    }
+    let slope = |of: &Expression| partial(of, Variable::Time, &model.coefficients);
+    let rate = slope(&value)?;
+    Some(Injection {
+        face: condition.face,
+        patch: condition.patch.clone(),
+        field: *field,
+        second_rate: slope(&rate),
+        rate: Some(rate),
+        value,
+    })
+}
+
+fn flux(
+    model: &Model,
+    face: Face,
+    field: FieldId,
+    normal_derivative: &Expression,
+) -> Vec<(FieldId, Expression)> {
     let mut additions = Vec::new();
     for equation in &model.equations {
         let Some((terms, _)) = derivative_terms(&equation.right) else { continue };
@@ -81,7 +116,9 @@ fn flux(model: &Model, face: Face, field: FieldId, normal_derivative: &Expressio
 
 fn inflow(model: &Model, face: Face, field: FieldId, value: &Expression) -> Vec<(FieldId, Expression)> {
     let Some((terms, _)) = derivative_terms(&model.equations[field.0].right) else { return Vec::new() };
-    let given = |flux: &Expression| flux.rewrite(&mut |node| if node == Expression::Field(field) { value.clone() } else { node });
+    let given = |flux: &Expression| {
+        flux.rewrite(&mut |node| if node == Expression::Field(field) { value.clone() } else { node })
+    };
     let mut additions = Vec::new();
     for term in terms {
         let DerivativeKind::First { axis, of } = &term.derivative.kind else { continue };
@@ -150,17 +187,26 @@ fn upwind_block(block: &Block, side: Side, relations: &[&FaceRelation]) -> Vec<(
 }
 
 fn coefficient(relation: &FaceRelation, field: FieldId) -> Expression {
-    relation.coefficients.iter().find(|(own, _)| *own == field).map_or_else(Expression::zero, |(_, value)| value.clone())
+    relation
+        .coefficients
+        .iter()
+        .find(|(own, _)| *own == field)
+        .map_or_else(Expression::zero, |(_, value)| value.clone())
 }
 
 /// data − L q over the fields of the block.
 fn residual(relation: &FaceRelation) -> Expression {
-    let inside = relation.coefficients.iter().map(|(field, weight)| weight.clone().times(Expression::Field(*field)));
+    let inside =
+        relation.coefficients.iter().map(|(field, weight)| weight.clone().times(Expression::Field(*field)));
     relation.data.clone().minus(Expression::sum(inside.collect::<Vec<_>>()))
 }
 
 /// One characteristic enters: eigenvalue λ = mean − root < 0 with eigenvector r, addition −λ r (data − L q)/(L·r).
-fn one_of_two(block: &Block, matrix: &[Vec<Expression>], relation: &FaceRelation) -> Vec<(FieldId, Expression)> {
+fn one_of_two(
+    block: &Block,
+    matrix: &[Vec<Expression>],
+    relation: &FaceRelation,
+) -> Vec<(FieldId, Expression)> {
     let Some((mean, root)) = mean_and_root(matrix) else { return Vec::new() };
     let [a, b, c, d] = [&matrix[0][0], &matrix[0][1], &matrix[1][0], &matrix[1][1]];
     let (eigenvalue, vector) = if b.is_zero() && c.is_zero() {
@@ -177,7 +223,12 @@ fn one_of_two(block: &Block, matrix: &[Vec<Expression>], relation: &FaceRelation
         (eigenvalue, vector)
     };
     let along = Expression::sum(
-        block.fields.iter().zip(&vector).map(|(field, part)| coefficient(relation, *field).times(part.clone())).collect::<Vec<_>>(),
+        block
+            .fields
+            .iter()
+            .zip(&vector)
+            .map(|(field, part)| coefficient(relation, *field).times(part.clone()))
+            .collect::<Vec<_>>(),
     );
     let strength = eigenvalue.negative().times(residual(relation)).over(along);
     block.fields.iter().zip(vector).map(|(field, part)| (*field, part.times(strength.clone()))).collect()

@@ -1,11 +1,13 @@
 //! Interior stencils: weights for any nodes, and the centred, biased and half-way families.
 //!
-//! Weights come from Fornberg's recursion (Fornberg 1988, Math. Comp. 51, 699–706; from memory) in exact
-//! rationals. Closures at walls are in [`super::closure`].
+//! Weights are derivatives of the nodes' Lagrange polynomials, in exact rationals. Closures at walls are in [`super::closure`].
 
 use std::fmt;
 
-use crate::exact::Rational;
+use num_bigint::BigInt;
+
+use crate::exact::matrix::{common_denominator, scaled};
+use crate::exact::{Rational, factorial};
 use crate::scheme::{Stencil, StencilFault};
 
 /// What one request may ask for, so that an answer always comes within a second.
@@ -62,42 +64,35 @@ pub fn weights(nodes: &[Rational], at: &Rational, derivative: usize) -> Result<S
     Stencil::new(nodes, at.clone(), derivative, weights, order).map_err(WeightsFault::Refused)
 }
 
-/// The derivative at `at` of each Lagrange polynomial of the nodes, by the recursion over nodes.
+/// The derivative at `at` of each Lagrange polynomial Π_{k≠j} (x − x_k)/(x_j − x_k) of the nodes.
+///
+/// With distances from `at` as integers X over a common denominator, the derivative is d! times a
+/// coefficient of the numerator, which is Π (X − X_k) divided by one of its factors: integers all through.
 fn lagrange_derivative(nodes: &[Rational], at: &Rational, derivative: usize) -> Vec<Rational> {
-    // table[j][k]: weight of node j for derivative k on the nodes seen so far.
-    let mut table = vec![vec![Rational::zero(); derivative + 1]; nodes.len()];
-    table[0][0] = Rational::one();
-    let mut previous_product = Rational::one();
-    for newest in 1..nodes.len() {
-        let distance = &nodes[newest] - at;
-        let previous_distance = &nodes[newest - 1] - at;
-        let mut product = Rational::one();
-        let highest = derivative.min(newest);
-        let last_row = table[newest - 1].clone();
-        for older in 0..newest {
-            let gap = &nodes[newest] - &nodes[older];
-            product *= &gap;
-            for order in (0..=highest).rev() {
-                let kept = &distance * &table[older][order];
-                table[older][order] = (kept - lowered(&table[older], order)) / &gap;
-            }
+    let distances: Vec<Rational> = nodes.iter().map(|node| node - at).collect();
+    let scale = common_denominator(&distances);
+    let places: Vec<BigInt> = distances.iter().map(|distance| scaled(distance, &scale)).collect();
+    // Coefficients of Π (X − X_k), the highest first.
+    let mut product = vec![BigInt::from(1)];
+    for place in &places {
+        product.push(BigInt::from(0));
+        for index in (1..product.len()).rev() {
+            let lowered = &product[index - 1] * place;
+            product[index] -= lowered;
         }
-        let ratio = previous_product / &product;
-        for order in 0..=highest {
-            let fresh = lowered(&last_row, order) - &previous_distance * &last_row[order];
-            table[newest][order] = &ratio * fresh;
-        }
-        previous_product = product;
     }
-    table.into_iter().map(|mut row| row.swap_remove(derivative)).collect()
-}
-
-/// `order · row[order − 1]`, nought for order nought.
-fn lowered(row: &[Rational], order: usize) -> Rational {
-    match order.checked_sub(1) {
-        None => Rational::zero(),
-        Some(below) => &row[below] * Rational::from(order as i64),
-    }
+    let factor = factorial(derivative).numerator() * scale.pow(derivative as u32);
+    let weight = |place: &BigInt| {
+        // Horner's scheme divides by (X − X_j); the quotient's coefficient of X^derivative is wanted.
+        let wanted = nodes.len() - 1 - derivative;
+        let coefficient = product[1..=wanted]
+            .iter()
+            .fold(product[0].clone(), |above, coefficient| above * place + coefficient);
+        let gaps = places.iter().filter(|other| *other != place).map(|other| place - other);
+        let denominator: BigInt = gaps.product();
+        Rational::new(coefficient * &factor, denominator).expect("the nodes differ")
+    };
+    places.iter().map(weight).collect()
 }
 
 /// The centred stencil on integer nodes for derivatives 1 to 4 and even orders up to 16.
@@ -210,7 +205,6 @@ impl std::error::Error for WeightsFault {}
 #[cfg(test)]
 mod tests {
     use super::*;
-    use crate::exact::factorial;
 
     #[test]
     fn centred_weights_equal_the_closed_forms() {

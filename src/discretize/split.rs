@@ -29,7 +29,8 @@ pub(super) fn split_first(
     if slope.is_zero() {
         return None;
     }
-    burgers(model, field, axis, factor, &of, &slope).or_else(|| varying_speed(model, field, axis, factor, &of, &slope))
+    burgers(model, field, axis, factor, &of, &slope)
+        .or_else(|| varying_speed(model, field, axis, factor, &of, &slope))
 }
 
 fn varying_speed(
@@ -41,15 +42,18 @@ fn varying_speed(
     slope: &Expression,
 ) -> Option<Split> {
     // of = slope·u exactly, and neither slope nor factor depends on the state.
-    if dependence(slope, &model.coefficients).on_state() || dependence(factor, &model.coefficients).on_state() {
+    if dependence(slope, &model.coefficients).on_state() || dependence(factor, &model.coefficients).on_state()
+    {
         return None;
     }
-    let at_rest = of.rewrite(&mut |node| if node == Expression::Field(field) { Expression::zero() } else { node });
+    let at_rest =
+        of.rewrite(&mut |node| if node == Expression::Field(field) { Expression::zero() } else { node });
     if !at_rest.is_zero() {
         return None;
     }
     let speed = factor.clone().times(slope.clone());
-    let gradient = partial(&expand(&speed, &model.coefficients), Variable::Coordinate(axis), &model.coefficients)?;
+    let gradient =
+        partial(&expand(&speed, &model.coefficients), Variable::Coordinate(axis), &model.coefficients)?;
     if gradient.is_zero() {
         return None;
     }

@@ -257,7 +257,7 @@ impl Operation {
     }
 
     /// The extent of the operation itself, without its operands.
-    fn own_extent(&self, all_axes: u8) -> Extent {
+    pub fn own_extent(&self, all_axes: u8) -> Extent {
         match self {
             Operation::Time | Operation::Step => Extent::Uniform,
             Operation::Coordinate(axis) => Extent::Table(1 << axis),

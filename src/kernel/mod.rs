@@ -32,14 +32,17 @@
 //! A **stage** is a list of passes at one time. A **step** is the list of stages, then the swaps of `rotation`.
 
 pub mod build;
+pub mod interpret;
 pub mod lower;
 pub mod operator;
+pub mod validate;
 
 pub use build::Builder;
 pub use operator::{ClosureRow, ConstantOperator, LineOperator, Parity, VaryingEntry, VaryingOperator};
+pub use validate::{KernelFault, ValidKernel, validate};
 
 use crate::exact::Rational;
-use crate::model::{Function, Relation};
+pub use crate::model::{Function, Relation};
 
 macro_rules! index {
     ($($(#[$doc:meta])* $name:ident;)*) => {$(
@@ -351,8 +354,26 @@ pub enum OutputKind {
     /// A coordinate for each axis, fixed.
     Gauge(Vec<ValueId>),
     Integral,
-    /// `sweep` keeps the largest value so far in `buffer`; `begin` sets it at the start.
+    /// `sweeps` keep the largest value so far in `buffer`; `begin` set it at the start.
     Maximum {
-        begin: Sweep,
+        begin: Vec<Sweep>,
     },
+}
+
+impl Kernel {
+    /// The values that these are made of, themselves included, in graph order.
+    pub fn needed(&self, roots: impl IntoIterator<Item = ValueId>) -> Vec<ValueId> {
+        let mut marked = vec![false; self.values.len()];
+        for root in roots {
+            marked[root.0] = true;
+        }
+        for index in (0..marked.len()).rev() {
+            if marked[index] {
+                for operand in self.values[index].operation.operands() {
+                    marked[operand.0] = true;
+                }
+            }
+        }
+        (0..marked.len()).filter(|index| marked[*index]).map(ValueId).collect()
+    }
 }

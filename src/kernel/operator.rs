@@ -66,6 +66,21 @@ impl LineOperator {
         }
     }
 
+    /// How far interior rows reach to either side, in the field or the coefficient.
+    pub fn interior_reach(&self) -> usize {
+        match self {
+            LineOperator::Constant(_) => self.reach(),
+            LineOperator::Varying(operator) => {
+                let forms = operator.forms.iter().zip(1i64..);
+                let offsets = forms.flat_map(|(form, shift)| {
+                    form.iter().flat_map(move |(offset, _)| [*offset, *offset - shift])
+                });
+                let farthest = offsets.map(i64::unsigned_abs).max().unwrap_or(0) as usize;
+                farthest.max(self.reach())
+            }
+        }
+    }
+
     /// Number of closure rows at each end.
     pub fn closure_rows(&self) -> usize {
         match self {
@@ -96,9 +111,9 @@ impl LineOperator {
     pub fn least_nodes(&self) -> usize {
         let rows = self.closure_rows();
         if rows == 0 {
-            2 * self.reach() + 1
+            2 * self.interior_reach() + 1
         } else {
-            (2 * rows).max(self.closure_width()).max(rows + self.reach())
+            (2 * rows).max(self.closure_width()).max(rows + self.interior_reach())
         }
     }
 }

@@ -6,12 +6,14 @@
 use super::calculus::{DerivativeTerm, Variable, derivative_terms, expand, partial};
 use super::expression::DerivativeKind;
 use super::sign::{Sign, sign};
-use super::{AxisId, Expression, FieldId, Model, Side, TimeOrder};
+use super::{AxisId, Expression, Face, FieldId, Model, Side, TimeOrder};
 use crate::exact::Rational;
 
 /// Fields coupled by first derivatives along one axis.
 #[derive(Clone, Debug)]
 pub struct Block {
+    /// The axis along which they are coupled.
+    pub axis: AxisId,
     /// In the order of the model.
     pub fields: Vec<FieldId>,
     /// A of q_t + A q_x = …, rows and columns in the order of `fields`.
@@ -61,12 +63,13 @@ pub fn matrix(model: &Model, fields: &[FieldId], axis: AxisId) -> Option<Vec<Vec
     Some(rows)
 }
 
-/// The hyperbolic fields along the axis, split into blocks that first derivatives couple. A field with no first derivative
-/// along the axis and no influence on others makes a block of its own with the zero matrix.
+/// The hyperbolic fields along the axis, split into blocks that first derivatives couple. A field that influences no
+/// derivative (its column is zero) is only driven: it makes a block of its own with the zero matrix, and nothing enters for it.
 pub fn blocks(model: &Model, axis: AxisId) -> Option<Vec<Block>> {
     let fields: Vec<FieldId> =
         (0..model.fields.len()).map(FieldId).filter(|field| is_hyperbolic(model, *field, axis)).collect();
-    let whole = matrix(model, &fields, axis)?;
+    let mut whole = matrix(model, &fields, axis)?;
+    release_driven(&mut whole);
     let mut group: Vec<usize> = (0..fields.len()).collect();
     for row in 0..fields.len() {
         for column in 0..fields.len() {
@@ -83,6 +86,7 @@ pub fn blocks(model: &Model, axis: AxisId) -> Option<Vec<Block>> {
             continue;
         }
         result.push(Block {
+            axis,
             fields: members.iter().map(|index| fields[*index]).collect(),
             matrix: members
                 .iter()
@@ -91,6 +95,17 @@ pub fn blocks(model: &Model, axis: AxisId) -> Option<Vec<Block>> {
         });
     }
     Some(result)
+}
+
+/// Takes fields that no derivative acts on out of the coupling: their own eigenvalue is zero and they feed nothing back,
+/// so that the speeds of the others do not change. Repeated, as each removal may free another.
+fn release_driven(matrix: &mut [Vec<Expression>]) {
+    let driven = |matrix: &[Vec<Expression>], field: usize| {
+        matrix.iter().all(|row| row[field].is_zero()) && matrix[field].iter().any(|entry| !entry.is_zero())
+    };
+    while let Some(field) = (0..matrix.len()).find(|field| driven(matrix, *field)) {
+        matrix[field].iter_mut().for_each(|entry| *entry = Expression::zero());
+    }
 }
 
 /// How many characteristics enter, or why that cannot be said.
@@ -116,23 +131,25 @@ pub fn outward(block: &Block, side: Side) -> Vec<Vec<Expression>> {
         .collect()
 }
 
-/// Number of negative eigenvalues of the outward matrix.
+/// Number of negative eigenvalues of the outward matrix. Signs are taken at the face: the coordinate along the axis has its
+/// value there.
 pub fn entering(model: &Model, block: &Block, side: Side) -> Entering {
     let matrix = outward(block, side);
+    let face = Face { axis: block.axis, side };
     match matrix.len() {
-        1 => match sign_of(&matrix[0][0], model) {
+        1 => match sign_at(&matrix[0][0], model, face) {
             Sign::Negative | Sign::NonPositive => Entering::Count(1),
             Sign::Zero | Sign::Positive | Sign::NonNegative => Entering::Count(0),
             Sign::Unknown => Entering::UnknownSign(matrix[0][0].clone()),
         },
-        2 => entering_pair(model, &matrix),
+        2 => entering_pair(model, &matrix, face),
         size => Entering::TooLarge(size),
     }
 }
 
-fn entering_pair(model: &Model, matrix: &[Vec<Expression>]) -> Entering {
+fn entering_pair(model: &Model, matrix: &[Vec<Expression>], face: Face) -> Entering {
     let [a, b, c, d] = [&matrix[0][0], &matrix[0][1], &matrix[1][0], &matrix[1][1]];
-    let count = |entry: &Expression| match sign_of(entry, model) {
+    let count = |entry: &Expression| match sign_at(entry, model, face) {
         Sign::Negative | Sign::NonPositive => Some(1),
         Sign::Unknown => None,
         _ => Some(0),
@@ -146,11 +163,11 @@ fn entering_pair(model: &Model, matrix: &[Vec<Expression>]) -> Entering {
         };
     }
     let determinant = a.clone().times(d.clone()).minus(b.clone().times(c.clone()));
-    match sign_of(&determinant, model) {
+    match sign_at(&determinant, model, face) {
         Sign::Negative | Sign::NonPositive => Entering::Count(1),
         Sign::Positive | Sign::NonNegative | Sign::Zero => {
             let trace = Expression::sum([a.clone(), d.clone()]);
-            match sign_of(&trace, model) {
+            match sign_at(&trace, model, face) {
                 Sign::Negative | Sign::NonPositive => Entering::Count(2),
                 Sign::Unknown => Entering::UnknownSign(trace),
                 _ => Entering::Count(0),
@@ -160,8 +177,21 @@ fn entering_pair(model: &Model, matrix: &[Vec<Expression>]) -> Entering {
     }
 }
 
-fn sign_of(expression: &Expression, model: &Model) -> Sign {
-    sign(&expand(expression, &model.coefficients), model)
+/// The expression at a face: coefficients looked through, the normal coordinate at its value there.
+pub fn at_face(expression: &Expression, model: &Model, face: Face) -> Expression {
+    let place = model.axes.get(face.axis.0).map(|axis| match face.side {
+        Side::Low => axis.low.clone(),
+        Side::High => axis.high.clone(),
+    });
+    expand(expression, &model.coefficients).rewrite(&mut |node| match (&node, &place) {
+        (Expression::Coordinate(axis), Some(place)) if *axis == face.axis => place.clone(),
+        _ => node,
+    })
+}
+
+/// The sign of an expression at a face.
+pub fn sign_at(expression: &Expression, model: &Model, face: Face) -> Sign {
+    sign(&at_face(expression, model, face), model)
 }
 
 /// Eigenvalues of a block's matrix as expressions: the mean of the diagonal and the root that is added to and subtracted

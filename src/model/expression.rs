@@ -19,6 +19,8 @@ pub enum Expression {
     Field(FieldId),
     /// ∂field/∂t of a field that is second order in time.
     Rate(FieldId),
+    /// ∂²field/∂t²; only in equations before they are made explicit.
+    SecondRate(FieldId),
     Sum(Vec<Expression>),
     Product(Vec<Expression>),
     Quotient(Box<Expression>, Box<Expression>),

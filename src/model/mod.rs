@@ -8,6 +8,8 @@ pub mod calculus;
 pub mod characteristics;
 pub mod dimension;
 pub mod expression;
+pub mod formula;
+pub mod numeric;
 pub mod sign;
 
 pub use dimension::Dimension;

@@ -5,6 +5,9 @@
 
 use std::fmt;
 
+use num_bigint::BigInt;
+
+use crate::exact::matrix::{common_denominator, scaled};
 use crate::exact::{Rational, factorial};
 
 use super::Stencil;
@@ -273,9 +276,12 @@ impl Closure {
         if weights.is_empty() {
             return Err(OperatorFault::EmptyRow { row });
         }
-        let mut terms = weights.clone();
+        // In integers: reducing a fraction at every step would cost more than the whole derivation.
+        let scale = common_denominator(weights);
+        let mut terms: Vec<BigInt> = weights.iter().map(|weight| scaled(weight, &scale)).collect();
         for degree in 0..derivative + self.order {
-            let mut found: Rational = terms.iter().sum();
+            let mut found = Rational::new(terms.iter().sum::<BigInt>(), scale.clone())
+                .expect("common denominators are positive");
             if let EndRows::NaturalFlux { norm_weight } = &self.ends
                 && (row, degree) == (0, 1)
             {
@@ -287,7 +293,7 @@ impl Closure {
                 return Err(OperatorFault::Row { row, degree, found: Box::new(found) });
             }
             for (position, term) in terms.iter_mut().enumerate() {
-                *term *= &Rational::from((first + position) as i64 - row as i64);
+                *term *= (first + position) as i64 - row as i64;
             }
         }
         Ok(())

@@ -8,11 +8,14 @@ mod exactness;
 
 use std::fmt;
 
+use num_bigint::BigInt;
+
+use crate::exact::matrix::{common_denominator, scaled};
 use crate::exact::{Matrix, Rational};
 
 use super::{ClosedRow, DifferenceOperator, Norm, OperatorFault, Stencil, StencilFault, SumOfSquares};
 
-/// A linear form in the nodal coefficients: Σ factor · b[node].
+/// A linear form in the nodal coefficients: Σ factor · b at that node.
 pub type LinearForm = Vec<(usize, Rational)>;
 
 /// One closed row at the left end, the norm already divided out: (−H⁻¹M(b)u)_i = Σ_l form_l(b) u_l.
@@ -35,6 +38,7 @@ pub struct SecondDerivativeForm {
     closure: Vec<FormRow>,
     interior_order: usize,
     closure_order: usize,
+    constant: DifferenceOperator,
 }
 
 /// Why squares and norm are not a second derivative of the claimed orders.
@@ -70,7 +74,8 @@ impl SecondDerivativeForm {
         let interior = checked_interior(&squares, interior_order)?;
         let closure = assembly::closed_rows(&squares, &norm, &interior);
         exactness::check_closure(&closure, &norm, closure_order)?;
-        Ok(SecondDerivativeForm { norm, squares, interior, closure, interior_order, closure_order })
+        let constant = constant(&interior, interior_order, &closure, closure_order, &norm)?;
+        Ok(SecondDerivativeForm { norm, squares, interior, closure, interior_order, closure_order, constant })
     }
 
     /// The form on a periodic axis.
@@ -79,15 +84,16 @@ impl SecondDerivativeForm {
             return Err(FormFault::EndsDiffer);
         }
         let interior = checked_interior(&squares, interior_order)?;
-        let closure_order = interior_order;
         let norm = Norm::periodic();
+        let constant = constant(&interior, interior_order, &[], interior_order, &norm)?;
         Ok(SecondDerivativeForm {
             norm,
             squares,
             interior,
             closure: Vec::new(),
             interior_order,
-            closure_order,
+            closure_order: interior_order,
+            constant,
         })
     }
 
@@ -187,28 +193,38 @@ impl SecondDerivativeForm {
 
     /// The rows for the constant coefficient one. On an axis with two ends the end rows contain the natural
     /// flux, see [`super::EndRows::NaturalFlux`].
-    pub fn constant(&self) -> Result<DifferenceOperator, FormFault> {
-        let half_width = self.half_width() as i64;
-        let nodes = (-half_width..=half_width).map(Rational::from).collect();
-        let weights = assembly::interior_row(&self.interior)
-            .iter()
-            .map(|(_, form)| form.iter().map(|(_, factor)| factor).sum())
-            .collect();
-        let interior = Stencil::new(nodes, Rational::zero(), 2, weights, self.interior_order)
-            .map_err(FormFault::ConstantInterior)?;
-        let Some(norm_weight) = self.norm.left().first() else {
-            return DifferenceOperator::periodic(interior, self.interior_order).map_err(FormFault::Constant);
-        };
-        let rows = self.closure.iter().map(FormRow::constant).collect();
-        DifferenceOperator::bounded_with_natural_flux(
-            interior,
-            self.interior_order,
-            rows,
-            self.closure_order,
-            norm_weight.clone(),
-        )
-        .map_err(FormFault::Constant)
+    pub fn constant(&self) -> &DifferenceOperator {
+        &self.constant
     }
+}
+
+/// The operator for the constant coefficient one, through its own check.
+fn constant(
+    interior: &[Vec<(i64, Rational)>],
+    interior_order: usize,
+    closure: &[FormRow],
+    closure_order: usize,
+    norm: &Norm,
+) -> Result<DifferenceOperator, FormFault> {
+    let half_width = interior.len() as i64;
+    let nodes = (-half_width..=half_width).map(Rational::from).collect();
+    let weights = assembly::interior_row(interior)
+        .iter()
+        .map(|(_, form)| total(form.iter().map(|(_, factor)| factor)))
+        .collect();
+    let stencil = Stencil::new(nodes, Rational::zero(), 2, weights, interior_order)
+        .map_err(FormFault::ConstantInterior)?;
+    let operator = match norm.left().first() {
+        None => DifferenceOperator::periodic(stencil, interior_order),
+        Some(norm_weight) => DifferenceOperator::bounded_with_natural_flux(
+            stencil,
+            interior_order,
+            closure.iter().map(FormRow::constant).collect(),
+            closure_order,
+            norm_weight.clone(),
+        ),
+    };
+    operator.map_err(FormFault::Constant)
 }
 
 impl FormRow {
@@ -217,7 +233,7 @@ impl FormRow {
         let end = self.columns.last().map_or(0, |(column, _)| column + 1);
         let mut weights = vec![Rational::zero(); end];
         for (column, form) in &self.columns {
-            weights[*column] = form.iter().map(|(_, factor)| factor).sum();
+            weights[*column] = total(form.iter().map(|(_, factor)| factor));
         }
         while weights.last().is_some_and(Rational::is_zero) {
             weights.pop();
@@ -225,6 +241,13 @@ impl FormRow {
         let first = weights.iter().take_while(|weight| weight.is_zero()).count();
         ClosedRow { first, weights: weights.split_off(first) }
     }
+}
+
+/// The sum over one common denominator, reduced once.
+fn total<'a>(terms: impl Iterator<Item = &'a Rational> + Clone) -> Rational {
+    let scale = common_denominator(terms.clone());
+    let sum: BigInt = terms.map(|term| scaled(term, &scale)).sum();
+    Rational::new(sum, scale).expect("common denominators are positive")
 }
 
 fn checked_interior(

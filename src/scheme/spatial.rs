@@ -3,7 +3,7 @@
 //! Plain facts, made by `discretize::assemble`: which certified operator acts where, which expression each rate is, what
 //! each face adds or sets, and the law of the step limit. Weights live in the operators.
 
-
+use super::{DifferenceOperator, Norm, SecondDerivativeForm, SummationByParts};
 use crate::exact::Rational;
 use crate::model::{AxisId, Comparison, Expression, Face, FieldId};
 use std::sync::Arc;
@@ -12,6 +12,8 @@ use std::sync::Arc;
 #[derive(Clone, Debug)]
 pub struct Scheme {
     pub axes: Vec<SchemeAxis>,
+    /// Nodes along each axis that a value between nodes is interpolated from.
+    pub interpolation_nodes: usize,
     pub operators: Vec<SchemeOperator>,
     pub applications: Vec<Application>,
     /// The explicit right side for each field, with `Applied` in the place of derivatives.
@@ -31,7 +33,7 @@ pub struct SchemeAxis {
     /// Half of the interior order of every operator along the axis that the norm belongs to.
     pub half_order: usize,
     /// The norm; `None` on periodic axes (all weights one).
-    pub norm: Option<Arc<Norm>>,
+    pub norm: Option<&'static Norm>,
     /// The least number of nodes that every operator on the axis needs.
     pub least_nodes: usize,
     /// The order at which the solution converges in space along this axis.
@@ -49,13 +51,24 @@ pub struct SchemeOperator {
 #[derive(Clone, Debug)]
 pub enum OperatorRule {
     /// First derivative with energy-stable closures.
-    First(Arc<SummationByParts>),
+    First(&'static SummationByParts),
     /// −H⁻¹M(1): second derivative without its boundary flux.
-    Second(Arc<SecondDerivativeForm>),
+    Second(Arc<DifferenceOperator>),
     /// −H⁻¹M(b).
-    VaryingSecond(Arc<SecondDerivativeForm>),
+    VaryingSecond(&'static SecondDerivativeForm),
     /// Centred weights on a periodic axis.
     Centred(Arc<DifferenceOperator>),
+}
+
+impl OperatorRule {
+    /// The least number of nodes on a line.
+    pub fn least_nodes(&self) -> usize {
+        match self {
+            OperatorRule::First(operator) => operator.minimum_nodes(),
+            OperatorRule::VaryingSecond(form) => form.minimum_nodes(),
+            OperatorRule::Second(operator) | OperatorRule::Centred(operator) => operator.minimum_nodes(),
+        }
+    }
 }
 
 /// An operator at work: `operator` along `axis` on the values of `of`, in units of the spacing
@@ -105,5 +118,32 @@ impl SchemeAxis {
     /// Weight of the norm at the face, 1 where there is none.
     pub fn face_weight(&self) -> Rational {
         self.norm.as_ref().and_then(|norm| norm.left().first().cloned()).unwrap_or_else(|| Rational::from(1))
+    }
+}
+
+impl Scheme {
+    /// A scheme of nothing.
+    pub fn empty() -> Scheme {
+        Scheme {
+            axes: Vec::new(),
+            interpolation_nodes: 2,
+            operators: Vec::new(),
+            applications: Vec::new(),
+            rates: Vec::new(),
+            outputs: Vec::new(),
+            corrections: Vec::new(),
+            injections: Vec::new(),
+            choices: Vec::new(),
+        }
+    }
+}
+
+impl LimitLaw {
+    /// Takes only this share (0 < share ≤ 1) of the limit.
+    pub fn lower(&mut self, share: Rational) {
+        if let Some(inverse) = share.recip() {
+            self.rate = Expression::Number(inverse).times(self.rate.clone());
+            self.closed_factor = share;
+        }
     }
 }

@@ -5,6 +5,10 @@
 
 use std::fmt;
 
+use num_bigint::BigInt;
+use num_traits::Zero;
+
+use crate::exact::matrix::{common_denominator, scaled};
 use crate::exact::{Rational, factorial};
 
 /// Σ wⱼ f(xⱼ) ≈ f⁽ᵈ⁾(at) at unit spacing, proved exact on polynomials up to the stated degree.
@@ -126,25 +130,39 @@ impl Stencil {
     }
 }
 
-/// The moments Σ wⱼ (xⱼ − at)ᵐ for m = 0, 1, 2, …
+/// The moments Σ wⱼ (xⱼ − at)ᵐ for m = 0, 1, 2, …, summed in integers and reduced once each.
 struct Moments {
-    offsets: Vec<Rational>,
-    terms: Vec<Rational>,
+    offsets: Vec<BigInt>,
+    offset_scale: BigInt,
+    terms: Vec<BigInt>,
+    term_scale: BigInt,
 }
 
 impl Moments {
     fn new(nodes: &[Rational], at: &Rational, weights: &[Rational]) -> Moments {
-        Moments { offsets: nodes.iter().map(|node| node - at).collect(), terms: weights.to_vec() }
+        let offsets: Vec<Rational> = nodes.iter().map(|node| node - at).collect();
+        let offset_scale = common_denominator(&offsets);
+        let term_scale = common_denominator(weights);
+        Moments {
+            offsets: offsets.iter().map(|offset| scaled(offset, &offset_scale)).collect(),
+            terms: weights.iter().map(|weight| scaled(weight, &term_scale)).collect(),
+            offset_scale,
+            term_scale,
+        }
     }
 
     /// The moment of the next degree, from nought on.
     fn next_moment(&mut self) -> Rational {
-        let moment = self.terms.iter().sum();
+        let sum: BigInt = self.terms.iter().sum();
+        let moment = if sum.is_zero() {
+            Rational::zero()
+        } else {
+            Rational::new(sum, self.term_scale.clone()).expect("common denominators are positive")
+        };
         for (term, offset) in self.terms.iter_mut().zip(&self.offsets) {
-            if !term.is_zero() {
-                *term *= offset;
-            }
+            *term *= offset;
         }
+        self.term_scale *= &self.offset_scale;
         moment
     }
 }

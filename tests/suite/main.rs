@@ -1,2 +1,17 @@
 //! The one test binary.
+
+mod c_driver;
+mod cli;
+mod closed;
+mod convergence;
+mod drivers;
+mod emission;
+mod exactness;
+mod executor;
+mod layering;
+mod limits;
+mod lowering;
+mod published;
+mod reference;
 mod syntax;
+mod traps;

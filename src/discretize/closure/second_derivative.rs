@@ -83,8 +83,8 @@ fn difference(order: usize) -> Vec<Rational> {
 /// w_k, k = 0, …, 2p: coefficients of sᵏ, s = 4 sin²(θ/2), in the narrow symbol less the symbol of DᵀD.
 fn difference_weights(half: usize) -> Vec<Rational> {
     let mut weights = vec![Rational::zero(); 2 * half + 1];
-    for k in 1..=half {
-        weights[k] += Rational::from(2) * factorial(k - 1).power(2) / factorial(2 * k);
+    for (k, weight) in weights.iter_mut().enumerate().take(half + 1).skip(1) {
+        *weight += Rational::from(2) * factorial(k - 1).power(2) / factorial(2 * k);
     }
     let slope: Vec<Rational> = (0..half).map(|k| factorial(k).power(2) / factorial(2 * k + 1)).collect();
     for (i, left) in slope.iter().enumerate() {

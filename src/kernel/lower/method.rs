@@ -8,9 +8,10 @@
 //! - `leapfrog` for second order in time: two arrays, damping is taken centred and solved for at each node.
 
 use super::stage::Lowering;
+use super::tableau::{StageRow, rows};
 use super::translate::Binding;
 use crate::exact::Rational;
-use crate::kernel::{Action, BufferId, FaceWrite, Operation, Pass, Stage, Sweep, ValueId, Write};
+use crate::kernel::{Action, BufferId, FaceTerm, FaceWrite, Operation, Pass, Stage, Sweep, ValueId, Write};
 use crate::model::calculus::{Variable, partial};
 use crate::model::{Expression, FieldId, Method, TimeOrder};
 use crate::scheme::Injection;
@@ -79,18 +80,26 @@ impl Lowering<'_> {
                 field[component.field.0] = *buffer;
             }
         }
-        Binding { field, rate, applied: Vec::new() }
+        Binding { field, rate, applied: Vec::new(), shift: Rational::zero() }
     }
 
     /// Rates of all components under a binding, with face terms; auxiliary sweeps first, the main sweep last (without writes).
-    fn evaluate(&mut self, components: &[Component], binding: &mut Binding, label: &str) -> Vec<Sweep> {
+    /// Data of flux conditions are taken at the stage as the method itself would have advanced them (`row`).
+    fn evaluate(
+        &mut self,
+        components: &[Component],
+        binding: &mut Binding,
+        label: &str,
+        row: Option<&StageRow>,
+    ) -> Vec<Sweep> {
         let scheme = self.scheme;
         let needed: Vec<&Expression> = scheme.rates.iter().collect();
         let mut sweeps = self.apply(&needed, binding);
         let mut main = Sweep { label: label.to_owned(), ..Sweep::default() };
         for component in components {
-            let second = self.model.equations[component.field.0].order == TimeOrder::Second;
-            let rate = if second && !component.velocity {
+            let has_velocity =
+                components.iter().any(|other| other.field == component.field && other.velocity);
+            let rate = if has_velocity && !component.velocity {
                 self.stored(&Expression::Rate(component.field), binding)
             } else {
                 self.stored(&scheme.rates[component.field.0], binding)
@@ -99,8 +108,9 @@ impl Lowering<'_> {
         }
         for correction in &scheme.corrections {
             let rate = rate_index(components, correction.field);
-            let term = self.face_term(correction.face, &correction.patch, rate, Action::Add, &correction.value, binding);
-            main.face_terms.push(term);
+            let on = self.face_set(correction.face, &correction.patch, binding);
+            let value = self.correction_value(&correction.value, binding, row);
+            main.face_terms.push(FaceTerm { on, rate, action: Action::Add, value });
         }
         for injection in &scheme.injections {
             for (rate, component) in components.iter().enumerate() {
@@ -110,7 +120,8 @@ impl Lowering<'_> {
                 let slope = if component.velocity { &injection.second_rate } else { &injection.rate };
                 let zero = Expression::zero();
                 let slope = slope.as_ref().unwrap_or(&zero);
-                let term = self.face_term(injection.face, &injection.patch, rate, Action::Replace, slope, binding);
+                let term =
+                    self.face_term(injection.face, &injection.patch, rate, Action::Replace, slope, binding);
                 main.face_terms.push(term);
             }
         }
@@ -167,9 +178,10 @@ impl Lowering<'_> {
         match method {
             Method::Euler => {
                 let next = self.level(&components, "next");
-                self.fused(&mut step, &components, "forward Euler", 0, &present, |_| {
-                    vec![Update { target: next.clone(), from: vec![(present.clone(), Rational::from(1))], rate: Rational::from(1) }]
-                });
+                let from = vec![(present.clone(), Rational::one())];
+                let update = Update { target: next.clone(), from, rate: Rational::one() };
+                let row = &rows(Method::Euler)[0];
+                self.fused_at(&mut step, &components, "forward Euler", row, &present, vec![update]);
                 self.close(&mut step, &components, &next);
                 rotation = present.iter().copied().zip(next).collect();
             }
@@ -187,15 +199,17 @@ impl Lowering<'_> {
         let second = self.level(components, "stage 2");
         let r = Rational::ratio;
         let one = Rational::from(1);
-        let plan: [(&str, Rational, &Level, &Level, Vec<(Level, Rational)>, Rational); 3] = [
-            ("stage 1 of 3", r(0, 1), present, &first, vec![(present.clone(), one.clone())], one.clone()),
-            ("stage 2 of 3", r(1, 1), &first, &second, vec![(present.clone(), r(3, 4)), (first.clone(), r(1, 4))], r(1, 4)),
-            ("stage 3 of 3", r(1, 2), &second, present, vec![(present.clone(), r(1, 3)), (second.clone(), r(2, 3))], r(2, 3)),
+        let plan = [
+            (present, &first, vec![(present.clone(), one.clone())], one.clone()),
+            (&first, &second, vec![(present.clone(), r(3, 4)), (first.clone(), r(1, 4))], r(1, 4)),
+            (&second, present, vec![(present.clone(), r(1, 3)), (second.clone(), r(2, 3))], r(2, 3)),
         ];
-        let ends = [r(1, 1), r(1, 2), r(1, 1)];
-        for ((label, fraction, source, target, from, rate), end) in plan.into_iter().zip(ends) {
+        let rows = rows(Method::Ssprk3);
+        for (index, (source, target, from, rate)) in plan.into_iter().enumerate() {
             let update = Update { target: target.clone(), from, rate };
-            self.fused_at(step, components, label, fraction, source, vec![update]);
+            let label = format!("stage {} of 3", index + 1);
+            self.fused_at(step, components, &label, &rows[index], source, vec![update]);
+            let end = rows.get(index + 1).map_or_else(Rational::one, |row| row.fraction.clone());
             self.settle(step, components, target, end);
         }
         self.close(step, components, present);
@@ -208,18 +222,30 @@ impl Lowering<'_> {
         let r = Rational::ratio;
         let one = || Rational::from(1);
         let from = |level: &Level| vec![(level.clone(), one())];
-        let update = |target: &Level, source: &Level, rate: Rational| Update { target: target.clone(), from: from(source), rate };
+        let update = |target: &Level, source: &Level, rate: Rational| Update {
+            target: target.clone(),
+            from: from(source),
+            rate,
+        };
         let plan = [
-            (r(0, 1), present, vec![update(&total, present, r(1, 6)), update(&odd, present, r(1, 2))]),
-            (r(1, 2), &odd, vec![update(&total, &total, r(1, 3)), update(&even, present, r(1, 2))]),
-            (r(1, 2), &even, vec![update(&total, &total, r(1, 3)), update(&odd, present, one())]),
-            (r(1, 1), &odd, vec![update(present, &total, r(1, 6))]),
+            (present, vec![update(&total, present, r(1, 6)), update(&odd, present, r(1, 2))]),
+            (&odd, vec![update(&total, &total, r(1, 3)), update(&even, present, r(1, 2))]),
+            (&even, vec![update(&total, &total, r(1, 3)), update(&odd, present, one())]),
+            (&odd, vec![update(present, &total, r(1, 6))]),
         ];
-        let reads_next = [Some((&odd, r(1, 2))), Some((&even, r(1, 2))), Some((&odd, one())), None];
-        for (index, ((fraction, source, updates), next)) in plan.into_iter().zip(reads_next).enumerate() {
-            self.fused_at(step, components, &format!("stage {} of 4", index + 1), fraction, source, updates);
-            if let Some((level, end)) = next {
-                self.settle(step, components, level, end);
+        let rows = rows(Method::Rk4);
+        let reads_next = [Some(&odd), Some(&even), Some(&odd), None];
+        for (index, ((source, updates), next)) in plan.into_iter().zip(reads_next).enumerate() {
+            self.fused_at(
+                step,
+                components,
+                &format!("stage {} of 4", index + 1),
+                &rows[index],
+                source,
+                updates,
+            );
+            if let Some(level) = next {
+                self.settle(step, components, level, rows[index + 1].fraction.clone());
             }
         }
         self.close(step, components, present);
@@ -229,12 +255,13 @@ impl Lowering<'_> {
         let residual = self.level(components, "residual");
         let rule = crate::scheme::step_rule::carpenter_kennedy();
         let count = rule.a.len();
+        let rows = rows(Method::Lsrk4);
         for index in 0..count {
             let keep = &rule.a[index];
             let from = if keep.is_zero() { Vec::new() } else { vec![(residual.clone(), keep.clone())] };
             let update = Update { target: residual.clone(), from, rate: Rational::from(1) };
             let label = format!("stage {} of {count}", index + 1);
-            self.fused_at(step, components, &label, rule.c[index].clone(), present, vec![update]);
+            self.fused_at(step, components, &label, &rows[index], present, vec![update]);
             let mut sweep = Sweep { label: format!("update of {label}"), ..Sweep::default() };
             for (target, source) in present.iter().zip(&residual) {
                 let (old, change) = (self.builder.load(*target), self.builder.load(*source));
@@ -250,31 +277,18 @@ impl Lowering<'_> {
         self.close(step, components, present);
     }
 
-    fn fused(
-        &mut self,
-        step: &mut Vec<Stage>,
-        components: &[Component],
-        label: &str,
-        fraction: i64,
-        source: &Level,
-        updates: impl FnOnce(&Level) -> Vec<Update>,
-    ) {
-        let updates = updates(source);
-        self.fused_at(step, components, label, Rational::from(fraction), source, updates);
-    }
-
     /// A stage: rates at `source`, then target ← Σ weight·level + dt·rate·(rate of the component).
     fn fused_at(
         &mut self,
         step: &mut Vec<Stage>,
         components: &[Component],
         label: &str,
-        fraction: Rational,
+        row: &StageRow,
         source: &Level,
         updates: Vec<Update>,
     ) {
         let mut binding = self.bind(components, source);
-        let mut sweeps = self.evaluate(components, &mut binding, label);
+        let mut sweeps = self.evaluate(components, &mut binding, label, Some(row));
         if let Some(main) = sweeps.last_mut() {
             for update in &updates {
                 for index in 0..components.len() {
@@ -283,7 +297,10 @@ impl Lowering<'_> {
                 }
             }
         }
-        step.push(Stage { fraction, passes: sweeps.into_iter().map(Pass::Sweep).collect() });
+        step.push(Stage {
+            fraction: row.fraction.clone(),
+            passes: sweeps.into_iter().map(Pass::Sweep).collect(),
+        });
     }
 
     fn combination(&mut self, update: &Update, index: usize) -> ValueId {
@@ -325,8 +342,12 @@ impl Lowering<'_> {
     }
 
     fn leapfrog(&mut self) -> Marching {
-        let components: Vec<Component> =
-            self.model.equations.iter().map(|equation| Component { field: equation.field, velocity: false }).collect();
+        let components: Vec<Component> = self
+            .model
+            .equations
+            .iter()
+            .map(|equation| Component { field: equation.field, velocity: false })
+            .collect();
         let present = self.level(&components, "");
         let past = self.level(&components, "before");
         let start = vec![self.initial(&components, &present)];
@@ -340,7 +361,10 @@ impl Lowering<'_> {
                 main.writes.push(Write { buffer: past[index], value });
             }
         }
-        step.push(Stage { fraction: Rational::from(0), passes: sweeps.into_iter().map(Pass::Sweep).collect() });
+        step.push(Stage {
+            fraction: Rational::from(0),
+            passes: sweeps.into_iter().map(Pass::Sweep).collect(),
+        });
         self.close(&mut step, &components, &past);
         let rotation: Vec<_> = present.iter().copied().zip(past.iter().copied()).collect();
         let state = present.iter().chain(&past).copied().collect();
@@ -363,11 +387,11 @@ impl Lowering<'_> {
         binding: &mut Binding,
         label: &str,
     ) -> (Vec<Sweep>, Vec<Option<usize>>) {
-        let mut sweeps = self.evaluate(components, binding, label);
+        let mut sweeps = self.evaluate(components, binding, label, None);
         let scheme = self.scheme;
         let mut damping = vec![None; components.len()];
         let Some(main) = sweeps.last_mut() else { return (sweeps, damping) };
-        let mut added: Vec<(usize, crate::kernel::FaceTerm)> = Vec::new();
+        let mut added: Vec<(usize, FaceTerm)> = Vec::new();
         for (index, component) in components.iter().enumerate() {
             let slope = |expression: &Expression| {
                 partial(expression, Variable::Rate(component.field), &self.model.coefficients)
@@ -390,7 +414,8 @@ impl Lowering<'_> {
             let inside = self.stored(&inside, binding);
             main.rates.push(inside);
             for (correction, slope) in faces {
-                let term = self.face_term(correction.face, &correction.patch, slot, Action::Add, &slope, binding);
+                let term =
+                    self.face_term(correction.face, &correction.patch, slot, Action::Add, &slope, binding);
                 added.push((slot, term));
             }
         }
@@ -434,7 +459,7 @@ impl Lowering<'_> {
             binding.rate[component.field.0] = Some(self.stored(&velocity, &binding));
         }
         let velocities = binding.rate.clone();
-        let mut sweeps = self.evaluate(components, &mut binding, "the level before the start");
+        let mut sweeps = self.evaluate(components, &mut binding, "the level before the start", None);
         if let Some(main) = sweeps.last_mut() {
             for (index, component) in components.iter().enumerate() {
                 let u = self.builder.load(present[index]);

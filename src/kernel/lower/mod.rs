@@ -1,8 +1,10 @@
 //! From a scheme to its kernel. Total: what can go wrong went wrong before.
 
+mod line;
 mod method;
 mod output;
 mod stage;
+mod tableau;
 mod translate;
 
 use super::{Axis, Builder, Field, Kernel, Limit, NamedOperator, Parameter, Step, TimePlan};
@@ -24,7 +26,7 @@ pub fn lower(model: &Model, scheme: &Scheme, law: &LimitLaw, notes: Vec<String>)
     let outputs = lowering.outputs(&marching.present);
     let rate = lowering.stored(&law.rate, &marching.present);
     let limit = Limit { rate, state_dependent: changes(model, law), law: law.text.clone() };
-    let fixed = Binding { field: Vec::new(), rate: Vec::new(), applied: Vec::new() };
+    let fixed = Binding::fixed();
     let axes = model
         .axes
         .iter()
@@ -82,7 +84,10 @@ pub fn lower(model: &Model, scheme: &Scheme, law: &LimitLaw, notes: Vec<String>)
     let operators = scheme
         .operators
         .iter()
-        .map(|operator| NamedOperator { name: operator.name.clone(), operator: operator.rule.line_operator() })
+        .map(|operator| NamedOperator {
+            name: operator.name.clone(),
+            operator: line::operator(&operator.rule),
+        })
         .collect();
     let Lowering { builder, buffers, .. } = lowering;
     let (values, tables) = builder.finish();
@@ -105,15 +110,13 @@ pub fn lower(model: &Model, scheme: &Scheme, law: &LimitLaw, notes: Vec<String>)
         limit,
         time,
         outputs,
-        interpolation_nodes: interpolation_nodes(scheme),
-        quadrature: scheme.axes.iter().map(|axis| axis.norm.as_ref().map_or_else(Vec::new, |norm| norm.left().to_vec())).collect(),
+        interpolation_nodes: scheme.interpolation_nodes,
+        quadrature: scheme
+            .axes
+            .iter()
+            .map(|axis| axis.norm.as_ref().map_or_else(Vec::new, |norm| norm.left().to_vec()))
+            .collect(),
     }
-}
-
-/// An even number of nodes, two more than the order of the solution: the interpolation error stays below that of the solution.
-fn interpolation_nodes(scheme: &Scheme) -> usize {
-    let order = scheme.axes.iter().map(|axis| axis.solution_order).max().unwrap_or(2);
-    order.div_ceil(2) * 2 + 2
 }
 
 fn changes(model: &Model, law: &LimitLaw) -> bool {

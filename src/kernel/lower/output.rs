@@ -9,11 +9,16 @@ impl Lowering<'_> {
     /// All outputs; `present` says where the state stands between steps.
     pub(super) fn outputs(&mut self, present: &Binding) -> Vec<Output> {
         let (model, scheme) = (self.model, self.scheme);
-        model.outputs.iter().zip(&scheme.outputs).map(|(output, value)| self.output(output, value, present)).collect()
+        model
+            .outputs
+            .iter()
+            .zip(&scheme.outputs)
+            .map(|(output, value)| self.output(output, value, present))
+            .collect()
     }
 
     fn output(&mut self, output: &model::Output, value: &Expression, present: &Binding) -> Output {
-        let fixed = Binding { field: Vec::new(), rate: Vec::new(), applied: Vec::new() };
+        let fixed = Binding::fixed();
         let direct = match value {
             Expression::Field(field) => Some(present.field[field.0]),
             _ => None,
@@ -23,7 +28,11 @@ impl Lowering<'_> {
             Some(buffer) if !largest => buffer,
             _ => self.buffer(format!("output {}", output.name)),
         };
-        let sweeps = if direct.is_some() && !largest { Vec::new() } else { self.filling(value, present, buffer, &output.name) };
+        let sweeps = if direct.is_some() && !largest {
+            Vec::new()
+        } else {
+            self.filling(value, present, buffer, &output.name)
+        };
         let kind = match &output.kind {
             model::OutputKind::Snapshot => OutputKind::Snapshot,
             model::OutputKind::Integral => OutputKind::Integral,
@@ -48,7 +57,11 @@ impl Lowering<'_> {
         let mut binding = present.clone();
         let mut sweeps = self.apply(&[value], &mut binding);
         let value = self.stored(value, &binding);
-        sweeps.push(Sweep { label: format!("output {name}"), writes: vec![Write { buffer, value }], ..Sweep::default() });
+        sweeps.push(Sweep {
+            label: format!("output {name}"),
+            writes: vec![Write { buffer, value }],
+            ..Sweep::default()
+        });
         sweeps
     }
 

@@ -2,7 +2,7 @@
 
 use super::translate::{Binding, Translation};
 use crate::kernel::{
-    Action, Buffer, BufferId, Builder, Extent, FaceSet, FaceTerm, OperatorId, Source, Sweep, TableId, ValueId, Write,
+    Action, Buffer, BufferId, Builder, Extent, FaceSet, FaceTerm, OperatorId, Source, Sweep, ValueId, Write,
 };
 use crate::model::{Comparison, Expression, Face, Model, Side};
 use crate::scheme::Scheme;
@@ -24,7 +24,8 @@ impl<'a> Lowering<'a> {
     }
 
     pub(super) fn value(&mut self, expression: &Expression, binding: &Binding) -> ValueId {
-        Translation { builder: &mut self.builder, coefficients: &self.model.coefficients }.value(expression, binding)
+        Translation { builder: &mut self.builder, coefficients: &self.model.coefficients }
+            .value(expression, binding)
     }
 
     /// A value ready for a sweep: what is spatial comes from its table.
@@ -49,11 +50,11 @@ impl<'a> Lowering<'a> {
             let mut pending = Vec::new();
             for index in here {
                 let application = self.scheme.applications[index].clone();
-                let source = self.source(index, false, &application.of, application.axis.0, binding, &mut writes);
-                let coefficient = application
-                    .coefficient
-                    .as_ref()
-                    .map(|coefficient| self.source(index, true, coefficient, application.axis.0, binding, &mut writes));
+                let source =
+                    self.source(index, false, &application.of, application.axis.0, binding, &mut writes);
+                let coefficient = application.coefficient.as_ref().map(|coefficient| {
+                    self.source(index, true, coefficient, application.axis.0, binding, &mut writes)
+                });
                 pending.push((index, application.operator, application.axis.0, source, coefficient));
             }
             if !writes.is_empty() {
@@ -137,7 +138,8 @@ impl<'a> Lowering<'a> {
     }
 
     fn auxiliary_buffer(&mut self, application: usize, is_coefficient: bool) -> BufferId {
-        let known = self.auxiliary.iter().find(|(own, kind, _)| *own == application && *kind == is_coefficient);
+        let known =
+            self.auxiliary.iter().find(|(own, kind, _)| *own == application && *kind == is_coefficient);
         if let Some((_, _, buffer)) = known {
             return *buffer;
         }
@@ -175,7 +177,6 @@ impl<'a> Lowering<'a> {
         let value = self.stored(value, binding);
         FaceTerm { on, rate, action, value }
     }
-
 }
 
 fn applied_in(expression: &Expression) -> Vec<usize> {

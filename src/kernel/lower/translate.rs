@@ -16,6 +16,15 @@ pub(super) struct Binding {
     pub(super) rate: Vec<Option<ValueId>>,
     /// Values of applied operators, once known.
     pub(super) applied: Vec<Option<ValueId>>,
+    /// Time is taken this fraction of the step away from the stage's time.
+    pub(super) shift: Rational,
+}
+
+impl Binding {
+    /// For expressions that hold no unknowns.
+    pub(super) fn fixed() -> Binding {
+        Binding { field: Vec::new(), rate: Vec::new(), applied: Vec::new(), shift: Rational::zero() }
+    }
 }
 
 /// Translates expressions under a binding.
@@ -37,7 +46,7 @@ impl Translation<'_> {
                 value
             }
             Expression::Coordinate(axis) => self.builder.value(Operation::Coordinate(axis.0)),
-            Expression::Time => self.builder.value(Operation::Time),
+            Expression::Time => self.time(&binding.shift),
             Expression::Field(FieldId(field)) => self.builder.load(binding.field[*field]),
             Expression::Rate(FieldId(field)) => match binding.rate[*field] {
                 Some(value) => value,
@@ -67,8 +76,21 @@ impl Translation<'_> {
                 None => self.builder.whole(0),
             },
             // Neither survives discretization: derivatives have become `Applied`, normal derivatives face terms.
-            Expression::Derivative(_) | Expression::Normal(_) => self.builder.whole(0),
+            Expression::Derivative(_) | Expression::Normal(_) | Expression::SecondRate(_) => {
+                self.builder.whole(0)
+            }
         }
+    }
+
+    fn time(&mut self, shift: &Rational) -> ValueId {
+        let time = self.builder.value(Operation::Time);
+        if shift.is_zero() {
+            return time;
+        }
+        let step = self.builder.value(Operation::Step);
+        let shift = self.builder.literal(shift.clone());
+        let distance = self.builder.multiply(shift, step);
+        self.builder.add(time, distance)
     }
 
     fn sum(&mut self, items: &[Expression], binding: &Binding) -> ValueId {
@@ -215,7 +237,9 @@ impl Translation<'_> {
 fn signed(term: &Expression) -> (bool, Expression) {
     let leads_negative = match term {
         Expression::Number(number) => number.is_negative(),
-        Expression::Product(items) => matches!(items.first(), Some(Expression::Number(number)) if number.is_negative()),
+        Expression::Product(items) => {
+            matches!(items.first(), Some(Expression::Number(number)) if number.is_negative())
+        }
         Expression::Quotient(above, _) => signed(above).0,
         _ => false,
     };
@@ -226,7 +250,9 @@ impl Expression {
     /// −expression, taken into the numerator of a quotient so that no new factor appears.
     fn negative_through(self) -> Expression {
         match self {
-            Expression::Quotient(above, below) => Expression::Quotient(Box::new(above.negative_through()), below),
+            Expression::Quotient(above, below) => {
+                Expression::Quotient(Box::new(above.negative_through()), below)
+            }
             other => other.negative(),
         }
     }

@@ -1,0 +1,629 @@
+//! Accuracy, time, outputs and verification.
+
+use super::Checker;
+use super::formula::Place;
+use super::scope::Typed;
+use crate::diagnostic::nearest::nearest;
+use crate::diagnostic::{Diagnostic, codes_check};
+use crate::exact::Rational;
+use crate::model::sign::Sign;
+use crate::model::{
+    self, Accuracy, AskedOrder, Dimension, Expression, FieldId, Method, Output, OutputKind, Step, TimePlan,
+    Verification,
+};
+use crate::source::Span;
+use crate::syntax::tree::{
+    self, AccuracyKind, AccuracyLine, ClosureFamily, OrderOf, Section, TimeKind, VerificationKind,
+};
+
+/// Gauges that one line may make.
+const MOST_GAUGES: i64 = 10_000;
+
+/// Methods that the literature names and that come later.
+const IMPLICIT: [&str; 6] = ["backward-euler", "crank-nicolson", "bdf2", "trapezoidal", "implicit", "sdirk"];
+
+impl Checker<'_> {
+    /// The interior order of a named operator's `with` clauses.
+    pub(super) fn operator_order(&mut self, clauses: &[AccuracyLine]) -> Option<usize> {
+        let mut order = None;
+        for clause in clauses {
+            match &clause.kind {
+                AccuracyKind::Order { order: own, .. } => order = self.order_in_range(own, own.span),
+                other => self.refuse_closures(other, clause.span),
+            }
+        }
+        order
+    }
+
+    fn refuse_closures(&mut self, kind: &AccuracyKind, span: Span) {
+        match kind {
+            AccuracyKind::Closures(ClosureFamily::OneSided) => {
+                self.not_yet(
+                    span,
+                    "one-sided closures",
+                    "leave it out: closures are energy-stable by default",
+                );
+            }
+            AccuracyKind::Closures(ClosureFamily::Mirrored) => {
+                self.not_yet(span, "mirrored closures", "leave it out and give ∂/∂n = 0 at the face");
+            }
+            AccuracyKind::Dissipation { .. } => {
+                self.not_yet(span, "dissipation", "leave it out, or resolve the steep parts with more nodes");
+            }
+            AccuracyKind::Closures(ClosureFamily::EnergyStable) | AccuracyKind::Order { .. } => {}
+        }
+    }
+
+    fn order_in_range(&mut self, order: &tree::Whole, span: Span) -> Option<usize> {
+        if (1..=16).contains(&order.value) {
+            return Some(order.value as usize);
+        }
+        self.diagnostics.push(
+            Diagnostic::error(
+                codes_check::ORDER_RANGE,
+                span,
+                format!("order {} is not offered", order.value),
+            )
+            .with_text("expected 1 to 16"),
+        );
+        None
+    }
+
+    pub(super) fn accuracy(&mut self) -> Option<Accuracy> {
+        let file = self.file;
+        let mut per_axis: Vec<Option<AskedOrder>> = vec![None; file.axes.len()];
+        let mut span = None;
+        let mut sound = !self.has_faulty(Section::Accuracy);
+        let mut general: Option<AskedOrder> = None;
+        for line in &file.accuracy {
+            let AccuracyKind::Order { order, of, axes } = &line.kind else {
+                self.refuse_closures(&line.kind, line.span);
+                continue;
+            };
+            span.get_or_insert(line.span);
+            let Some(value) = self.order_in_range(order, order.span) else {
+                sound = false;
+                continue;
+            };
+            let asked = match of {
+                OrderOf::Solution => AskedOrder::Solution(value),
+                OrderOf::Interior => AskedOrder::Interior(value),
+            };
+            if axes.is_empty() {
+                if general.is_some() {
+                    self.diagnostics.push(Diagnostic::error(
+                        codes_check::STATED_TWICE,
+                        line.span,
+                        "the order is stated twice",
+                    ));
+                    sound = false;
+                }
+                general = Some(asked);
+            }
+            for axis in axes {
+                let found = self.scope.axis(&axis.text);
+                match self.scope.expect(axis, "an axis", found, &mut self.diagnostics) {
+                    Some(id) if per_axis[id.0].is_some() => {
+                        self.diagnostics.push(Diagnostic::error(
+                            codes_check::STATED_TWICE,
+                            axis.span,
+                            format!("the order along `{}` is stated twice", axis.text),
+                        ));
+                        sound = false;
+                    }
+                    Some(id) => per_axis[id.0] = Some(asked),
+                    None => sound = false,
+                }
+            }
+        }
+        if sound
+            && file.section(Section::Accuracy).is_some()
+            && general.is_none()
+            && per_axis.iter().any(Option::is_none)
+        {
+            let at = self.section_span(Section::Accuracy);
+            self.diagnostics.push(
+                Diagnostic::error(
+                    codes_check::SECTION_MISSING,
+                    at,
+                    "the order of accuracy is not stated for every axis",
+                )
+                .with_remedy("add `order 4`, say, to the section `accuracy`"),
+            );
+            return None;
+        }
+        let per_axis: Option<Vec<AskedOrder>> = per_axis.into_iter().map(|own| own.or(general)).collect();
+        sound.then_some(())?;
+        Some(Accuracy {
+            span: span.unwrap_or_else(|| self.section_span(Section::Accuracy)),
+            per_axis: per_axis?,
+        })
+    }
+
+    pub(super) fn time(&mut self) -> Option<TimePlan> {
+        let file = self.file;
+        let (mut interval, mut method, mut step) = (None, None, None);
+        let mut sound = !self.has_faulty(Section::Time);
+        for line in &file.time {
+            let twice = match &line.kind {
+                TimeKind::Interval { .. } => interval.is_some(),
+                TimeKind::Method(_) => method.is_some(),
+                TimeKind::Step(_) | TimeKind::StepOfLimit(_) => step.is_some(),
+            };
+            if twice {
+                self.diagnostics.push(Diagnostic::error(
+                    codes_check::STATED_TWICE,
+                    line.span,
+                    "this is stated twice",
+                ));
+                sound = false;
+                continue;
+            }
+            match &line.kind {
+                TimeKind::Interval { start, end } => interval = Some(self.interval(start, end, line.span)),
+                TimeKind::Method(name) => method = Some(self.method(name)),
+                TimeKind::Step(duration) => {
+                    step = Some(self.duration(duration, "the step").map(Step::Duration))
+                }
+                TimeKind::StepOfLimit(fraction) => step = Some(self.fraction(fraction)),
+            }
+        }
+        if sound && file.section(Section::Time).is_some() {
+            let span = self.section_span(Section::Time);
+            for (missing, example) in [
+                (interval.is_none(), "0 s to 60 s"),
+                (method.is_none(), "method rk4"),
+                (step.is_none(), "step 0.9 of limit"),
+            ] {
+                if missing {
+                    self.diagnostics.push(
+                        Diagnostic::error(
+                            codes_check::SECTION_MISSING,
+                            span,
+                            "the section `time` is not complete",
+                        )
+                        .with_remedy(format!("add a line like `{example}`")),
+                    );
+                }
+            }
+        }
+        let (start, end) = interval??;
+        let (method, step) = (method??, step??);
+        sound.then(|| TimePlan { start, end, method, step, span: self.section_span(Section::Time) })
+    }
+
+    fn interval(
+        &mut self,
+        start: &tree::Expression,
+        end: &tree::Expression,
+        span: Span,
+    ) -> Option<(Expression, Expression)> {
+        let (a, b) = (self.formula(start, Place::Constant), self.formula(end, Place::Constant));
+        let (a, b) = (a?, b?);
+        if let (Some(first), Some(second)) = (&a.dimension, &b.dimension)
+            && first != second
+        {
+            let (first, second) = (first.clone(), second.clone());
+            self.mismatch(end.span, &second, start.span, &first, "the ends of the time interval");
+            return None;
+        }
+        let dimension = self.time_dimension.clone();
+        if !dimension.is_one() && dimension != Dimension::time() {
+            self.diagnostics.push(
+                Diagnostic::error(
+                    codes_check::NOT_A_TIME,
+                    span,
+                    format!("the time interval is in {dimension}"),
+                )
+                .with_text("expected times, like `0 s to 3 d`, or pure numbers"),
+            );
+            return None;
+        }
+        if matches!(
+            self.sign(&b.value.clone().minus(a.value.clone())),
+            Sign::Negative | Sign::Zero | Sign::NonPositive
+        ) {
+            self.diagnostics.push(Diagnostic::error(
+                codes_check::TIME_DIRECTION,
+                span,
+                "the end of the time interval is not after its start",
+            ));
+            return None;
+        }
+        Some((a.value, b.value))
+    }
+
+    fn method(&mut self, name: &tree::Name) -> Option<Method> {
+        if let Some((method, _)) = Method::ALL.iter().find(|(_, known)| *known == name.text) {
+            return Some(*method);
+        }
+        if IMPLICIT.contains(&name.text.to_lowercase().as_str()) {
+            self.not_yet(
+                name.span,
+                &format!("the implicit method `{}`", name.text),
+                "use an explicit method, such as rk4 or lsrk4",
+            );
+            return None;
+        }
+        let names: Vec<&str> = Method::ALL.iter().map(|(_, known)| *known).collect();
+        let remedy = match nearest(&name.text, names.iter().copied()) {
+            Some(near) => format!("did you mean `{near}`?"),
+            None => format!("the methods are {}", names.join(", ")),
+        };
+        self.diagnostics.push(
+            Diagnostic::error(
+                codes_check::UNKNOWN_METHOD,
+                name.span,
+                format!("`{}` is no time method known here", name.text),
+            )
+            .with_text(format!("expected one of {}", names.join(", ")))
+            .with_remedy(remedy),
+        );
+        None
+    }
+
+    /// A positive time.
+    fn duration(&mut self, tree: &tree::Expression, what: &str) -> Option<Expression> {
+        let typed = self.formula(tree, Place::Constant)?;
+        if let Some(own) = typed.dimension.as_ref().filter(|own| **own != self.time_dimension) {
+            self.diagnostics.push(
+                Diagnostic::error(codes_check::NOT_A_TIME, tree.span, format!("{what} is a time"))
+                    .with_text(format!("this is in {own}, and the time interval in {}", self.time_dimension)),
+            );
+            return None;
+        }
+        if !matches!(self.sign(&typed.value), Sign::Positive) {
+            self.diagnostics.push(Diagnostic::error(
+                codes_check::NOT_POSITIVE,
+                tree.span,
+                format!("{what} must be greater than zero"),
+            ));
+            return None;
+        }
+        Some(typed.value)
+    }
+
+    fn fraction(&mut self, tree: &tree::Expression) -> Option<Step> {
+        let typed = self.formula(tree, Place::Constant)?;
+        if let Expression::Number(fraction) = &typed.value
+            && typed.dimension.as_ref().is_none_or(Dimension::is_one)
+            && fraction.is_positive()
+            && *fraction <= Rational::from(100)
+        {
+            return Some(Step::OfLimit(fraction.clone()));
+        }
+        self.diagnostics.push(
+            Diagnostic::error(
+                codes_check::NOT_POSITIVE,
+                tree.span,
+                "the fraction of the limit is a number greater than zero",
+            )
+            .with_remedy("write a literal, like `step 0.9 of limit`"),
+        );
+        None
+    }
+
+    pub(super) fn outputs(
+        &mut self,
+        axes: &Option<Vec<model::Axis>>,
+        fields: &Option<Vec<model::Field>>,
+    ) -> Option<Vec<Output>> {
+        let file = self.file;
+        let mut sound = !self.has_faulty(Section::Output);
+        let mut outputs: Vec<Output> = Vec::new();
+        for line in &file.outputs {
+            let every = match &line.every {
+                Some(duration) => self.duration(duration, "the time between outputs").map(Some),
+                None => Some(None),
+            };
+            let made = self.output(line, axes, fields);
+            let (Some(every), Some(made)) = (every, made) else {
+                sound = false;
+                continue;
+            };
+            for mut output in made {
+                output.every = every.clone();
+                if let Some(twin) = outputs.iter().find(|known| known.name == output.name) {
+                    self.diagnostics.push(
+                        Diagnostic::error(
+                            codes_check::DUPLICATE_NAME,
+                            line.span,
+                            format!("the output `{}` is named twice", output.name),
+                        )
+                        .with_label(twin.span, "first here"),
+                    );
+                    sound = false;
+                    continue;
+                }
+                outputs.push(output);
+            }
+        }
+        sound.then_some(outputs)
+    }
+
+    fn output(
+        &mut self,
+        line: &tree::OutputLine,
+        axes: &Option<Vec<model::Axis>>,
+        fields: &Option<Vec<model::Field>>,
+    ) -> Option<Vec<Output>> {
+        let span = line.span;
+        match &line.kind {
+            tree::OutputKind::Field(name) => {
+                let found = self.scope.field(&name.text);
+                let id = self.scope.expect(name, "a field", found, &mut self.diagnostics)?;
+                let dimension = self.scope.fields.get(id.0).cloned();
+                let typed = Typed { value: Expression::Field(id), dimension };
+                Some(vec![finish(&name.text, typed, OutputKind::Snapshot, fields, span)])
+            }
+            tree::OutputKind::Derived { name, value } => {
+                let typed = self.formula(value, Place::Output)?;
+                self.output_name(name)?;
+                Some(vec![finish(&name.text, typed, OutputKind::Snapshot, fields, span)])
+            }
+            tree::OutputKind::Maximum { name, value } => {
+                let typed = self.formula(value, Place::Output)?;
+                self.output_name(name)?;
+                Some(vec![finish(&name.text, typed, OutputKind::Maximum, fields, span)])
+            }
+            tree::OutputKind::Integral { name, value, over } => {
+                let typed = self.formula(value, Place::Output)?;
+                for axis in over {
+                    let found = self.scope.axis(&axis.text);
+                    self.scope.expect(axis, "an axis", found, &mut self.diagnostics)?;
+                }
+                if over.len() != self.file.axes.len() {
+                    self.not_yet(
+                        span,
+                        "an integral over some of the axes only",
+                        "integrate over all axes of the model",
+                    );
+                    return None;
+                }
+                let volume = self.scope.axes.iter().fold(Dimension::one(), |total, axis| total.times(axis));
+                let typed =
+                    Typed { dimension: typed.dimension.map(|own| own.times(&volume)), value: typed.value };
+                let mut output = finish(&name.text, typed, OutputKind::Integral, &None, span);
+                output.unit = output.dimension.to_string();
+                Some(vec![output])
+            }
+            tree::OutputKind::Gauge { name, value, place } => {
+                let typed = self.formula(value, Place::Output)?;
+                self.output_name(name)?;
+                let places: Vec<(tree::Name, Vec<Expression>)> = place
+                    .iter()
+                    .map(|coordinate| {
+                        Some((
+                            coordinate.axis.clone(),
+                            vec![self.coordinate(&coordinate.axis, &coordinate.value)?],
+                        ))
+                    })
+                    .collect::<Option<_>>()?;
+                let place = self.place(places, axes, span)?;
+                Some(
+                    place
+                        .into_iter()
+                        .map(|place| {
+                            finish(&name.text, typed.clone(), OutputKind::Gauge { place }, fields, span)
+                        })
+                        .collect(),
+                )
+            }
+            tree::OutputKind::Gauges { name, value, place } => {
+                let typed = self.formula(value, Place::Output)?;
+                self.output_name(name)?;
+                let mut places = Vec::new();
+                for range in place {
+                    places.push((range.axis.clone(), self.range(range)?));
+                }
+                let all = self.place(places, axes, span)?;
+                let many = all.len();
+                Some(
+                    all.into_iter()
+                        .enumerate()
+                        .map(|(index, place)| {
+                            let label = if many == 1 {
+                                name.text.clone()
+                            } else {
+                                format!("{}_{}", name.text, index + 1)
+                            };
+                            finish(&label, typed.clone(), OutputKind::Gauge { place }, fields, span)
+                        })
+                        .collect(),
+                )
+            }
+        }
+    }
+
+    /// An output may be named as anything but a field, which has a folder of that name already.
+    fn output_name(&mut self, name: &tree::Name) -> Option<()> {
+        if self.scope.field(&name.text).is_none() {
+            return Some(());
+        }
+        self.diagnostics.push(
+            Diagnostic::error(
+                codes_check::DUPLICATE_NAME,
+                name.span,
+                format!("`{}` is a field already", name.text),
+            )
+            .with_remedy("give the output a name of its own"),
+        );
+        None
+    }
+
+    fn coordinate(&mut self, axis: &tree::Name, value: &tree::Expression) -> Option<Expression> {
+        let found = self.scope.axis(&axis.text);
+        let id = self.scope.expect(axis, "an axis", found, &mut self.diagnostics)?;
+        let typed = self.formula(value, Place::Constant)?;
+        let wanted = self.scope.axes.get(id.0).cloned()?;
+        if let Some(own) = typed.dimension.as_ref().filter(|own| **own != wanted) {
+            let own = own.clone();
+            self.mismatch(value.span, &own, axis.span, &wanted, "a place and its axis");
+            return None;
+        }
+        let tree::Extent::Interval { low, high, .. } = &self.file.axes[id.0].extent else { return None };
+        let quiet = self.diagnostics.clone();
+        let (low, high) = (self.formula(low, Place::Constant), self.formula(high, Place::Constant));
+        self.diagnostics = quiet;
+        let (low, high) = (low?, high?);
+        let below = self.sign(&typed.value.clone().minus(low.value)) == Sign::Negative;
+        let above = self.sign(&high.value.minus(typed.value.clone())) == Sign::Negative;
+        if below || above {
+            self.diagnostics.push(
+                Diagnostic::error(
+                    codes_check::OUTSIDE,
+                    value.span,
+                    format!("this lies outside the axis `{}`", axis.text),
+                )
+                .with_label(self.file.axes[id.0].span, "the axis"),
+            );
+            return None;
+        }
+        Some(typed.value)
+    }
+
+    /// `A to B by C`: A, A + C, … up to B.
+    fn range(&mut self, range: &tree::GaugeRange) -> Option<Vec<Expression>> {
+        let first = self.coordinate(&range.axis, &range.first)?;
+        let Some((last, by)) = &range.to else { return Some(vec![first]) };
+        let (last, step) = (self.coordinate(&range.axis, last)?, self.formula(by, Place::Constant)?.value);
+        let (Expression::Number(a), Expression::Number(b), Expression::Number(c)) = (&first, &last, &step)
+        else {
+            self.not_yet(
+                by.span,
+                "a range of gauges that is not given by plain numbers",
+                "give the places as numbers with units",
+            );
+            return None;
+        };
+        let count = (b - a).checked_div(c).map(|count| count.floor()).and_then(|count| count.to_i64());
+        let Some(count) = count.filter(|count| (0..MOST_GAUGES).contains(count)) else {
+            self.diagnostics.push(
+                Diagnostic::error(
+                    codes_check::NOT_POSITIVE,
+                    by.span,
+                    "this distance does not lead from the first place to the last",
+                )
+                .with_text(format!("at most {MOST_GAUGES} gauges in a line")),
+            );
+            return None;
+        };
+        Some((0..=count).map(|index| Expression::Number(a + &(c * &Rational::from(index)))).collect())
+    }
+
+    /// All combinations of coordinates, one for each axis.
+    fn place(
+        &mut self,
+        given: Vec<(tree::Name, Vec<Expression>)>,
+        axes: &Option<Vec<model::Axis>>,
+        span: Span,
+    ) -> Option<Vec<Vec<Expression>>> {
+        let mut places: Vec<Vec<Expression>> = vec![Vec::new()];
+        for axis in axes.as_ref()? {
+            let mut of_axis = given.iter().filter(|(name, _)| name.text == axis.name);
+            let (Some((_, values)), None) = (of_axis.next(), of_axis.next()) else {
+                self.diagnostics.push(
+                    Diagnostic::error(
+                        codes_check::PLACE_INCOMPLETE,
+                        span,
+                        format!("a place needs one coordinate along `{}`", axis.name),
+                    )
+                    .with_remedy(format!("write `at {} = …`, one for each axis", axis.name)),
+                );
+                return None;
+            };
+            places = places
+                .into_iter()
+                .flat_map(|place| {
+                    values
+                        .iter()
+                        .map(move |value| place.iter().cloned().chain([value.clone()]).collect::<Vec<_>>())
+                })
+                .collect();
+            if places.len() as i64 > MOST_GAUGES {
+                self.diagnostics.push(Diagnostic::error(
+                    codes_check::NOT_POSITIVE,
+                    span,
+                    format!("more than {MOST_GAUGES} gauges in a line"),
+                ));
+                return None;
+            }
+        }
+        Some(places)
+    }
+
+    /// The outer nothing is a fault, the inner one an absent section.
+    pub(super) fn verification(&mut self) -> Option<Option<Verification>> {
+        let file = self.file;
+        if file.verification.is_empty() {
+            return (!self.has_faulty(Section::Verification)).then_some(None);
+        }
+        let mut result = Verification { solutions: Vec::new(), manufactured: false, grids: Vec::new() };
+        let mut sound = !self.has_faulty(Section::Verification);
+        for line in &file.verification {
+            match &line.kind {
+                VerificationKind::Exact { field, value }
+                | VerificationKind::Manufactured { field, value } => {
+                    result.manufactured |= matches!(line.kind, VerificationKind::Manufactured { .. });
+                    match self.solution(field, value) {
+                        Some((id, _)) if result.solutions.iter().any(|(known, _)| *known == id) => {
+                            self.diagnostics.push(Diagnostic::error(
+                                codes_check::STATED_TWICE,
+                                line.span,
+                                "this solution is stated twice",
+                            ));
+                            sound = false;
+                        }
+                        Some(solution) => result.solutions.push(solution),
+                        None => sound = false,
+                    }
+                }
+                VerificationKind::Grids(grids) => {
+                    result.grids = grids.iter().map(|grid| grid.value as usize).collect();
+                    if !result.grids.is_sorted_by(|a, b| a < b) {
+                        self.diagnostics.push(Diagnostic::error(
+                            codes_check::GRIDS_ORDER,
+                            line.span,
+                            "grids grow from one to the next",
+                        ));
+                        sound = false;
+                    }
+                }
+            }
+        }
+        sound.then_some(Some(result))
+    }
+
+    fn solution(&mut self, field: &tree::Name, value: &tree::Expression) -> Option<(FieldId, Expression)> {
+        let found = self.scope.field(&field.text);
+        let id = self.scope.expect(field, "a field", found, &mut self.diagnostics)?;
+        let typed = self.formula(value, Place::Data)?;
+        let wanted = self.scope.fields.get(id.0).cloned()?;
+        if let Some(own) = typed.dimension.as_ref().filter(|own| **own != wanted) {
+            let own = own.clone();
+            self.mismatch(value.span, &own, field.span, &wanted, "a solution and its field");
+            return None;
+        }
+        Some((id, typed.value))
+    }
+}
+
+/// An output in the unit of a field of the same dimension, or in SI.
+fn finish(
+    name: &str,
+    typed: Typed,
+    kind: OutputKind,
+    fields: &Option<Vec<model::Field>>,
+    span: Span,
+) -> Output {
+    let dimension = typed.dimension.unwrap_or_else(Dimension::one);
+    let like = match Checker::plain_field(&typed.value) {
+        Some(id) => fields.as_ref().and_then(|fields| fields.get(id.0)),
+        None => fields.iter().flatten().find(|field| field.dimension == dimension),
+    };
+    let (unit, scale) = match like {
+        Some(field) => (field.unit.clone(), field.scale.clone()),
+        None => (dimension.to_string(), Expression::one()),
+    };
+    Output { name: name.to_owned(), dimension, unit, scale, value: typed.value, kind, every: None, span }
+}
