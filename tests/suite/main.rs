@@ -8,6 +8,7 @@ mod drivers;
 mod emission;
 mod exactness;
 mod executor;
+mod in_process;
 mod layering;
 mod limits;
 mod lowering;
