@@ -1,4 +1,5 @@
 //! The one test binary.
 
+mod beyond;
 mod exactness;
 mod published;

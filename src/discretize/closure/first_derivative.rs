@@ -2,7 +2,8 @@
 //!
 //! Unknown are the norm weights h₀ … h_{b−1} and the upper triangle of Q's b × b corner; the rest of the
 //! corner follows by antisymmetry, everything else from the interior. Exactness of the rows is linear in
-//! them. What freedom is left goes into the least truncation error in the norm, degree after degree.
+//! them. What freedom is left goes first into norm weights close to one (orders 10 and 12, whose exactness
+//! leaves the norm some), then into the least truncation error in the norm, degree after degree.
 //! Not here: the proof, which the constructors in [`crate::scheme`] make.
 
 use crate::discretize::interior;
@@ -11,9 +12,9 @@ use crate::scheme::{ClosedRow, DifferenceOperator, Norm, Stencil, SummationByPar
 
 use super::{Impossible, Recipe, only_member};
 
-/// Degrees of the truncation stages above the first; beyond them a direction that no error sees would be
+/// The truncation stages end at the degree 2p + this; beyond it a direction that no error sees would be
 /// followed to an absurd spectral radius.
-const MOST_STAGES: usize = 8;
+const LAST_DEGREE_BEYOND_ORDER: usize = 6;
 
 /// Where the unknowns are, and the interior weights.
 struct Layout {
@@ -40,33 +41,37 @@ pub(super) fn closed(recipe: &Recipe) -> Result<SummationByParts, Impossible> {
     let layout =
         Layout { half, closed: recipe.closed_rows, interior: stencil.weights()[half + 1..].to_vec() };
     let family = layout.exact_family()?;
-    if family.directions.iter().any(|direction| direction[..layout.closed].iter().any(|h| !h.is_zero())) {
-        return Err(Impossible::NormNotUnique);
-    }
-    let mut best = family.clone();
-    for degree in half + 1..=half + MOST_STAGES {
-        if best.directions.is_empty() {
-            break;
-        }
-        best = best.least_squares(&layout.truncation_errors(degree, &best)?);
-    }
-    let mut unknowns = only_member(best)?;
+    let mut coordinates = layout.optimum(&family)?;
     if let Some(denominator) = recipe.tidy_denominator {
-        unknowns = tidied(&family, &unknowns, denominator);
+        let scale = Rational::from(denominator);
+        for coordinate in &mut coordinates {
+            *coordinate = (&*coordinate * &scale).rounded() / &scale;
+        }
     }
+    let unknowns = family.at(&coordinates);
     layout.operator(stencil, recipe.order, &unknowns)
 }
 
-/// The family's member whose free coordinates are rounded to multiples of 1/denominator.
-fn tidied(family: &AffineSolution, unknowns: &[Rational], denominator: i64) -> Vec<Rational> {
-    let scale = Rational::from(denominator);
-    let coordinates: Vec<Rational> = family
-        .free
-        .iter()
-        .map(|&index| (&unknowns[index] - &family.particular[index]) * &scale)
-        .map(|scaled| scaled.rounded() / &scale)
-        .collect();
-    family.at(&coordinates)
+/// All coordinates of a family: what is searched when all its members are.
+fn all_coordinates(family: &AffineSolution) -> AffineSolution {
+    let size = family.directions.len();
+    let identity = Matrix::identity(size);
+    AffineSolution {
+        particular: vec![Rational::zero(); size],
+        directions: (0..size).map(|index| identity.row(index).to_vec()).collect(),
+        free: (0..size).collect(),
+    }
+}
+
+/// A residual in the unknowns as one in the family's coordinates. Coordinates are far fewer and their
+/// fractions far shorter than those of the unknowns at an optimum.
+fn in_coordinates(residual: Residual, family: &AffineSolution) -> Residual {
+    let Residual { row, constant, weight } = residual;
+    Residual {
+        row: family.directions.iter().map(|direction| Rational::dot(&row, direction)).collect(),
+        constant: Rational::dot(&row, &family.particular) + constant,
+        weight,
+    }
 }
 
 impl Layout {
@@ -123,14 +128,58 @@ impl Layout {
         Ok(system.solve_affine(&right_side)?)
     }
 
-    /// hᵢ eᵢ² of every closed row at one degree, the norm being known.
-    fn truncation_errors(&self, degree: usize, best: &AffineSolution) -> Result<Vec<Residual>, Impossible> {
+    /// The coordinates of the family's best member.
+    fn optimum(&self, family: &AffineSolution) -> Result<Vec<Rational>, Impossible> {
+        let staged = |best: &AffineSolution, residuals: Vec<Residual>| {
+            let residuals: Vec<Residual> =
+                residuals.into_iter().map(|residual| in_coordinates(residual, family)).collect();
+            best.least_squares(&residuals)
+        };
+        let mut best = all_coordinates(family);
+        if self.leaves_the_norm_free(family, &best) {
+            best = staged(&best, self.distances_from_one());
+        }
+        if self.leaves_the_norm_free(family, &best) {
+            return Err(Impossible::NormNotUnique);
+        }
+        let norm = family.at(&best.particular)[..self.closed].to_vec();
+        for degree in self.half + 1..=2 * self.half + LAST_DEGREE_BEYOND_ORDER {
+            if best.directions.is_empty() {
+                break;
+            }
+            best = staged(&best, self.truncation_errors(degree, &norm)?);
+        }
+        only_member(best)
+    }
+
+    fn leaves_the_norm_free(&self, family: &AffineSolution, coordinates: &AffineSolution) -> bool {
+        let height = |row: usize| -> Vec<Rational> {
+            family.directions.iter().map(|direction| direction[row].clone()).collect()
+        };
+        (0..self.closed).map(height).any(|height| {
+            coordinates.directions.iter().any(|direction| !Rational::dot(&height, direction).is_zero())
+        })
+    }
+
+    /// (hᵢ − 1)² of every closed row.
+    fn distances_from_one(&self) -> Vec<Residual> {
+        (0..self.closed)
+            .map(|row| {
+                let mut coefficients = vec![Rational::zero(); self.unknowns()];
+                coefficients[row] = Rational::one();
+                Residual { row: coefficients, constant: Rational::from(-1), weight: Rational::one() }
+            })
+            .collect()
+    }
+
+    /// hᵢ eᵢ² of every closed row at one degree.
+    fn truncation_errors(&self, degree: usize, norm: &[Rational]) -> Result<Vec<Residual>, Impossible> {
         (0..self.closed)
             .map(|row| {
                 let RowCondition { coefficients, constant } = self.condition(row, degree);
                 // hᵢ eᵢ is the condition's value, so hᵢ eᵢ² is its square over hᵢ.
-                let height = &best.particular[row];
-                let weight = height.recip().filter(Rational::is_positive).ok_or(Impossible::NormNotUnique)?;
+                let weight =
+                    norm[row].recip().filter(Rational::is_positive).ok_or(Impossible::NormNotUnique)?;
                 Ok(Residual { row: coefficients, constant, weight })
             })
             .collect()
