@@ -3,6 +3,7 @@
 //! Each order is derived once a process and kept. The derivations are in the submodules; nothing is
 //! tabulated but which orders there are and how many rows they close.
 
+mod dissipation;
 mod first_derivative;
 mod second_derivative;
 
@@ -11,8 +12,8 @@ use std::sync::{Arc, OnceLock};
 
 use crate::exact::{AffineSolution, Inconsistent, Rational};
 use crate::scheme::{
-    DifferenceOperator, FormFault, NormFault, OperatorFault, SecondDerivativeForm, SquaresFault,
-    SummationByParts, SummationFault,
+    DifferenceOperator, Dissipation, DissipationFault, FormFault, Norm, NormFault, OperatorFault,
+    SecondDerivativeForm, SquaresFault, SummationByParts, SummationFault,
 };
 
 use super::WeightsFault;
@@ -83,6 +84,8 @@ pub enum Impossible {
     Squares(SquaresFault),
     /// The second derivative was refused.
     Form(FormFault),
+    /// The dissipation was refused.
+    Dissipation(DissipationFault),
 }
 
 /// D = H⁻¹Q on an axis with two ends: interior order `order`, closed rows of half of it.
@@ -122,6 +125,37 @@ pub fn periodic_second_derivative(order: usize) -> Result<&'static SecondDerivat
     static KEPT: [OnceLock<Result<SecondDerivativeForm, ClosureFault>>; PERIODIC_SECOND_ORDERS.len()] =
         [const { OnceLock::new() }; PERIODIC_SECOND_ORDERS.len()];
     kept(&KEPT, &PERIODIC_SECOND_ORDERS, order, |order| Ok(second_derivative::periodic(order / 2)?))
+}
+
+/// The dissipation that belongs to [`first_derivative`] of the same order 2p: differences of order p + 1, the
+/// lowest that keeps the closure's order, strength one.
+pub fn dissipation(order: usize) -> Result<&'static Dissipation, ClosureFault> {
+    static KEPT: [OnceLock<Result<Dissipation, ClosureFault>>; RECIPES.len()] =
+        [const { OnceLock::new() }; RECIPES.len()];
+    let derive = |order| dissipation_with(first_derivative(order)?.norm(), order / 2 + 1, &Rational::one());
+    kept(&KEPT, &closed_orders(), order, derive)
+}
+
+/// As [`dissipation`] on a periodic axis.
+pub fn periodic_dissipation(order: usize) -> Result<&'static Dissipation, ClosureFault> {
+    static KEPT: [OnceLock<Result<Dissipation, ClosureFault>>; PERIODIC_FIRST_ORDERS.len()] =
+        [const { OnceLock::new() }; PERIODIC_FIRST_ORDERS.len()];
+    let derive = |order| dissipation_with(&Norm::periodic(), order / 2 + 1, &Rational::one());
+    kept(&KEPT, &PERIODIC_FIRST_ORDERS, order, derive)
+}
+
+/// −s 4⁻ᵏ H⁻¹ Δ_kᵀ diag(mean of b) Δ_k in a given norm H (of a periodic axis or of one with ends) with
+/// k = `differences` and s = `strength`. Refused unless k ≥ 1, s ≥ 0.
+pub fn dissipation_with(
+    norm: &Norm,
+    differences: usize,
+    strength: &Rational,
+) -> Result<Dissipation, ClosureFault> {
+    if norm.left().is_empty() {
+        Ok(dissipation::periodic(differences, strength)?)
+    } else {
+        Ok(dissipation::closed(norm, differences, strength)?)
+    }
 }
 
 /// [`first_derivative`], derived afresh.
@@ -211,6 +245,7 @@ impl fmt::Display for Impossible {
             Impossible::Summation(fault) => fault.fmt(formatter),
             Impossible::Squares(fault) => fault.fmt(formatter),
             Impossible::Form(fault) => fault.fmt(formatter),
+            Impossible::Dissipation(fault) => fault.fmt(formatter),
         }
     }
 }
@@ -243,6 +278,7 @@ carried! {
     SummationFault => Summation,
     SquaresFault => Squares,
     FormFault => Form,
+    DissipationFault => Dissipation,
 }
 
 impl From<Inconsistent> for Impossible {

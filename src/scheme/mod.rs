@@ -2,6 +2,7 @@
 //!
 //! Nothing here searches for weights; that is [`crate::discretize`]'s task. All weights are for unit spacing.
 
+pub mod dissipation;
 pub mod norm;
 pub mod operator;
 pub mod second_derivative;
@@ -11,6 +12,7 @@ pub mod stencil;
 pub mod step_rule;
 pub mod summation_by_parts;
 
+pub use dissipation::{ConstantRows, Dissipation, DissipationFault};
 pub use norm::{Norm, NormFault};
 pub use operator::{ClosedRow, DifferenceOperator, EndRows, OperatorFault, Parity};
 pub use second_derivative::{FormFault, FormRow, LinearForm, SecondDerivativeForm};

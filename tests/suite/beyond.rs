@@ -1,6 +1,7 @@
 //! Operators beyond the core: high orders, dissipation, one-sided and biased weights, staggered pairs, and the
 //! certificates of all of them. Each kind has its submodule; here is what they share.
 
+mod dissipation;
 mod high_orders;
 mod tables;
 
@@ -29,4 +30,14 @@ fn moments(weights: &[Rational], first: i64, count: usize) -> Vec<Rational> {
             Rational::new(sum, scale.clone()).expect("common denominators are positive")
         })
         .collect()
+}
+
+/// (x − origin)ᵐ at nodes 0, …, n − 1.
+fn monomial(nodes: usize, origin: usize, degree: usize) -> Vec<Rational> {
+    (0..nodes as i64).map(|node| Rational::from(node - origin as i64).power(degree as u32)).collect()
+}
+
+/// A reproducible sequence of small integers, none negative, some of them nought.
+fn coefficients(count: usize, seed: usize) -> Vec<Rational> {
+    (0..count).map(|index| Rational::from(((index + 1) * (seed + 3) * 7919 % 11) as i64)).collect()
 }

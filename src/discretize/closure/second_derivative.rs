@@ -71,7 +71,7 @@ fn present<Node>(entries: impl Iterator<Item = (Node, Rational)>) -> Vec<(Node, 
 }
 
 /// The undivided difference of order k: factors (−1)^(k−j) C(k, j).
-fn difference(order: usize) -> Vec<Rational> {
+pub(super) fn difference(order: usize) -> Vec<Rational> {
     (0..=order)
         .map(|node| {
             let size = binomial(order, node);
