@@ -14,7 +14,7 @@ pub mod summation_by_parts;
 
 pub use dissipation::{ConstantRows, Dissipation, DissipationFault};
 pub use norm::{Norm, NormFault};
-pub use operator::{ClosedRow, DifferenceOperator, EndRows, OperatorFault, Parity};
+pub use operator::{ClosedRow, DifferenceOperator, EndRows, Extension, OperatorFault, Parity};
 pub use second_derivative::{FormFault, FormRow, LinearForm, SecondDerivativeForm};
 pub use spatial::{
     Application, Correction, Injection, LimitLaw, OperatorRule, Scheme, SchemeAxis, SchemeOperator,

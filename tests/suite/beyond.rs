@@ -3,6 +3,7 @@
 
 mod dissipation;
 mod high_orders;
+mod one_sided;
 mod tables;
 
 use num_bigint::BigInt;
