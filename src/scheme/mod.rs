@@ -8,6 +8,7 @@ pub mod operator;
 pub mod second_derivative;
 pub mod spatial;
 pub mod squares;
+pub mod staggered;
 pub mod stencil;
 pub mod step_rule;
 pub mod summation_by_parts;
@@ -20,5 +21,6 @@ pub use spatial::{
     Application, Correction, Injection, LimitLaw, OperatorRule, Scheme, SchemeAxis, SchemeOperator,
 };
 pub use squares::{RepeatedSquare, SquareTerm, SquaresFault, SumOfSquares};
+pub use staggered::{RowPlace, StaggeredClosure, StaggeredFault, StaggeredPair};
 pub use stencil::{LeadingError, Stencil, StencilFault};
 pub use summation_by_parts::{SummationByParts, SummationFault};

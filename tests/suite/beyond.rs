@@ -4,6 +4,7 @@
 mod dissipation;
 mod high_orders;
 mod one_sided;
+mod staggered;
 mod tables;
 
 use num_bigint::BigInt;

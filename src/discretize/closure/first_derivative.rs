@@ -10,7 +10,8 @@ use crate::discretize::interior;
 use crate::exact::{AffineSolution, Matrix, Rational, Residual};
 use crate::scheme::{ClosedRow, DifferenceOperator, Norm, Stencil, SummationByParts};
 
-use super::{Impossible, Recipe, only_member};
+use super::stages::{Search, distances_from_one};
+use super::{Impossible, Recipe};
 
 /// The truncation stages end at the degree 2p + this; beyond it a direction that no error sees would be
 /// followed to an absurd spectral radius.
@@ -50,28 +51,6 @@ pub(super) fn closed(recipe: &Recipe) -> Result<SummationByParts, Impossible> {
     }
     let unknowns = family.at(&coordinates);
     layout.operator(stencil, recipe.order, &unknowns)
-}
-
-/// All coordinates of a family: what is searched when all its members are.
-fn all_coordinates(family: &AffineSolution) -> AffineSolution {
-    let size = family.directions.len();
-    let identity = Matrix::identity(size);
-    AffineSolution {
-        particular: vec![Rational::zero(); size],
-        directions: (0..size).map(|index| identity.row(index).to_vec()).collect(),
-        free: (0..size).collect(),
-    }
-}
-
-/// A residual in the unknowns as one in the family's coordinates. Coordinates are far fewer and their
-/// fractions far shorter than those of the unknowns at an optimum.
-fn in_coordinates(residual: Residual, family: &AffineSolution) -> Residual {
-    let Residual { row, constant, weight } = residual;
-    Residual {
-        row: family.directions.iter().map(|direction| Rational::dot(&row, direction)).collect(),
-        constant: Rational::dot(&row, &family.particular) + constant,
-        weight,
-    }
 }
 
 impl Layout {
@@ -130,46 +109,21 @@ impl Layout {
 
     /// The coordinates of the family's best member.
     fn optimum(&self, family: &AffineSolution) -> Result<Vec<Rational>, Impossible> {
-        let staged = |best: &AffineSolution, residuals: Vec<Residual>| {
-            let residuals: Vec<Residual> =
-                residuals.into_iter().map(|residual| in_coordinates(residual, family)).collect();
-            best.least_squares(&residuals)
-        };
-        let mut best = all_coordinates(family);
-        if self.leaves_the_norm_free(family, &best) {
-            best = staged(&best, self.distances_from_one());
+        let mut search = Search::new(family);
+        if search.leaves_free(self.closed) {
+            search.narrow(distances_from_one(self.closed, self.unknowns()));
         }
-        if self.leaves_the_norm_free(family, &best) {
+        if search.leaves_free(self.closed) {
             return Err(Impossible::NormNotUnique);
         }
-        let norm = family.at(&best.particular)[..self.closed].to_vec();
+        let norm = search.member()[..self.closed].to_vec();
         for degree in self.half + 1..=2 * self.half + LAST_DEGREE_BEYOND_ORDER {
-            if best.directions.is_empty() {
+            if search.is_decided() {
                 break;
             }
-            best = staged(&best, self.truncation_errors(degree, &norm)?);
+            search.narrow(self.truncation_errors(degree, &norm)?);
         }
-        only_member(best)
-    }
-
-    fn leaves_the_norm_free(&self, family: &AffineSolution, coordinates: &AffineSolution) -> bool {
-        let height = |row: usize| -> Vec<Rational> {
-            family.directions.iter().map(|direction| direction[row].clone()).collect()
-        };
-        (0..self.closed).map(height).any(|height| {
-            coordinates.directions.iter().any(|direction| !Rational::dot(&height, direction).is_zero())
-        })
-    }
-
-    /// (hᵢ − 1)² of every closed row.
-    fn distances_from_one(&self) -> Vec<Residual> {
-        (0..self.closed)
-            .map(|row| {
-                let mut coefficients = vec![Rational::zero(); self.unknowns()];
-                coefficients[row] = Rational::one();
-                Residual { row: coefficients, constant: Rational::from(-1), weight: Rational::one() }
-            })
-            .collect()
+        search.coordinates()
     }
 
     /// hᵢ eᵢ² of every closed row at one degree.
