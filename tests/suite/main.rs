@@ -1,5 +1,6 @@
 //! The one test binary.
 
+mod beyond;
 mod c_driver;
 mod cli;
 mod closed;
