@@ -11,4 +11,5 @@ mod limits;
 mod lowering;
 mod published;
 mod reference;
+mod rejects;
 mod syntax;
