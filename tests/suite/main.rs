@@ -15,5 +15,6 @@ mod limits;
 mod lowering;
 mod published;
 mod reference;
+mod rejects;
 mod syntax;
 mod traps;
