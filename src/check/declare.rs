@@ -117,7 +117,7 @@ impl Checker<'_> {
         }
         let number = count.number.value;
         let nodes = if count.of == Counted::Cells && !periodic { number.saturating_add(1) } else { number };
-        if nodes < 2 || nodes > MOST_NODES {
+        if !(2..=MOST_NODES).contains(&nodes) {
             self.diagnostics.push(
                 Diagnostic::error(
                     codes_check::GRID_SIZE,

@@ -3,16 +3,19 @@
 //! Each order is derived once a process and kept. The derivations are in the submodules; nothing is
 //! tabulated but which orders there are and how many rows they close.
 
+mod dissipation;
 mod first_derivative;
 mod second_derivative;
+mod stages;
+mod staggered;
 
 use std::fmt;
 use std::sync::{Arc, OnceLock};
 
-use crate::exact::{AffineSolution, Inconsistent, Rational};
+use crate::exact::{Inconsistent, Rational};
 use crate::scheme::{
-    DifferenceOperator, FormFault, NormFault, OperatorFault, SecondDerivativeForm, SquaresFault,
-    SummationByParts, SummationFault,
+    DifferenceOperator, Dissipation, DissipationFault, FormFault, Norm, NormFault, OperatorFault,
+    SecondDerivativeForm, SquaresFault, StaggeredFault, StaggeredPair, SummationByParts, SummationFault,
 };
 
 use super::WeightsFault;
@@ -20,25 +23,38 @@ use super::WeightsFault;
 /// How the first derivative of one order is derived.
 struct Recipe {
     order: usize,
-    /// How many rows are closed at each end.
+    /// How many rows are closed at each end. Twice the half order where that gives a positive norm, else
+    /// the least number that does (found by trial: 10 at order 10 and 13, 14 at order 12 do not).
     closed_rows: usize,
     /// Free coordinates of the optimum are rounded to multiples of 1/this.
     tidy_denominator: Option<i64>,
 }
 
+/// The orders of staggered pairs with how many rows they close at nodes and at half points. At order 4
+/// (4, 3) exists too, with a spectral radius above the interior's; other positive pairs of blocks are worse.
+const STAGGERED_RECIPES: [staggered::Recipe; 4] = [
+    staggered::Recipe { order: 2, at_nodes: 1, at_halves: 1 },
+    staggered::Recipe { order: 4, at_nodes: 3, at_halves: 4 },
+    staggered::Recipe { order: 6, at_nodes: 6, at_halves: 5 },
+    staggered::Recipe { order: 8, at_nodes: 9, at_halves: 8 },
+];
+
 /// The closed orders. Order 6 keeps the untidied optimum, which is a published operator (Del Rey Fernández
-/// et al. 2014, Computers & Fluids); order 8 is tidied because its optimum's fractions have 166 characters.
-const RECIPES: [Recipe; 4] = [
+/// et al. 2014, Computers & Fluids); from order 8 on the optimum's fractions have 166 to 2300 characters and
+/// are tidied, as coarsely as keeps the spectral radius.
+const RECIPES: [Recipe; 6] = [
     Recipe { order: 2, closed_rows: 1, tidy_denominator: None },
     Recipe { order: 4, closed_rows: 4, tidy_denominator: None },
     Recipe { order: 6, closed_rows: 6, tidy_denominator: None },
     Recipe { order: 8, closed_rows: 8, tidy_denominator: Some(1024) },
+    Recipe { order: 10, closed_rows: 11, tidy_denominator: Some(1 << 26) },
+    Recipe { order: 12, closed_rows: 15, tidy_denominator: Some(1 << 32) },
 ];
 
 /// The orders of [`periodic_first_derivative`].
 const PERIODIC_FIRST_ORDERS: [usize; 8] = [2, 4, 6, 8, 10, 12, 14, 16];
 /// The orders of [`periodic_second_derivative`]: those with non-negative averages, all of them checked.
-const PERIODIC_SECOND_ORDERS: [usize; 5] = [2, 4, 6, 8, 10];
+const PERIODIC_SECOND_ORDERS: [usize; 6] = [2, 4, 6, 8, 10, 12];
 
 /// Why there is no such operator.
 #[derive(Clone, PartialEq, Eq, Debug)]
@@ -59,7 +75,7 @@ pub enum ClosureFault {
 pub enum Impossible {
     /// The exactness conditions contradict each other.
     Inconsistent,
-    /// The norm is not determined by the exactness conditions.
+    /// Neither the exactness conditions nor closeness to one determine the norm.
     NormNotUnique,
     /// The truncation stages left freedom.
     FreedomLeft { directions: usize },
@@ -79,6 +95,10 @@ pub enum Impossible {
     Squares(SquaresFault),
     /// The second derivative was refused.
     Form(FormFault),
+    /// The dissipation was refused.
+    Dissipation(DissipationFault),
+    /// The staggered pair was refused.
+    Staggered(StaggeredFault),
 }
 
 /// D = H⁻¹Q on an axis with two ends: interior order `order`, closed rows of half of it.
@@ -120,13 +140,70 @@ pub fn periodic_second_derivative(order: usize) -> Result<&'static SecondDerivat
     kept(&KEPT, &PERIODIC_SECOND_ORDERS, order, |order| Ok(second_derivative::periodic(order / 2)?))
 }
 
+/// The dissipation that belongs to [`first_derivative`] of the same order 2p: differences of order p + 1, the
+/// lowest that keeps the closure's order, strength one.
+pub fn dissipation(order: usize) -> Result<&'static Dissipation, ClosureFault> {
+    static KEPT: [OnceLock<Result<Dissipation, ClosureFault>>; RECIPES.len()] =
+        [const { OnceLock::new() }; RECIPES.len()];
+    let derive = |order| dissipation_with(first_derivative(order)?.norm(), order / 2 + 1, &Rational::one());
+    kept(&KEPT, &closed_orders(), order, derive)
+}
+
+/// As [`dissipation`] on a periodic axis.
+pub fn periodic_dissipation(order: usize) -> Result<&'static Dissipation, ClosureFault> {
+    static KEPT: [OnceLock<Result<Dissipation, ClosureFault>>; PERIODIC_FIRST_ORDERS.len()] =
+        [const { OnceLock::new() }; PERIODIC_FIRST_ORDERS.len()];
+    let derive = |order| dissipation_with(&Norm::periodic(), order / 2 + 1, &Rational::one());
+    kept(&KEPT, &PERIODIC_FIRST_ORDERS, order, derive)
+}
+
+/// −s 4⁻ᵏ H⁻¹ Δ_kᵀ diag(mean of b) Δ_k in a given norm H (of a periodic axis or of one with ends) with
+/// k = `differences` and s = `strength`. Refused unless k ≥ 1, s ≥ 0.
+pub fn dissipation_with(
+    norm: &Norm,
+    differences: usize,
+    strength: &Rational,
+) -> Result<Dissipation, ClosureFault> {
+    if norm.left().is_empty() {
+        Ok(dissipation::periodic(differences, strength)?)
+    } else {
+        Ok(dissipation::closed(norm, differences, strength)?)
+    }
+}
+
+/// The staggered pair on an axis with two ends: interior order `order`, closed rows of half of it.
+pub fn staggered_pair(order: usize) -> Result<&'static StaggeredPair, ClosureFault> {
+    static KEPT: [OnceLock<Result<StaggeredPair, ClosureFault>>; STAGGERED_RECIPES.len()] =
+        [const { OnceLock::new() }; STAGGERED_RECIPES.len()];
+    kept(&KEPT, &staggered_orders(), order, derive_staggered_pair)
+}
+
+/// The staggered pair on a periodic axis.
+pub fn periodic_staggered_pair(order: usize) -> Result<&'static StaggeredPair, ClosureFault> {
+    static KEPT: [OnceLock<Result<StaggeredPair, ClosureFault>>; PERIODIC_FIRST_ORDERS.len()] =
+        [const { OnceLock::new() }; PERIODIC_FIRST_ORDERS.len()];
+    kept(&KEPT, &PERIODIC_FIRST_ORDERS, order, |order| Ok(staggered::periodic(order)?))
+}
+
+/// [`staggered_pair`], derived afresh.
+pub fn derive_staggered_pair(order: usize) -> Result<StaggeredPair, ClosureFault> {
+    let recipe = STAGGERED_RECIPES.iter().find(|recipe| recipe.order == order);
+    let not_available = || ClosureFault::NotAvailable { order, available: staggered_orders().to_vec() };
+    Ok(staggered::closed(recipe.ok_or_else(not_available)?)?)
+}
+
+/// The orders of staggered pairs.
+pub fn staggered_orders() -> [usize; STAGGERED_RECIPES.len()] {
+    STAGGERED_RECIPES.map(|recipe| recipe.order)
+}
+
 /// [`first_derivative`], derived afresh.
 pub fn derive_first_derivative(order: usize) -> Result<SummationByParts, ClosureFault> {
     Ok(first_derivative::closed(recipe(order)?)?)
 }
 
 /// The optimum of the truncation rule before it is tidied: [`derive_first_derivative`] with its fractions
-/// in full. Differs from it at order 8 alone.
+/// in full. Differs from it from order 8 on.
 pub fn derive_untidied_first_derivative(order: usize) -> Result<SummationByParts, ClosureFault> {
     let recipe = recipe(order)?;
     let untidied = Recipe { tidy_denominator: None, ..*recipe };
@@ -169,14 +246,6 @@ fn kept<Fact>(
     place.get_or_init(|| derive(order)).as_ref().map_err(Clone::clone)
 }
 
-/// The one member of a family that must have no freedom.
-fn only_member(family: AffineSolution) -> Result<Vec<Rational>, Impossible> {
-    match family.directions.len() {
-        0 => Ok(family.particular),
-        directions => Err(Impossible::FreedomLeft { directions }),
-    }
-}
-
 impl fmt::Display for ClosureFault {
     fn fmt(&self, formatter: &mut fmt::Formatter<'_>) -> fmt::Result {
         match self {
@@ -207,6 +276,8 @@ impl fmt::Display for Impossible {
             Impossible::Summation(fault) => fault.fmt(formatter),
             Impossible::Squares(fault) => fault.fmt(formatter),
             Impossible::Form(fault) => fault.fmt(formatter),
+            Impossible::Dissipation(fault) => fault.fmt(formatter),
+            Impossible::Staggered(fault) => fault.fmt(formatter),
         }
     }
 }
@@ -239,6 +310,8 @@ carried! {
     SummationFault => Summation,
     SquaresFault => Squares,
     FormFault => Form,
+    DissipationFault => Dissipation,
+    StaggeredFault => Staggered,
 }
 
 impl From<Inconsistent> for Impossible {

@@ -6,7 +6,9 @@ mod centred;
 mod choose;
 pub mod closure;
 mod face;
+pub mod given;
 pub mod interior;
+pub mod one_sided;
 mod split;
 
 pub use assemble::assemble;

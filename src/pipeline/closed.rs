@@ -113,9 +113,9 @@ impl<'a> Probe<'a> {
         for column in 0..size {
             let disturbance = self.disturbance(column);
             let disturbed = self.advanced(Some((column, disturbance)), step);
-            for (row, (a, b)) in disturbed.iter().zip(&rest).enumerate() {
+            for (row, (a, b)) in rows.iter_mut().zip(disturbed.iter().zip(&rest)) {
                 let entry = (a - b) / disturbance;
-                rows[row][column] = if entry.is_finite() { entry } else { return None };
+                row[column] = if entry.is_finite() { entry } else { return None };
             }
         }
         Some(radius(&eigenvalues(&rows).ok()?).ln() / step)

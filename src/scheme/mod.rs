@@ -2,21 +2,25 @@
 //!
 //! Nothing here searches for weights; that is [`crate::discretize`]'s task. All weights are for unit spacing.
 
+pub mod dissipation;
 pub mod norm;
 pub mod operator;
 pub mod second_derivative;
 pub mod spatial;
 pub mod squares;
+pub mod staggered;
 pub mod stencil;
 pub mod step_rule;
 pub mod summation_by_parts;
 
+pub use dissipation::{ConstantRows, Dissipation, DissipationFault};
 pub use norm::{Norm, NormFault};
-pub use operator::{ClosedRow, DifferenceOperator, EndRows, OperatorFault, Parity};
+pub use operator::{ClosedRow, DifferenceOperator, EndRows, Extension, OperatorFault, Parity};
 pub use second_derivative::{FormFault, FormRow, LinearForm, SecondDerivativeForm};
 pub use spatial::{
     Application, Correction, Injection, LimitLaw, OperatorRule, Scheme, SchemeAxis, SchemeOperator,
 };
 pub use squares::{RepeatedSquare, SquareTerm, SquaresFault, SumOfSquares};
+pub use staggered::{RowPlace, StaggeredClosure, StaggeredFault, StaggeredPair};
 pub use stencil::{LeadingError, Stencil, StencilFault};
 pub use summation_by_parts::{SummationByParts, SummationFault};

@@ -8,7 +8,8 @@ use std::fmt;
 use crate::exact::Rational;
 
 /// Diagonal weights on nodes 0, …, n − 1 at unit spacing: `left` at the left end, its mirror image at the
-/// right end, one between. All are positive and they sum to the length n − 1 (to n on a periodic axis).
+/// right end, one between. All are positive and they sum to the length n − 1 (to n on a periodic axis and for
+/// half points).
 #[derive(Clone, PartialEq, Eq, Debug)]
 pub struct Norm {
     left: Vec<Rational>,
@@ -19,21 +20,34 @@ pub struct Norm {
 pub enum NormFault {
     /// A weight is nought or negative.
     NotPositive { index: usize },
-    /// The weights of one end do not sum to their number less one half.
+    /// The weights of one end do not sum to the length they stand for: their number less one half for
+    /// nodes, their number for half points.
     WrongTotal { found: Box<Rational> },
 }
 
 impl Norm {
     /// The norm of an axis with two ends, from its left weights.
     pub fn bounded(left: Vec<Rational>) -> Result<Norm, NormFault> {
+        let total = Rational::from(left.len() as i64) - Rational::ratio(1, 2);
+        Norm::checked(left, &total)
+    }
+
+    fn checked(left: Vec<Rational>, needed: &Rational) -> Result<Norm, NormFault> {
         if let Some(index) = left.iter().position(|weight| !weight.is_positive()) {
             return Err(NormFault::NotPositive { index });
         }
         let total: Rational = left.iter().sum();
-        if total != Rational::from(left.len() as i64) - Rational::ratio(1, 2) {
+        if total != *needed {
             return Err(NormFault::WrongTotal { found: Box::new(total) });
         }
         Ok(Norm { left })
+    }
+
+    /// The norm of the half points 1/2, 3/2, … of an axis with two ends, from its left weights: they sum to
+    /// their number.
+    pub fn halfway(left: Vec<Rational>) -> Result<Norm, NormFault> {
+        let total = Rational::from(left.len() as i64);
+        Norm::checked(left, &total)
     }
 
     /// The norm of a periodic axis: one everywhere.

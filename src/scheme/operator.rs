@@ -3,6 +3,8 @@
 //! Holds which rows there are and that each is exact to its order. Norms and energy are in
 //! [`super::summation_by_parts`]; coefficients that vary are in [`super::second_derivative`].
 
+mod mirrored;
+
 use std::fmt;
 
 use num_bigint::BigInt;
@@ -43,6 +45,17 @@ pub enum EndRows {
         /// The norm's weight of the end node.
         norm_weight: Rational,
     },
+    /// The derivative of functions that go on beyond each end as their own mirror image, and of no others.
+    Mirrored(Extension),
+}
+
+/// How a function goes on beyond an end node, reflected at it.
+#[derive(Clone, Copy, PartialEq, Eq, Debug)]
+pub enum Extension {
+    /// u(−x) = u(x): the slope vanishes at the end.
+    Even,
+    /// u(−x) = −u(x): the value vanishes at the end.
+    Odd,
 }
 
 /// An operator of constant weights on nodes 0, …, n − 1 at unit spacing.
@@ -82,7 +95,7 @@ pub enum OperatorFault {
     TooFewRows { given: usize, needed: usize },
     /// A closed row without weights.
     EmptyRow { row: usize },
-    /// A closed row fails on the monomial (x − row)^degree.
+    /// A closed row fails on the monomial (x − row)^degree; a mirrored one on x^degree.
     Row { row: usize, degree: usize, found: Box<Rational> },
 }
 
@@ -276,6 +289,9 @@ impl Closure {
         if weights.is_empty() {
             return Err(OperatorFault::EmptyRow { row });
         }
+        if let EndRows::Mirrored(extension) = self.ends {
+            return mirrored::check_row(&self.rows[row], row, derivative, self.order, extension);
+        }
         // In integers: reducing a fraction at every step would cost more than the whole derivation.
         let scale = common_denominator(weights);
         let mut terms: Vec<BigInt> = weights.iter().map(|weight| scaled(weight, &scale)).collect();
@@ -327,10 +343,9 @@ impl fmt::Display for OperatorFault {
                 write!(formatter, "{given} closed rows, but the interior stencil leaves out {needed}")
             }
             OperatorFault::EmptyRow { row } => write!(formatter, "closed row {row} has no weights"),
-            OperatorFault::Row { row, degree, found } => write!(
-                formatter,
-                "closed row {row} gives {found} on the monomial of degree {degree} about its node"
-            ),
+            OperatorFault::Row { row, degree, found } => {
+                write!(formatter, "closed row {row} gives {found} on the monomial of degree {degree}")
+            }
         }
     }
 }

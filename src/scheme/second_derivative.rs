@@ -3,7 +3,7 @@
 //! Holds the rows of −H⁻¹M(b) as linear forms in the nodal coefficients, and the check that they are exact.
 //! The squares themselves are in [`super::squares`]; how they are found is in [`crate::discretize::closure`].
 
-mod assembly;
+pub(super) mod assembly;
 mod exactness;
 
 use std::fmt;
@@ -158,12 +158,7 @@ impl SecondDerivativeForm {
             return Some(row.columns.clone());
         }
         if let Some(row) = self.closure.get(from_right) {
-            let mirror = |node: usize| nodes - 1 - node;
-            let mirrored = row.columns.iter().rev().map(|(column, form)| {
-                let form = form.iter().rev().map(|(node, factor)| (mirror(*node), factor.clone()));
-                (mirror(*column), form.collect())
-            });
-            return Some(mirrored.collect());
+            return Some(row.mirrored(nodes));
         }
         Some(
             assembly::interior_row(&self.interior)
@@ -228,8 +223,18 @@ fn constant(
 }
 
 impl FormRow {
+    /// The row at the other end of `nodes` nodes.
+    pub(super) fn mirrored(&self, nodes: usize) -> Vec<(usize, LinearForm)> {
+        let mirror = |node: usize| nodes - 1 - node;
+        let mirrored = self.columns.iter().rev().map(|(column, form)| {
+            let form = form.iter().rev().map(|(node, factor)| (mirror(*node), factor.clone()));
+            (mirror(*column), form.collect())
+        });
+        mirrored.collect()
+    }
+
     /// The weights of this row for the constant coefficient one.
-    fn constant(&self) -> ClosedRow {
+    pub(super) fn constant(&self) -> ClosedRow {
         let end = self.columns.last().map_or(0, |(column, _)| column + 1);
         let mut weights = vec![Rational::zero(); end];
         for (column, form) in &self.columns {
@@ -244,7 +249,7 @@ impl FormRow {
 }
 
 /// The sum over one common denominator, reduced once.
-fn total<'a>(terms: impl Iterator<Item = &'a Rational> + Clone) -> Rational {
+pub(super) fn total<'a>(terms: impl Iterator<Item = &'a Rational> + Clone) -> Rational {
     let scale = common_denominator(terms.clone());
     let sum: BigInt = terms.map(|term| scaled(term, &scale)).sum();
     Rational::new(sum, scale).expect("common denominators are positive")

@@ -89,6 +89,15 @@ fn hand_built_kernels() {
     }
 }
 
+/// One row that several threads share, so that parts begin inside it.
+#[test]
+fn long_rows() {
+    for (place, nodes) in [(0, 110_003), (3, 130_001)] {
+        let (kernel, _) = kernels::all().swap_remove(place);
+        agree(&kernel, &[nodes], 1);
+    }
+}
+
 /// Interiors and closure rows with more terms than are summed in one loop, and one with a zero inside.
 #[test]
 fn long_operators() {

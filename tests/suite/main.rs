@@ -1,5 +1,6 @@
 //! The one test binary.
 
+mod beyond;
 mod c_driver;
 mod cli;
 mod closed;
@@ -8,10 +9,12 @@ mod drivers;
 mod emission;
 mod exactness;
 mod executor;
+mod in_process;
 mod layering;
 mod limits;
 mod lowering;
 mod published;
 mod reference;
+mod rejects;
 mod syntax;
 mod traps;

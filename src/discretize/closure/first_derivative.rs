@@ -2,18 +2,20 @@
 //!
 //! Unknown are the norm weights h₀ … h_{b−1} and the upper triangle of Q's b × b corner; the rest of the
 //! corner follows by antisymmetry, everything else from the interior. Exactness of the rows is linear in
-//! them. What freedom is left goes into the least truncation error in the norm, degree after degree.
+//! them. What freedom is left goes first into norm weights close to one (orders 10 and 12, whose exactness
+//! leaves the norm some), then into the least truncation error in the norm, degree after degree.
 //! Not here: the proof, which the constructors in [`crate::scheme`] make.
 
 use crate::discretize::interior;
 use crate::exact::{AffineSolution, Matrix, Rational, Residual};
 use crate::scheme::{ClosedRow, DifferenceOperator, Norm, Stencil, SummationByParts};
 
-use super::{Impossible, Recipe, only_member};
+use super::stages::{Search, distances_from_one};
+use super::{Impossible, Recipe};
 
-/// Degrees of the truncation stages above the first; beyond them a direction that no error sees would be
+/// The truncation stages end at the degree 2p + this; beyond it a direction that no error sees would be
 /// followed to an absurd spectral radius.
-const MOST_STAGES: usize = 8;
+const LAST_DEGREE_BEYOND_ORDER: usize = 6;
 
 /// Where the unknowns are, and the interior weights.
 struct Layout {
@@ -40,33 +42,15 @@ pub(super) fn closed(recipe: &Recipe) -> Result<SummationByParts, Impossible> {
     let layout =
         Layout { half, closed: recipe.closed_rows, interior: stencil.weights()[half + 1..].to_vec() };
     let family = layout.exact_family()?;
-    if family.directions.iter().any(|direction| direction[..layout.closed].iter().any(|h| !h.is_zero())) {
-        return Err(Impossible::NormNotUnique);
-    }
-    let mut best = family.clone();
-    for degree in half + 1..=half + MOST_STAGES {
-        if best.directions.is_empty() {
-            break;
-        }
-        best = best.least_squares(&layout.truncation_errors(degree, &best)?);
-    }
-    let mut unknowns = only_member(best)?;
+    let mut coordinates = layout.optimum(&family)?;
     if let Some(denominator) = recipe.tidy_denominator {
-        unknowns = tidied(&family, &unknowns, denominator);
+        let scale = Rational::from(denominator);
+        for coordinate in &mut coordinates {
+            *coordinate = (&*coordinate * &scale).rounded() / &scale;
+        }
     }
+    let unknowns = family.at(&coordinates);
     layout.operator(stencil, recipe.order, &unknowns)
-}
-
-/// The family's member whose free coordinates are rounded to multiples of 1/denominator.
-fn tidied(family: &AffineSolution, unknowns: &[Rational], denominator: i64) -> Vec<Rational> {
-    let scale = Rational::from(denominator);
-    let coordinates: Vec<Rational> = family
-        .free
-        .iter()
-        .map(|&index| (&unknowns[index] - &family.particular[index]) * &scale)
-        .map(|scaled| scaled.rounded() / &scale)
-        .collect();
-    family.at(&coordinates)
 }
 
 impl Layout {
@@ -123,14 +107,33 @@ impl Layout {
         Ok(system.solve_affine(&right_side)?)
     }
 
-    /// hᵢ eᵢ² of every closed row at one degree, the norm being known.
-    fn truncation_errors(&self, degree: usize, best: &AffineSolution) -> Result<Vec<Residual>, Impossible> {
+    /// The coordinates of the family's best member.
+    fn optimum(&self, family: &AffineSolution) -> Result<Vec<Rational>, Impossible> {
+        let mut search = Search::new(family);
+        if search.leaves_free(self.closed) {
+            search.narrow(distances_from_one(self.closed, self.unknowns()));
+        }
+        if search.leaves_free(self.closed) {
+            return Err(Impossible::NormNotUnique);
+        }
+        let norm = search.member()[..self.closed].to_vec();
+        for degree in self.half + 1..=2 * self.half + LAST_DEGREE_BEYOND_ORDER {
+            if search.is_decided() {
+                break;
+            }
+            search.narrow(self.truncation_errors(degree, &norm)?);
+        }
+        search.coordinates()
+    }
+
+    /// hᵢ eᵢ² of every closed row at one degree.
+    fn truncation_errors(&self, degree: usize, norm: &[Rational]) -> Result<Vec<Residual>, Impossible> {
         (0..self.closed)
             .map(|row| {
                 let RowCondition { coefficients, constant } = self.condition(row, degree);
                 // hᵢ eᵢ is the condition's value, so hᵢ eᵢ² is its square over hᵢ.
-                let height = &best.particular[row];
-                let weight = height.recip().filter(Rational::is_positive).ok_or(Impossible::NormNotUnique)?;
+                let weight =
+                    norm[row].recip().filter(Rational::is_positive).ok_or(Impossible::NormNotUnique)?;
                 Ok(Residual { row: coefficients, constant, weight })
             })
             .collect()

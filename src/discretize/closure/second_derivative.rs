@@ -71,7 +71,7 @@ fn present<Node>(entries: impl Iterator<Item = (Node, Rational)>) -> Vec<(Node, 
 }
 
 /// The undivided difference of order k: factors (−1)^(k−j) C(k, j).
-fn difference(order: usize) -> Vec<Rational> {
+pub(super) fn difference(order: usize) -> Vec<Rational> {
     (0..=order)
         .map(|node| {
             let size = binomial(order, node);
@@ -169,7 +169,7 @@ impl Interior {
         }
         let settled = &self.lowest().weight;
         let corrected = weights.iter().rposition(|weight| weight != settled).map_or(0, |last| last + 1);
-        if corrected > (2 * self.half).saturating_sub(1) {
+        if corrected >= rows.len() {
             return Err(Impossible::BoundaryWeightsUnsettled);
         }
         weights.truncate(corrected);
@@ -196,7 +196,9 @@ impl Interior {
     }
 
     /// What the boundary weights exceed the kept parts by, as one square: the functional is the mean of the
-    /// differences and the weight their sum, so that W(1)1 = v.
+    /// differences and the weight their sum, so that W(1)1 = v. Some excesses are negative at orders 10 and
+    /// 12. The closure's order sees of the weight its sum for b = 1 alone, so there the positive ones are
+    /// averaged and scaled to the sum: no factor is negative.
     fn excess_square(&self, ends: &[Rational]) -> Option<SquareTerm> {
         let family = self.lowest();
         let excess: Vec<Rational> = ends.iter().map(|weight| weight - self.kept(weight)).collect();
@@ -204,12 +206,16 @@ impl Interior {
         if total.is_zero() {
             return None;
         }
+        let positive: Rational = excess.iter().filter(|part| part.is_positive()).sum();
+        let scale = total.checked_div(&positive)?;
         let mut functional = vec![Rational::zero(); ends.len() + self.half + 1];
         let mut weight = functional.clone();
         for (first, part) in excess.iter().enumerate() {
             for (offset, (factor, share)) in family.factors.iter().zip(&family.average).enumerate() {
                 functional[first + offset] += part * factor / &total;
-                weight[first + offset] += part * share;
+                if part.is_positive() {
+                    weight[first + offset] += part * share * &scale;
+                }
             }
         }
         Some(SquareTerm {

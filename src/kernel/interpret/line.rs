@@ -150,6 +150,7 @@ impl Line {
     }
 
     /// At many nodes that share the position along the axis or lie inside; `f` and `b` give rows at a distance.
+    #[allow(clippy::too_many_arguments, reason = "an operator has that many operands")]
     pub(super) fn nodes<'a>(
         &self,
         vectors: Vectors,

@@ -21,7 +21,7 @@ pub(super) enum Operand {
 }
 
 /// Where a row of results goes.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Hash)]
 pub(super) enum Target {
     Register(usize),
     Written(usize),
@@ -346,6 +346,7 @@ impl Program {
         }
         program.registers = compiler.registers;
         program.numbers = compiler.numbers;
+        program.rate_in_place();
         program.write_directly();
         program.reuse_registers();
         program
@@ -401,35 +402,79 @@ impl Program {
         self.rates.len() + self.writes.len() + self.stores.len()
     }
 
-    /// The last operation before a store writes to the buffer itself where nothing else reads either.
-    fn write_directly(&mut self) {
-        let mut reads: HashMap<Operand, usize> = HashMap::new();
-        let mut count = |operand: Operand| *reads.entry(operand).or_default() += 1;
-        self.instructions()
-            .for_each(|instruction| instruction.work.operands().into_iter().for_each(&mut count));
-        for face in &self.faces {
-            face.patch.iter().flat_map(|(left, _, right)| [*left, *right]).for_each(&mut count);
-            face.effects.iter().for_each(|(_, operand)| count(*operand));
+    /// Registers that face terms change.
+    fn slots(&self) -> HashSet<usize> {
+        let slot = |(effect, _): &(Effect, Operand)| match effect {
+            Effect::AddTo(slot) | Effect::Replace(slot) => Some(*slot),
+            Effect::Set(_) => None,
+        };
+        self.faces.iter().flat_map(|face| &face.effects).filter_map(slot).collect()
+    }
+
+    /// How often each operand is read, and by which instruction last (one past all of them: by a face or a store).
+    fn reads(&self) -> HashMap<Operand, (usize, usize)> {
+        let mut reads: HashMap<Operand, (usize, usize)> = HashMap::new();
+        let mut count = |at: usize, operand: Operand| {
+            let entry = reads.entry(operand).or_default();
+            *entry = (entry.0 + 1, entry.1.max(at));
+        };
+        for (at, instruction) in self.instructions().enumerate() {
+            instruction.work.operands().into_iter().for_each(|operand| count(at, operand));
         }
-        self.stores.iter().for_each(|(_, operand)| count(*operand));
-        let slots: HashSet<usize> = self
-            .faces
-            .iter()
-            .flat_map(|face| &face.effects)
-            .filter_map(|(effect, _)| match effect {
-                Effect::AddTo(slot) | Effect::Replace(slot) => Some(*slot),
-                Effect::Set(_) => None,
-            })
-            .collect();
+        let end = self.instructions().count();
+        for face in &self.faces {
+            face.patch
+                .iter()
+                .flat_map(|(left, _, right)| [*left, *right])
+                .for_each(|operand| count(end, operand));
+            face.effects.iter().for_each(|(_, operand)| count(end, *operand));
+        }
+        self.stores.iter().for_each(|(_, operand)| count(end, *operand));
+        reads
+    }
+
+    /// A rate that nothing else reads is computed in the register that face terms change.
+    fn rate_in_place(&mut self) {
+        let reads = self.reads();
+        let slots = self.slots();
+        let mut renamed: HashMap<usize, usize> = HashMap::new();
+        self.rates.retain(|instruction| match (instruction.target, &instruction.work) {
+            (Target::Register(slot), Work::Unary(Unary::Copy, Operand::Register(register)))
+                if slots.contains(&slot)
+                    && !slots.contains(register)
+                    && reads.get(&Operand::Register(*register)).is_some_and(|(count, _)| *count == 1) =>
+            {
+                renamed.insert(*register, slot);
+                false
+            }
+            _ => true,
+        });
+        for instruction in &mut self.rates {
+            if let Target::Register(register) = &mut instruction.target
+                && let Some(slot) = renamed.get(register)
+            {
+                *register = *slot;
+            }
+        }
+    }
+
+    /// The last operation before a store writes to the buffer itself where nothing reads either later.
+    fn write_directly(&mut self) {
+        let reads = self.reads();
+        let slots = self.slots();
+        let made: HashMap<Target, usize> =
+            self.instructions().enumerate().map(|(at, instruction)| (instruction.target, at)).collect();
         let stores = std::mem::take(&mut self.stores);
         let sole = |place: usize| stores.iter().filter(|(other, _)| *other == place).count() == 1;
         for (place, operand) in &stores {
             let register = match operand {
                 Operand::Register(register)
-                    if reads.get(operand) == Some(&1)
+                    if reads.get(operand).is_some_and(|(count, _)| *count == 1)
                         && !slots.contains(register)
                         && sole(*place)
-                        && !reads.contains_key(&Operand::Written(*place)) =>
+                        && reads.get(&Operand::Written(*place)).is_none_or(|(_, last)| {
+                            made.get(&Target::Register(*register)).is_some_and(|made| last < made)
+                        }) =>
                 {
                     *register
                 }

@@ -256,12 +256,12 @@ impl Lowering<'_> {
         let rule = crate::scheme::step_rule::carpenter_kennedy();
         let count = rule.a.len();
         let rows = rows(Method::Lsrk4);
-        for index in 0..count {
+        for (index, row) in rows.iter().enumerate() {
             let keep = &rule.a[index];
             let from = if keep.is_zero() { Vec::new() } else { vec![(residual.clone(), keep.clone())] };
             let update = Update { target: residual.clone(), from, rate: Rational::from(1) };
             let label = format!("stage {} of {count}", index + 1);
-            self.fused_at(step, components, &label, &rows[index], present, vec![update]);
+            self.fused_at(step, components, &label, row, present, vec![update]);
             let mut sweep = Sweep { label: format!("update of {label}"), ..Sweep::default() };
             for (target, source) in present.iter().zip(&residual) {
                 let (old, change) = (self.builder.load(*target), self.builder.load(*source));

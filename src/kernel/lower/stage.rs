@@ -100,7 +100,7 @@ impl<'a> Lowering<'a> {
         for application in &self.scheme.applications {
             let inner = applied_in(&application.of)
                 .into_iter()
-                .chain(application.coefficient.iter().flat_map(|coefficient| applied_in(coefficient)));
+                .chain(application.coefficient.iter().flat_map(applied_in));
             let level = inner.map(|index| levels[index] + 1).max().unwrap_or(0);
             levels.push(level);
         }

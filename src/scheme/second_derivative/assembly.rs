@@ -1,4 +1,4 @@
-//! The rows of −H⁻¹M(b) as linear forms, assembled from the squares.
+//! The rows of −H⁻¹M(b) as linear forms, assembled from the squares. M(b) may be any sum of squares.
 //!
 //! Sums run on integers over one common denominator; fractions are reduced once at the end.
 
@@ -73,7 +73,7 @@ fn common(squares: &[IntegerSquare]) -> BigInt {
 }
 
 /// −M_{i,i+s} for s = 1, 2, … as (offset from i, factor), trimmed at the last one that does not vanish.
-pub(super) fn interior_forms(squares: &SumOfSquares) -> Vec<Vec<(i64, Rational)>> {
+pub(in crate::scheme) fn interior_forms(squares: &SumOfSquares) -> Vec<Vec<(i64, Rational)>> {
     let repeated = repeated_squares(squares);
     let common = common(&repeated);
     let mut sums = Numerators::new();
@@ -95,7 +95,7 @@ pub(super) fn interior_forms(squares: &SumOfSquares) -> Vec<Vec<(i64, Rational)>
 
 /// The full interior row of −M from its forms: (column offset, form), offsets −p, …, p. The diagonal makes
 /// the row sum vanish, as every functional does on constants.
-pub(super) fn interior_row(forms: &[Vec<(i64, Rational)>]) -> Vec<(i64, Vec<(i64, Rational)>)> {
+pub(in crate::scheme) fn interior_row(forms: &[Vec<(i64, Rational)>]) -> Vec<(i64, Vec<(i64, Rational)>)> {
     let mut diagonal: BTreeMap<i64, Rational> = BTreeMap::new();
     let mut row = BTreeMap::new();
     for (index, form) in forms.iter().enumerate() {
@@ -112,13 +112,14 @@ pub(super) fn interior_row(forms: &[Vec<(i64, Rational)>]) -> Vec<(i64, Vec<(i64
     row.into_iter().collect()
 }
 
-/// The rows at the left end that differ from the interior one, with the norm divided out.
-pub(super) fn closed_rows(
+/// The rows at the left end that differ from the interior one or have a norm weight of their own, with the
+/// norm divided out.
+pub(in crate::scheme) fn closed_rows(
     squares: &SumOfSquares,
     norm: &Norm,
     interior: &[Vec<(i64, Rational)>],
 ) -> Vec<FormRow> {
-    let affected = squares.affected_nodes();
+    let affected = squares.affected_nodes().max(norm.left().len());
     let left: Vec<IntegerSquare> = squares
         .left()
         .iter()
