@@ -1,10 +1,12 @@
 //! Axes, constants, coefficients and fields.
 
 use super::Checker;
-use super::formula::Place;
+use super::bounds::Extent as Size;
+use super::formula::{Bound, Place};
 use super::scope::{Kind, Typed};
-use super::units::{self, Scale};
+use super::units::Scale;
 use crate::diagnostic::{Diagnostic, codes_check};
+use crate::model::numeric::{Point, evaluate};
 use crate::model::sign::Sign;
 use crate::model::{self, Dimension, Expression, FoldedConstant, FreeConstant};
 use crate::source::Span;
@@ -21,13 +23,13 @@ impl Checker<'_> {
         for line in &self.file.time {
             if let tree::TimeKind::Interval { start, end } = &line.kind {
                 let quiet = self.diagnostics.clone();
-                let found =
-                    [end, start].into_iter().find_map(|side| self.formula(side, Place::Constant)?.dimension);
+                let sides = [start, end].map(|side| self.formula(side, Place::Constant));
                 // Faults are reported when the section itself is read.
                 self.diagnostics = quiet;
-                if let Some(dimension) = found {
-                    self.time_dimension = dimension;
-                }
+                let [Some(start), Some(end)] = sides else { return };
+                let dimension = end.dimension.or(start.dimension).unwrap_or_else(Dimension::one);
+                self.time_dimension = Some(dimension).filter(|own| own.is_one() || *own == Dimension::time());
+                return;
             }
         }
     }
@@ -67,7 +69,11 @@ impl Checker<'_> {
     fn axis(&mut self, axis: &tree::Axis) -> Option<model::Axis> {
         let mut periodic = false;
         let mut sound = true;
-        for property in &axis.properties {
+        for (index, property) in axis.properties.iter().enumerate() {
+            if axis.properties[..index].iter().any(|other| other.kind == property.kind) {
+                self.twice(property.span, "this property of the axis");
+                sound = false;
+            }
             match &property.kind {
                 AxisPropertyKind::Periodic => periodic = true,
                 AxisPropertyKind::Graded(_) => {
@@ -83,28 +89,26 @@ impl Checker<'_> {
         let (low, high, count) = match &axis.extent {
             Extent::Interval { low, high, count } => (low, high, count),
             Extent::Listed(_) => {
-                self.scope.axes.push(Dimension::one());
+                self.scope.axes.push(None);
                 self.not_yet(axis.span, "an axis with listed nodes", "use `A to B, N nodes`");
                 return None;
             }
         };
         let (a, b) = (self.formula(low, Place::Constant), self.formula(high, Place::Constant));
-        let dimension = [&b, &a]
-            .into_iter()
-            .find_map(|side| side.as_ref()?.dimension.clone())
-            .unwrap_or_else(Dimension::one);
+        let dimension = match (&a, &b) {
+            (Some(a), Some(b)) => b.dimension.clone().or_else(|| a.dimension.clone()),
+            _ => None,
+        };
         self.scope.axes.push(dimension.clone());
         let (a, b) = (a?, b?);
+        let dimension = dimension.unwrap_or_else(Dimension::one);
         if let (Some(first), Some(second)) = (&a.dimension, &b.dimension)
             && first != second
         {
             self.mismatch(high.span, second, low.span, first, "the ends of an axis");
             sound = false;
         }
-        if matches!(
-            self.sign(&b.value.clone().minus(a.value.clone())),
-            Sign::Negative | Sign::Zero | Sign::NonPositive
-        ) {
+        if !self.is_positive(&b.value.clone().minus(a.value.clone())) {
             self.diagnostics.push(
                 Diagnostic::error(
                     codes_check::AXIS_DIRECTION,
@@ -139,9 +143,41 @@ impl Checker<'_> {
         })
     }
 
+    /// Says that something is stated a second time.
+    pub(super) fn twice(&mut self, span: Span, what: &str) {
+        self.diagnostics.push(
+            Diagnostic::error(codes_check::STATED_TWICE, span, format!("{what} is stated twice"))
+                .with_text("stated again here")
+                .with_remedy("leave one of them out"),
+        );
+    }
+
+    /// Whether an expression of constants is greater than zero: for the whole range of free constants where that can be
+    /// told exactly, else at their defaults.
+    pub(super) fn is_positive(&self, value: &Expression) -> bool {
+        match self.sign(value) {
+            Sign::Positive => true,
+            Sign::Negative | Sign::Zero | Sign::NonPositive => false,
+            Sign::NonNegative | Sign::Unknown => evaluate(value, &self.probe(), &Point::default())
+                .is_some_and(|number| number.is_finite() && number > 0.0),
+        }
+    }
+
     /// The sign of an expression of constants, free constants at their stated range.
     pub(super) fn sign(&self, value: &Expression) -> Sign {
-        let probe = model::Model {
+        if let Expression::Number(number) = value {
+            return match number.sign() {
+                0 => Sign::Zero,
+                1 => Sign::Positive,
+                _ => Sign::Negative,
+            };
+        }
+        model::sign::sign(value, &self.probe())
+    }
+
+    /// A model of constants alone, for questions about them.
+    fn probe(&self) -> model::Model {
+        model::Model {
             name: String::new(),
             title: String::new(),
             axes: Vec::new(),
@@ -162,8 +198,7 @@ impl Checker<'_> {
             },
             outputs: Vec::new(),
             verification: None,
-        };
-        model::sign::sign(value, &probe)
+        }
     }
 
     /// Fields in order; their dimensions go to the scope.
@@ -183,12 +218,10 @@ impl Checker<'_> {
         let mut fields = Vec::new();
         for field in &file.fields {
             let scale = match &field.unit {
-                Some(unit) => units::resolve(unit, &mut self.diagnostics),
+                Some(unit) => self.unit(unit),
                 None => Some(Scale { factor: Expression::one(), dimension: Dimension::one() }),
             };
-            self.scope
-                .fields
-                .push(scale.as_ref().map_or_else(Dimension::one, |scale| scale.dimension.clone()));
+            self.scope.fields.push(scale.as_ref().map(|scale| scale.dimension.clone()));
             fields.push((field, scale));
         }
         let mut result = Vec::new();
@@ -204,6 +237,10 @@ impl Checker<'_> {
         for axis in &field.axes {
             let found = self.scope.axis(&axis.text);
             match self.scope.expect(axis, "an axis", found, &mut self.diagnostics) {
+                Some(id) if named.contains(&id) => {
+                    self.twice(axis.span, "this axis");
+                    sound = false;
+                }
                 Some(id) => named.push(id),
                 None => sound = false,
             }
@@ -269,13 +306,18 @@ impl Checker<'_> {
         Some((low.value, high.value))
     }
 
-    /// Resolves every constant, coefficient and operator, used or not, so that every fault is found.
-    pub(super) fn resolve_all(&mut self) {
+    /// Resolves every constant, used or not, so that every fault is found.
+    pub(super) fn constants(&mut self) {
         for index in 0..self.file.constants.len() {
             let span = self.file.constants[index].name.span;
             self.constant(index, span);
         }
+    }
+
+    /// Resolves every coefficient, used or not.
+    pub(super) fn coefficients(&mut self) {
         // Places first, so that indices of the file and of the model agree whatever is wrong.
+        self.coefficient_extents = vec![Size::default(); self.file.coefficients.len()];
         for coefficient in &self.file.coefficients {
             self.coefficients.push(model::Coefficient {
                 name: coefficient.name.text.clone(),
@@ -287,17 +329,31 @@ impl Checker<'_> {
             let span = self.file.coefficients[index].name.span;
             self.coefficient(index, span);
         }
-        let accuracy: Vec<_> = self.file.operators.iter().map(|operator| &operator.accuracy).collect();
-        for clauses in accuracy {
-            self.operator_order(clauses);
+    }
+
+    /// Reads the body of every operator once with parameters of any unit, so that one that nobody uses is checked too.
+    pub(super) fn operators(&mut self) {
+        let file = self.file;
+        for (index, operator) in file.operators.iter().enumerate() {
+            let any = Typed { value: Expression::Field(model::FieldId(0)), dimension: None };
+            let parameters = operator.parameters.iter().map(|name| (name.text.clone(), any.clone())).collect();
+            let order = self.operator_order(&operator.accuracy);
+            let Some(()) = self.enter(Kind::Operator(index), operator.name.span) else { continue };
+            self.convert(&operator.value, Place::Operator, &Bound { parameters, order });
+            self.resolving.pop();
         }
     }
 
-    fn enter(&mut self, kind: Kind, name: &str, span: Span) -> Option<()> {
-        if self.resolving.contains(&kind) {
+    /// Begins to resolve something; refused where it is being resolved already.
+    pub(super) fn enter(&mut self, kind: Kind, span: Span) -> Option<()> {
+        if let Some(place) = self.resolving.iter().position(|known| *known == kind) {
+            let names: Vec<&str> =
+                self.resolving[place..].iter().chain([&kind]).map(|kind| self.declared_name(*kind)).collect();
+            let (name, way) = (names[0], names.join(" → "));
             self.diagnostics.push(
                 Diagnostic::error(codes_check::CYCLE, span, format!("`{name}` is defined by itself"))
-                    .with_remedy("break the circle: one of them must be given by a number"),
+                    .with_text(format!("the circle is {way}"))
+                    .with_remedy("break the circle: one of them must be given without the others"),
             );
             return None;
         }
@@ -305,21 +361,35 @@ impl Checker<'_> {
         Some(())
     }
 
+    fn declared_name(&self, kind: Kind) -> &str {
+        match kind {
+            Kind::Constant(index) => &self.file.constants[index].name.text,
+            Kind::Coefficient(index) => &self.file.coefficients[index].name.text,
+            Kind::Operator(index) => &self.file.operators[index].name.text,
+            Kind::Axis(_) | Kind::Field(_) | Kind::Faulty => "",
+        }
+    }
+
     /// A constant, resolved when it is first used.
     pub(super) fn constant(&mut self, index: usize, span: Span) -> Option<Typed> {
         if let Some(known) = &self.scope.constants[index] {
-            return Some(known.clone());
+            return known.clone();
         }
-        let constant = &self.file.constants[index];
-        self.enter(Kind::Constant(index), &constant.name.text, span)?;
-        let typed = self.formula(&constant.value, Place::Constant);
+        self.enter(Kind::Constant(index), span)?;
+        let typed = self.constant_value(index);
         self.resolving.pop();
-        let typed = typed?;
-        let unit = match &constant.value.kind {
-            ExpressionKind::Quantity { unit, .. } => {
-                units::resolve(unit, &mut self.diagnostics).map(|scale| (unit.spelling.clone(), scale))
-            }
-            _ => None,
+        self.scope.constants[index] = Some(typed.clone());
+        typed
+    }
+
+    fn constant_value(&mut self, index: usize) -> Option<Typed> {
+        let file = self.file;
+        let constant = &file.constants[index];
+        let typed = self.formula(&constant.value, Place::Constant)?;
+        let extent = self.measured(&typed.value, constant.value.span)?;
+        let unit = match leading_unit(&constant.value) {
+            Some(unit) => self.unit(unit).map(|scale| (unit.spelling.clone(), scale)),
+            None => None,
         };
         let dimension = typed.dimension.clone().unwrap_or_else(Dimension::one);
         let description = constant.description.as_ref().map(|text| text.text.clone());
@@ -328,10 +398,16 @@ impl Checker<'_> {
                 Some(bounds) => Some(self.bounds(bounds, Some(dimension.clone()))?),
                 None => None,
             };
+            if let (Some((low, high)), Some(written)) = (&bounds, &constant.bounds) {
+                self.default_within(constant, &typed.value, low, high, written.span)?;
+            }
             let (unit, scale) = match &unit {
-                Some((spelling, scale)) => (spelling.clone(), scale.factor.clone()),
-                None => (dimension.to_string(), Expression::one()),
+                Some((spelling, scale)) if scale.dimension == dimension => {
+                    (spelling.clone(), scale.factor.clone())
+                }
+                _ => (dimension.to_string(), Expression::one()),
             };
+            self.free_extents.push(extent);
             self.free.push(FreeConstant {
                 name: constant.name.text.clone(),
                 description,
@@ -352,27 +428,57 @@ impl Checker<'_> {
             });
             typed
         };
-        self.scope.constants[index] = Some(typed.clone());
         Some(typed)
+    }
+
+    /// The default of a free constant lies in its own range.
+    fn default_within(
+        &mut self,
+        constant: &tree::Constant,
+        value: &Expression,
+        low: &Expression,
+        high: &Expression,
+        range: Span,
+    ) -> Option<()> {
+        let outside = [value.clone().minus(low.clone()), high.clone().minus(value.clone())]
+            .iter()
+            .any(|room| self.sign(room) == Sign::Negative);
+        if !outside {
+            return Some(());
+        }
+        self.diagnostics.push(
+            Diagnostic::error(
+                codes_check::BOUNDS_ORDER,
+                constant.value.span,
+                format!("`{}` lies outside its own range", constant.name.text),
+            )
+            .with_text("the value that holds unless another is given")
+            .with_label(range, "its range")
+            .with_remedy("widen the range, or correct the value"),
+        );
+        None
     }
 
     /// A coefficient, resolved when it is first used.
     pub(super) fn coefficient(&mut self, index: usize, span: Span) -> Option<Typed> {
         if let Some(known) = &self.scope.coefficients[index] {
-            return Some(known.clone());
+            return known.clone();
         }
         let file = self.file;
         let coefficient = &file.coefficients[index];
-        self.enter(Kind::Coefficient(index), &coefficient.name.text, span)?;
+        self.enter(Kind::Coefficient(index), span)?;
         let typed = self.coefficient_value(coefficient);
         self.resolving.pop();
-        let typed = typed?;
+        let extent = typed.as_ref().and_then(|typed| self.measured(&typed.value, coefficient.span));
+        let typed = typed.filter(|_| extent.is_some());
+        self.scope.coefficients[index] = Some(typed.clone());
+        let (typed, extent) = (typed?, extent?);
+        self.coefficient_extents[index] = extent;
         self.coefficients[index] = model::Coefficient {
             name: coefficient.name.text.clone(),
             dimension: typed.dimension.clone().unwrap_or_else(Dimension::one),
             value: typed.value.clone(),
         };
-        self.scope.coefficients[index] = Some(typed.clone());
         Some(typed)
     }
 
@@ -390,7 +496,7 @@ impl Checker<'_> {
             }
         };
         let unit = match &coefficient.unit {
-            Some(unit) => Some(units::resolve(unit, &mut self.diagnostics)?.dimension),
+            Some(unit) => Some(self.unit(unit)?.dimension),
             None => None,
         };
         for argument in &coefficient.arguments {
@@ -456,5 +562,14 @@ impl Checker<'_> {
             })),
         );
         None
+    }
+}
+
+/// The unit that a value is written in, where it is one quantity.
+fn leading_unit(value: &tree::Expression) -> Option<&tree::Unit> {
+    match &value.kind {
+        ExpressionKind::Quantity { unit, .. } => Some(unit),
+        ExpressionKind::Negate(inner) => leading_unit(inner),
+        _ => None,
     }
 }

@@ -6,7 +6,7 @@ use super::Checker;
 use super::formula::Place;
 use crate::diagnostic::{Diagnostic, codes_check};
 use crate::model::expression::{DerivativeKind, factors, terms};
-use crate::model::{self, AxisId, Equation, Expression, FieldId, TimeOrder};
+use crate::model::{self, AxisId, Equation, Expression, FieldId, Output, TimeOrder};
 use crate::source::Span;
 use crate::syntax::tree::Section;
 
@@ -195,20 +195,50 @@ impl Checker<'_> {
         &mut self,
         axes: &Option<Vec<model::Axis>>,
         equations: &Option<Vec<Equation>>,
+        outputs: &Option<Vec<Output>>,
     ) {
-        let (Some(axes), Some(equations)) = (axes, equations) else { return };
-        for equation in equations {
+        let Some(axes) = axes else { return };
+        let of_equations = equations.iter().flatten().map(|equation| (&equation.right, equation.span));
+        let of_outputs = outputs.iter().flatten().map(|output| (&output.value, output.span));
+        for (value, span) in of_equations.chain(of_outputs) {
             let mut found: Vec<AxisId> = Vec::new();
-            high_derivatives(&equation.right, false, &mut found);
+            high_derivatives(value, false, &mut found);
             found.retain(|axis| !axes[axis.0].periodic);
             if let Some(axis) = found.first() {
                 let name = axes[axis.0].name.clone();
                 self.not_yet(
-                    equation.span,
+                    span,
                     &format!("a derivative of third or higher order along `{name}`, which has boundaries,"),
                     "make the axis periodic",
                 );
             }
+        }
+    }
+}
+
+impl Checker<'_> {
+    /// Outputs hold rates of fields that are second order in time; the others are only known inside a step.
+    pub(super) fn rates_in_outputs(
+        &mut self,
+        equations: &Option<Vec<Equation>>,
+        outputs: &Option<Vec<Output>>,
+    ) {
+        let Some(equations) = equations else { return };
+        for output in outputs.iter().flatten() {
+            let first = rates(&output.value)
+                .into_iter()
+                .find(|field| equations.get(field.0).is_some_and(|one| one.order == TimeOrder::First));
+            let Some(field) = first else { continue };
+            let name = &self.file.fields[field.0].name.text;
+            self.diagnostics.push(
+                Diagnostic::error(
+                    codes_check::RATE_ON_RIGHT,
+                    output.span,
+                    format!("`{}` holds ∂{name}/∂t, which is not kept between steps", output.name),
+                )
+                .with_text(format!("`{name}` is first order in time"))
+                .with_remedy(format!("put the right side of the equation of `{name}` in its place")),
+            );
         }
     }
 }

@@ -1,7 +1,6 @@
 //! Formulas: from the tree to exact expressions in SI, with dimensions checked in every term.
 
 use super::Checker;
-use super::derive::differentiate;
 use super::scope::{Kind, Typed};
 use super::units;
 use crate::diagnostic::{Diagnostic, codes_check};
@@ -25,6 +24,8 @@ pub(super) enum Place {
     Equation,
     /// Pointwise, with ∂/∂n and ∂/∂t of fields.
     Condition,
+    /// The body of a named operator: all that can stand where it may be used.
+    Operator,
 }
 
 impl Place {
@@ -36,8 +37,16 @@ impl Place {
             Place::Output => "no rate of change of a field that is first order in time can stand here",
             Place::Equation => "no normal derivative can stand here",
             Place::Condition => "only the field's value, ∂/∂n and ∂/∂t can stand in a condition",
+            Place::Operator => "not in an operator either",
         }
     }
+}
+
+/// Where a function has a value.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+enum Domain {
+    Positive,
+    NotNegative,
 }
 
 /// Names that stand for something else inside a named operator.
@@ -45,12 +54,7 @@ impl Place {
 pub(super) struct Bound {
     pub(super) parameters: Vec<(String, Typed)>,
     pub(super) order: Option<usize>,
-    /// How many operators deep.
-    depth: usize,
 }
-
-/// Named operators may use each other this deep.
-const DEEPEST_OPERATORS: usize = 16;
 
 impl Checker<'_> {
     /// A formula at a place; faults are reported and give nothing.
@@ -59,19 +63,28 @@ impl Checker<'_> {
     }
 
     pub(super) fn convert(&mut self, tree: &tree::Expression, place: Place, bound: &Bound) -> Option<Typed> {
+        self.descend(tree.span)?;
+        let typed = self.convert_kind(tree, place, bound);
+        self.ascend();
+        let typed = typed?;
+        self.in_range(&typed.value, tree.span)?;
+        Some(typed)
+    }
+
+    fn convert_kind(&mut self, tree: &tree::Expression, place: Place, bound: &Bound) -> Option<Typed> {
         match &tree.kind {
             ExpressionKind::Number(number) => Some(Typed {
                 value: Expression::Number(number.clone()),
                 dimension: (!number.is_zero()).then(Dimension::one),
             }),
             ExpressionKind::Quantity { value, unit } => {
-                let scale = units::resolve(unit, &mut self.diagnostics)?;
-                let dimension = (!value.is_zero()).then_some(scale.dimension);
-                Some(Typed { value: Expression::Number(value.clone()).times(scale.factor), dimension })
+                let scale = self.unit(unit)?;
+                let value = Expression::Number(value.clone()).times(scale.factor);
+                Some(Typed { value, dimension: Some(scale.dimension) })
             }
             ExpressionKind::Pi => Some(Typed::number(Expression::Pi)),
             ExpressionKind::Name(name) => self.name(name, tree.span, place, bound),
-            ExpressionKind::Sum(terms) => self.sum(terms, place, bound),
+            ExpressionKind::Sum(terms) => self.sum(terms, tree.span, place, bound),
             ExpressionKind::Product(factors) => self.product(factors, place, bound),
             ExpressionKind::Negate(inner) => {
                 let inner = self.convert(inner, place, bound)?;
@@ -116,7 +129,7 @@ impl Checker<'_> {
         }
     }
 
-    fn misplaced(&mut self, span: Span, what: &str, place: Place) -> Option<Typed> {
+    pub(super) fn misplaced(&mut self, span: Span, what: &str, place: Place) -> Option<Typed> {
         self.diagnostics.push(
             Diagnostic::error(codes_check::MISPLACED, span, format!("{what} cannot stand here"))
                 .with_text(place.what()),
@@ -126,13 +139,15 @@ impl Checker<'_> {
 
     fn name(&mut self, name: &str, span: Span, place: Place, bound: &Bound) -> Option<Typed> {
         if let Some((_, typed)) = bound.parameters.iter().find(|(own, _)| own == name) {
+            let size = self.extent(&typed.value).nodes;
+            self.spend(size, span)?;
             return Some(typed.clone());
         }
         if name == "t" {
             if place == Place::Constant {
                 return self.misplaced(span, "the time `t`", place);
             }
-            return Some(Typed { value: Expression::Time, dimension: Some(self.time_dimension.clone()) });
+            return Some(Typed { value: Expression::Time, dimension: self.time_dimension.clone() });
         }
         match self.scope.kind(name) {
             None => {
@@ -140,19 +155,26 @@ impl Checker<'_> {
                 None
             }
             Some(Kind::Faulty) => None,
-            Some(Kind::Constant(index)) => self.constant(index, span),
+            Some(Kind::Constant(index)) => {
+                let typed = self.constant(index, span)?;
+                let size = self.extent(&typed.value).nodes;
+                self.spend(size, span)?;
+                Some(typed)
+            }
             Some(Kind::Axis(_)) if place == Place::Constant => {
                 self.misplaced(span, &format!("the coordinate `{name}`"), place)
             }
             Some(Kind::Axis(index)) => Some(Typed {
                 value: Expression::Coordinate(AxisId(index)),
-                dimension: self.scope.axes.get(index).cloned(),
+                dimension: self.scope.axes.get(index).cloned().flatten(),
             }),
             Some(Kind::Coefficient(_)) if place == Place::Constant => {
                 self.misplaced(span, &format!("the coefficient `{name}`"), place)
             }
             Some(Kind::Coefficient(index)) => {
                 let typed = self.coefficient(index, span)?;
+                let size = self.coefficient_extents.get(index).map_or(1, |extent| extent.nodes);
+                self.spend(size, span)?;
                 Some(Typed {
                     value: Expression::Coefficient(CoefficientId(index)),
                     dimension: typed.dimension,
@@ -163,7 +185,7 @@ impl Checker<'_> {
             }
             Some(Kind::Field(index)) => Some(Typed {
                 value: Expression::Field(FieldId(index)),
-                dimension: self.scope.fields.get(index).cloned(),
+                dimension: self.scope.fields.get(index).cloned().flatten(),
             }),
             Some(Kind::Operator(_)) => {
                 self.diagnostics.push(
@@ -179,7 +201,7 @@ impl Checker<'_> {
         }
     }
 
-    fn sum(&mut self, terms: &[tree::Term], place: Place, bound: &Bound) -> Option<Typed> {
+    fn sum(&mut self, terms: &[tree::Term], span: Span, place: Place, bound: &Bound) -> Option<Typed> {
         let converted: Vec<Option<Typed>> =
             terms.iter().map(|term| self.convert(&term.value, place, bound)).collect();
         let mut dimension: Option<(Dimension, Span)> = None;
@@ -203,7 +225,9 @@ impl Checker<'_> {
             }
             parts.push(if term.sign == Sign::Minus { typed.value.negative() } else { typed.value });
         }
-        sound.then(|| Typed { value: Expression::sum(parts), dimension: dimension.map(|(own, _)| own) })
+        sound.then_some(())?;
+        self.small_enough(parts.iter(), span)?;
+        Some(Typed { value: Expression::sum(parts), dimension: dimension.map(|(own, _)| own) })
     }
 
     /// Two things that must have the same dimension and have not.
@@ -255,6 +279,9 @@ impl Checker<'_> {
                     },
                 },
             });
+            if let Some(total) = &total {
+                self.in_range(&total.value, factor.value.span)?;
+            }
         }
         total
     }
@@ -292,6 +319,10 @@ impl Checker<'_> {
                 ));
                 return None;
             }
+            if !exact.is_integer() {
+                self.within_domain(&typed.value, base.span, "a broken power", Domain::NotNegative)?;
+            }
+            self.small_power(&typed.value, exact, base.span)?;
             let dimension = typed.dimension.map(|dimension| dimension.power(exact));
             return Some(Typed { value: typed.value.power(exact.clone()), dimension });
         }
@@ -307,6 +338,7 @@ impl Checker<'_> {
             return None;
         }
         // a^b with a varying exponent: exp(b·log a).
+        self.within_domain(&typed.value, base.span, "a varying power", Domain::Positive)?;
         let log = Expression::Call(model::Function::Log, vec![typed.value]);
         Some(Typed::number(Expression::Call(model::Function::Exp, vec![power.value.times(log)])))
     }
@@ -344,6 +376,7 @@ impl Checker<'_> {
                 })
             }
             tree::Function::Sqrt => {
+                self.within_domain(&typed[0].value, arguments[0].span, "a root", Domain::NotNegative)?;
                 let dimension = typed[0].dimension.as_ref().map(|own| own.power(&Rational::ratio(1, 2)));
                 Some(Typed { value: typed[0].value.clone().square_root(), dimension })
             }
@@ -364,9 +397,37 @@ impl Checker<'_> {
                     );
                     return None;
                 }
+                if function == tree::Function::Log {
+                    self.within_domain(&typed[0].value, arguments[0].span, "a logarithm", Domain::Positive)?;
+                }
                 Some(Typed::number(Expression::Call(name, values)))
             }
         }
+    }
+
+    /// What a function is taken of, where that is a constant whose sign is known.
+    fn within_domain(&mut self, value: &Expression, span: Span, what: &str, domain: Domain) -> Option<()> {
+        let is_constant = !value.any(&|node| !is_part_of_constant(node));
+        let sign = if is_constant { self.sign(value) } else { model::sign::Sign::Unknown };
+        let (outside, expected) = match domain {
+            Domain::Positive => (matches!(sign, model::sign::Sign::Negative | model::sign::Sign::Zero), "greater than zero"),
+            Domain::NotNegative => (sign == model::sign::Sign::Negative, "not less than zero"),
+        };
+        if !outside {
+            return Some(());
+        }
+        self.diagnostics.push(
+            Diagnostic::error(codes_check::NO_VALUE, span, format!("{what} of this has no value"))
+                .with_text(format!("expected a number that is {expected}")),
+        );
+        None
+    }
+
+    /// The scale of a unit.
+    pub(super) fn unit(&mut self, unit: &tree::Unit) -> Option<units::Scale> {
+        let scale = units::resolve(unit, &mut self.diagnostics)?;
+        self.in_range(&scale.factor, unit.span)?;
+        Some(scale)
     }
 
     fn apply(
@@ -382,7 +443,8 @@ impl Checker<'_> {
         };
         let index =
             self.scope.expect(operator, "a named operator or a function", index, &mut self.diagnostics)?;
-        let declared = &self.file.operators[index];
+        let file = self.file;
+        let declared = &file.operators[index];
         if declared.parameters.len() != arguments.len() {
             self.diagnostics.push(
                 Diagnostic::error(
@@ -399,21 +461,16 @@ impl Checker<'_> {
             );
             return None;
         }
-        if bound.depth >= DEEPEST_OPERATORS {
-            self.diagnostics.push(Diagnostic::error(
-                codes_check::CYCLE,
-                operator.span,
-                format!("`{}` is defined by itself, or operators are nested too deep", operator.text),
-            ));
-            return None;
-        }
-        let mut inner = Bound { depth: bound.depth + 1, order: bound.order, ..Bound::default() };
+        let mut inner = Bound { order: bound.order, ..Bound::default() };
         for (parameter, argument) in declared.parameters.iter().zip(arguments) {
             let typed = self.convert(argument, place, bound)?;
             inner.parameters.push((parameter.text.clone(), typed));
         }
         inner.order = self.operator_order(&declared.accuracy).or(inner.order);
-        self.convert(&declared.value, place, &inner)
+        self.enter(Kind::Operator(index), operator.span)?;
+        let typed = self.convert(&declared.value, place, &inner);
+        self.resolving.pop();
+        typed
     }
 
     fn cases(
@@ -476,340 +533,6 @@ impl Checker<'_> {
         };
         Some(model::Comparison { left: left.value, relation, right: right.value })
     }
-
-    fn allow_spatial(&mut self, span: Span, place: Place) -> Option<()> {
-        if matches!(place, Place::Output | Place::Equation) {
-            return Some(());
-        }
-        self.misplaced(span, "a spatial derivative", place);
-        None
-    }
-
-    fn derivative(
-        &mut self,
-        derivative: &tree::Derivative,
-        span: Span,
-        place: Place,
-        bound: &Bound,
-    ) -> Option<Typed> {
-        let in_time: u32 = derivative.by.iter().filter(|by| by.name.text == "t").map(|by| by.power).sum();
-        if in_time > 0 {
-            return self.rate(derivative, in_time, span, place, bound);
-        }
-        if derivative.by.iter().any(|by| by.name.text == "n" && self.scope.kind("n").is_none()) {
-            return self.normal(derivative, span, place, bound);
-        }
-        self.allow_spatial(span, place)?;
-        let mut typed = self.convert(&derivative.of, place, bound)?;
-        for by in derivative.by.iter().rev() {
-            let axis = self.scope.axis(&by.name.text);
-            let axis = self.scope.expect(&by.name, "an axis, `t` or `n`", axis, &mut self.diagnostics)?;
-            for _ in 0..by.power {
-                typed = self.along(axis, typed, bound);
-            }
-        }
-        Some(typed)
-    }
-
-    fn along(&mut self, axis: AxisId, typed: Typed, bound: &Bound) -> Typed {
-        let length = self.scope.axes.get(axis.0).cloned().unwrap_or_else(Dimension::one);
-        Typed {
-            value: differentiate(axis, typed.value, bound.order, &self.coefficients),
-            dimension: typed.dimension.map(|dimension| dimension.over(&length)),
-        }
-    }
-
-    fn rate(
-        &mut self,
-        derivative: &tree::Derivative,
-        in_time: u32,
-        span: Span,
-        place: Place,
-        bound: &Bound,
-    ) -> Option<Typed> {
-        if !matches!(place, Place::Equation | Place::Condition | Place::Output) {
-            return self.misplaced(span, "a rate of change", place);
-        }
-        if in_time != derivative.order {
-            // ∂²u/∂t∂x: the rate of a field under a spatial derivative.
-            let mut typed = self.rate_of(&derivative.of, in_time, span, place, bound)?;
-            for by in derivative.by.iter().rev().filter(|by| by.name.text != "t") {
-                let axis = self.scope.axis(&by.name.text);
-                let axis = self.scope.expect(&by.name, "an axis", axis, &mut self.diagnostics)?;
-                for _ in 0..by.power {
-                    typed = self.along(axis, typed, bound);
-                }
-            }
-            return Some(typed);
-        }
-        self.rate_of(&derivative.of, in_time, span, place, bound)
-    }
-
-    fn rate_of(
-        &mut self,
-        of: &tree::Expression,
-        in_time: u32,
-        span: Span,
-        place: Place,
-        bound: &Bound,
-    ) -> Option<Typed> {
-        let typed = self.convert(of, place, bound)?;
-        let (factor, field) = match split_field(&typed.value) {
-            Some(found) => found,
-            None => {
-                self.diagnostics.push(
-                    Diagnostic::error(
-                        codes_check::RATE_OF_FORMULA,
-                        span,
-                        "the rate of change of a formula: only fields have one here",
-                    )
-                    .with_remedy("write the rule out, for example c * ∂T/∂t for a constant c"),
-                );
-                return None;
-            }
-        };
-        let value = match in_time {
-            1 => Expression::Rate(field),
-            2 if place == Place::Equation => Expression::SecondRate(field),
-            _ => {
-                self.diagnostics.push(Diagnostic::error(
-                    codes_check::TIME_ORDER,
-                    span,
-                    "equations are of first or second order in time, conditions and outputs of first",
-                ));
-                return None;
-            }
-        };
-        let duration = self.time_dimension.power(&Rational::from(i64::from(in_time)));
-        Some(Typed {
-            value: factor.times(value),
-            dimension: typed.dimension.map(|dimension| dimension.over(&duration)),
-        })
-    }
-
-    fn normal(
-        &mut self,
-        derivative: &tree::Derivative,
-        span: Span,
-        place: Place,
-        bound: &Bound,
-    ) -> Option<Typed> {
-        if place != Place::Condition {
-            return self.misplaced(span, "a normal derivative ∂/∂n", place);
-        }
-        if derivative.order != 1 {
-            self.not_yet(
-                span,
-                "a condition on a higher normal derivative",
-                "give the value or the first normal derivative",
-            );
-            return None;
-        }
-        let typed = self.convert(&derivative.of, place, bound)?;
-        let length = self.normal_dimension.clone().unwrap_or_else(Dimension::one);
-        let Some((factor, field)) = split_field(&typed.value) else {
-            self.diagnostics.push(
-                Diagnostic::error(
-                    codes_check::RATE_OF_FORMULA,
-                    span,
-                    "the normal derivative of a formula: only fields have one here",
-                )
-                .with_remedy("write the rule out"),
-            );
-            return None;
-        };
-        Some(Typed {
-            value: factor.times(Expression::Normal(Box::new(Expression::Field(field)))),
-            dimension: typed.dimension.map(|dimension| dimension.over(&length)),
-        })
-    }
-
-    fn laplacian(
-        &mut self,
-        inner: &tree::Expression,
-        span: Span,
-        place: Place,
-        bound: &Bound,
-    ) -> Option<Typed> {
-        self.allow_spatial(span, place)?;
-        let typed = self.convert(inner, place, bound)?;
-        let mut parts = Vec::new();
-        let mut dimension = None;
-        for axis in (0..self.scope.axes.len()).map(AxisId) {
-            let once = self.along(axis, typed.clone(), bound);
-            let twice = self.along(axis, once, bound);
-            dimension = twice.dimension;
-            parts.push(twice.value);
-        }
-        self.same_lengths(span)?;
-        Some(Typed { value: Expression::sum(parts), dimension })
-    }
-
-    /// Δ and ∇· add derivatives along all axes, whose units must agree.
-    fn same_lengths(&mut self, span: Span) -> Option<()> {
-        let first = self.scope.axes.first().cloned()?;
-        if let Some(other) = self.scope.axes.iter().find(|dimension| **dimension != first).cloned() {
-            self.mismatch(span, &other, span, &first, "the axes under Δ or ∇");
-            return None;
-        }
-        Some(())
-    }
-
-    /// ∇·(flux): terms with one gradient each.
-    fn divergence(&mut self, flux: &tree::Expression, place: Place, bound: &Bound) -> Option<Typed> {
-        self.same_lengths(flux.span)?;
-        match &flux.kind {
-            ExpressionKind::Sum(terms) => {
-                let converted: Vec<Option<Typed>> =
-                    terms.iter().map(|term| self.divergence(&term.value, place, bound)).collect();
-                let mut parts = Vec::new();
-                let mut dimension: Option<(Dimension, Span)> = None;
-                for (term, typed) in terms.iter().zip(converted) {
-                    let typed = typed?;
-                    if let (Some((first, span)), Some(own)) = (&dimension, &typed.dimension)
-                        && first != own
-                    {
-                        let (first, span, own) = (first.clone(), *span, own.clone());
-                        self.mismatch(term.value.span, &own, span, &first, "the terms of a flux");
-                        return None;
-                    }
-                    if dimension.is_none() {
-                        dimension = typed.dimension.clone().map(|own| (own, term.value.span));
-                    }
-                    parts.push(if term.sign == Sign::Minus { typed.value.negative() } else { typed.value });
-                }
-                Some(Typed { value: Expression::sum(parts), dimension: dimension.map(|(own, _)| own) })
-            }
-            ExpressionKind::Negate(inner) => {
-                let typed = self.divergence(inner, place, bound)?;
-                Some(Typed { value: typed.value.negative(), ..typed })
-            }
-            ExpressionKind::Gradient(inner) => {
-                let of = self.convert(inner, place, bound)?;
-                Some(self.divergence_of(&Typed::number(Expression::one()), of, bound))
-            }
-            ExpressionKind::Product(factors) => {
-                let gradients =
-                    factors.iter().filter(|factor| matches!(factor.value.kind, ExpressionKind::Gradient(_)));
-                let (1, Some(gradient)) = (gradients.clone().count(), gradients.clone().next()) else {
-                    return self.scalar_flux(flux.span);
-                };
-                let ExpressionKind::Gradient(inner) = &gradient.value.kind else { return None };
-                if gradient.operation == Operation::Over {
-                    return self.scalar_flux(gradient.value.span);
-                }
-                let mut coefficient = Typed::number(Expression::one());
-                for factor in factors {
-                    if matches!(factor.value.kind, ExpressionKind::Gradient(_)) {
-                        continue;
-                    }
-                    let typed = self.convert(&factor.value, place, bound)?;
-                    coefficient = Typed {
-                        dimension: match (coefficient.dimension, typed.dimension, factor.operation) {
-                            (Some(a), Some(b), Operation::Times) => Some(a.times(&b)),
-                            (Some(a), Some(b), Operation::Over) => Some(a.over(&b)),
-                            _ => None,
-                        },
-                        value: match factor.operation {
-                            Operation::Times => coefficient.value.times(typed.value),
-                            Operation::Over => coefficient.value.over(typed.value),
-                        },
-                    };
-                }
-                let of = self.convert(inner, place, bound)?;
-                Some(self.divergence_of(&coefficient, of, bound))
-            }
-            _ => self.scalar_flux(flux.span),
-        }
-    }
-
-    fn scalar_flux(&mut self, span: Span) -> Option<Typed> {
-        self.diagnostics.push(
-            Diagnostic::error(codes_check::VECTOR_ALONE, span, "∇· takes a vector, and this is none")
-                .with_text("expected terms like k * ∇T, one gradient each")
-                .with_remedy(
-                    "transport by a velocity is written axis by axis: ∂/∂x(u_x * q) + ∂/∂y(u_y * q)",
-                ),
-        );
-        None
-    }
-
-    fn divergence_of(&mut self, coefficient: &Typed, of: Typed, bound: &Bound) -> Typed {
-        let mut parts = Vec::new();
-        let mut dimension = None;
-        for axis in (0..self.scope.axes.len()).map(AxisId) {
-            let slope = self.along(axis, of.clone(), bound);
-            let flux = Typed {
-                value: coefficient.value.clone().times(slope.value),
-                dimension: coefficient
-                    .dimension
-                    .as_ref()
-                    .zip(slope.dimension.as_ref())
-                    .map(|(a, b)| a.times(b)),
-            };
-            let outer = self.along(axis, flux, bound);
-            dimension = outer.dimension;
-            parts.push(outer.value);
-        }
-        Typed { value: Expression::sum(parts), dimension }
-    }
-
-    /// ∇f·∇g.
-    fn dot(
-        &mut self,
-        left: &tree::Expression,
-        right: &tree::Expression,
-        span: Span,
-        place: Place,
-        bound: &Bound,
-    ) -> Option<Typed> {
-        self.allow_spatial(span, place)?;
-        self.same_lengths(span)?;
-        let (ExpressionKind::Gradient(f), ExpressionKind::Gradient(g)) = (&left.kind, &right.kind) else {
-            return self.scalar_flux(span);
-        };
-        let (f, g) = (self.convert(f, place, bound)?, self.convert(g, place, bound)?);
-        let mut parts = Vec::new();
-        let mut dimension = None;
-        for axis in (0..self.scope.axes.len()).map(AxisId) {
-            let (a, b) = (self.along(axis, f.clone(), bound), self.along(axis, g.clone(), bound));
-            dimension = a.dimension.zip(b.dimension).map(|(a, b)| a.times(&b));
-            parts.push(a.value.times(b.value));
-        }
-        Some(Typed { value: Expression::sum(parts), dimension })
-    }
-}
-
-/// factor · field, with a factor that holds no field.
-fn split_field(value: &Expression) -> Option<(Expression, FieldId)> {
-    match value {
-        Expression::Field(field) => Some((Expression::one(), *field)),
-        Expression::Product(items) => {
-            let mut fields = items.iter().filter_map(|item| match item {
-                Expression::Field(field) => Some(*field),
-                _ => None,
-            });
-            let field =
-                fields.next().filter(|_| items.iter().filter(|item| holds_state(item)).count() == 1)?;
-            let rest = items.iter().filter(|item| !holds_state(item)).cloned();
-            let rest: Vec<Expression> = rest.collect();
-            // A factor that varies in time would have to be differentiated as well.
-            let still = rest
-                .iter()
-                .all(|item| !item.any(&|node| matches!(node, Expression::Time | Expression::Coefficient(_))));
-            still.then(|| (Expression::product(rest), field))
-        }
-        _ => None,
-    }
-}
-
-fn holds_state(value: &Expression) -> bool {
-    value.any(&|node| {
-        matches!(
-            node,
-            Expression::Field(_) | Expression::Rate(_) | Expression::Derivative(_) | Expression::Normal(_)
-        )
-    })
 }
 
 fn target(function: tree::Function) -> model::Function {
@@ -830,4 +553,20 @@ fn target(function: tree::Function) -> model::Function {
         tree::Function::Erfc => model::Function::Erfc,
         tree::Function::Sign => model::Function::Sign,
     }
+}
+
+/// Whether a node can be part of an expression of constants.
+fn is_part_of_constant(node: &Expression) -> bool {
+    matches!(
+        node,
+        Expression::Number(_)
+            | Expression::Pi
+            | Expression::Constant(_)
+            | Expression::Sum(_)
+            | Expression::Product(_)
+            | Expression::Quotient(..)
+            | Expression::Power(..)
+            | Expression::Call(..)
+            | Expression::Cases(..)
+    )
 }

@@ -3,26 +3,36 @@
 //! All faults are reported in one go; a statement with a fault is left out and the rest is checked as if it were not there. Nothing
 //! here derives weights.
 
+mod bounds;
 pub mod conditions;
 mod declare;
 mod derive;
+mod differential;
 mod equation;
 mod formula;
+mod output;
 mod place;
 mod plan;
 pub mod raw;
 mod scope;
 mod units;
+mod verification;
 pub mod warnings;
 
 use crate::diagnostic::{Diagnostic, Diagnostics, codes_check};
-use crate::model::{Coefficient, Dimension, FoldedConstant, FreeConstant, Model};
+use crate::model::{AxisId, Coefficient, Dimension, FoldedConstant, FreeConstant, Model};
 use crate::source::{SourceFile, Span};
 use crate::syntax::tree::{ModelFile, Section};
+use crate::syntax::on_ample_stack;
+use bounds::{Budget, Extent};
 use scope::Scope;
 
 /// Checks a parsed file. The model is there only when nothing is wrong with it.
 pub fn check(file: &ModelFile, source: &SourceFile) -> (Option<Model>, Diagnostics) {
+    on_ample_stack(|| check_here(file, source))
+}
+
+fn check_here(file: &ModelFile, source: &SourceFile) -> (Option<Model>, Diagnostics) {
     let mut checker = Checker {
         file,
         source,
@@ -32,8 +42,11 @@ pub fn check(file: &ModelFile, source: &SourceFile) -> (Option<Model>, Diagnosti
         free: Vec::new(),
         folded: Vec::new(),
         coefficients: Vec::new(),
-        time_dimension: Dimension::one(),
-        normal_dimension: None,
+        free_extents: Vec::new(),
+        coefficient_extents: Vec::new(),
+        budget: Budget::default(),
+        time_dimension: None,
+        normal: None,
     };
     let model = checker.model();
     let mut diagnostics = checker.diagnostics;
@@ -62,20 +75,26 @@ struct Checker<'a> {
     free: Vec<FreeConstant>,
     folded: Vec<FoldedConstant>,
     coefficients: Vec<Coefficient>,
-    /// The unit of `t`, as the time section has it.
-    time_dimension: Dimension,
-    /// The unit of the axis that a condition is normal to, while it is read.
-    normal_dimension: Option<Dimension>,
+    /// How large the free constants and coefficients are.
+    free_extents: Vec<Extent>,
+    coefficient_extents: Vec<Extent>,
+    budget: Budget,
+    /// The unit of `t`, as the time section has it; nothing where a fault hides it.
+    time_dimension: Option<Dimension>,
+    /// The axis that a condition is normal to, and its unit, while the condition is read.
+    normal: Option<(AxisId, Option<Dimension>)>,
 }
 
 impl Checker<'_> {
     fn model(&mut self) -> Option<(Model, Vec<raw::RawCondition>)> {
         self.scope = Scope::declare(self.file, &mut self.diagnostics);
         self.require_sections();
+        self.constants();
         self.find_time_dimension();
         let axes = self.axes();
         let fields = self.fields();
-        self.resolve_all();
+        self.coefficients();
+        self.operators();
         let equations = self.equations();
         let initial = self.initial_conditions(&equations);
         let raw = self.face_conditions();
@@ -83,7 +102,9 @@ impl Checker<'_> {
         let time = self.time();
         let outputs = self.outputs(&axes, &fields);
         let verification = self.verification();
-        self.bounded_axes(&axes, &equations);
+        self.bounded_axes(&axes, &equations, &outputs);
+        self.rates_in_outputs(&equations, &outputs);
+        self.close_account();
         let header = self.file.header.as_ref();
         let model = Model {
             name: header.map_or_else(|| "model".to_owned(), |header| header.name.text.clone()),

@@ -48,8 +48,16 @@ impl Checker<'_> {
                     found.iter().any(|known| known.field == equation.field && known.derivative == derivative)
                 };
                 let second = equation.order == TimeOrder::Second;
-                if !has(0) || second && !has(1) {
-                    let what = if has(0) { format!("∂{}/∂t", name.text) } else { name.text.clone() };
+                let mut missing = Vec::new();
+                if !has(0) {
+                    missing.push(name.text.clone());
+                }
+                if second && !has(1) {
+                    missing.push(format!("∂{}/∂t", name.text));
+                }
+                if !missing.is_empty() {
+                    let what = missing.join(" and ");
+                    let lines: Vec<String> = missing.iter().map(|one| format!("{one} = …")).collect();
                     let why = if second {
                         " (its equation is second order in time: value and rate are needed)"
                     } else {
@@ -61,7 +69,10 @@ impl Checker<'_> {
                             name.span,
                             format!("the start of {what} is not given{why}"),
                         )
-                        .with_remedy(format!("add `at t = start: {what} = …` to the section `conditions`")),
+                        .with_remedy(format!(
+                            "add `at t = start: {}` to the section `conditions`",
+                            lines.join("; ")
+                        )),
                     );
                     sound = false;
                 }
@@ -122,7 +133,21 @@ impl Checker<'_> {
         for condition in &file.conditions {
             let faces = match &condition.place.kind {
                 PlaceKind::Start => continue,
-                PlaceKind::EveryEdge => self.every_edge(),
+                PlaceKind::EveryEdge => {
+                    let faces = self.every_edge();
+                    if faces.is_empty() && !file.axes.is_empty() {
+                        self.diagnostics.push(
+                            Diagnostic::error(
+                                codes_check::NOT_A_FACE,
+                                condition.place.span,
+                                "this grid has no edge: every axis is periodic",
+                            )
+                            .with_remedy("leave out the condition, or `periodic` at an axis"),
+                        );
+                        sound = false;
+                    }
+                    faces
+                }
                 PlaceKind::Face { axis, end, patch } => match self.face(axis, end, patch) {
                     Some(face) => vec![face],
                     None => {
@@ -215,10 +240,10 @@ impl Checker<'_> {
         face: Face,
         patch: Vec<model::Comparison>,
     ) -> Option<RawCondition> {
-        self.normal_dimension = self.scope.axes.get(face.axis.0).cloned();
+        self.normal = Some((face.axis, self.scope.axes.get(face.axis.0).cloned().flatten()));
         let left = self.formula(&condition.left, Place::Condition);
         let right = self.formula(&condition.right, Place::Condition);
-        self.normal_dimension = None;
+        self.normal = None;
         let (left, right) = (left?, right?);
         if let (Some(a), Some(b)) = (&left.dimension, &right.dimension)
             && a != b

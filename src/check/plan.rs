@@ -1,23 +1,13 @@
-//! Accuracy, time, outputs and verification.
+//! Accuracy and time.
 
 use super::Checker;
 use super::formula::Place;
-use super::scope::Typed;
 use crate::diagnostic::nearest::nearest;
 use crate::diagnostic::{Diagnostic, codes_check};
 use crate::exact::Rational;
-use crate::model::sign::Sign;
-use crate::model::{
-    self, Accuracy, AskedOrder, Dimension, Expression, FieldId, Method, Output, OutputKind, Step, TimePlan,
-    Verification,
-};
+use crate::model::{Accuracy, AskedOrder, Dimension, Expression, Method, Step, TimePlan};
 use crate::source::Span;
-use crate::syntax::tree::{
-    self, AccuracyKind, AccuracyLine, ClosureFamily, OrderOf, Section, TimeKind, VerificationKind,
-};
-
-/// Gauges that one line may make.
-const MOST_GAUGES: i64 = 10_000;
+use crate::syntax::tree::{self, AccuracyKind, AccuracyLine, ClosureFamily, OrderOf, Section, TimeKind};
 
 /// Methods that the literature names and that come later.
 const IMPLICIT: [&str; 6] = ["backward-euler", "crank-nicolson", "bdf2", "trapezoidal", "implicit", "sdirk"];
@@ -28,6 +18,14 @@ impl Checker<'_> {
         let mut order = None;
         for clause in clauses {
             match &clause.kind {
+                AccuracyKind::Order { axes, .. } if !axes.is_empty() => {
+                    self.not_yet(
+                        clause.span,
+                        "an operator's order along one axis",
+                        "state the order for the operator as a whole, or make an operator for each axis",
+                    );
+                }
+                AccuracyKind::Order { .. } if order.is_some() => self.twice(clause.span, "the order"),
                 AccuracyKind::Order { order: own, .. } => order = self.order_in_range(own, own.span),
                 other => self.refuse_closures(other, clause.span),
             }
@@ -91,11 +89,7 @@ impl Checker<'_> {
             };
             if axes.is_empty() {
                 if general.is_some() {
-                    self.diagnostics.push(Diagnostic::error(
-                        codes_check::STATED_TWICE,
-                        line.span,
-                        "the order is stated twice",
-                    ));
+                    self.twice(line.span, "the order");
                     sound = false;
                 }
                 general = Some(asked);
@@ -104,11 +98,7 @@ impl Checker<'_> {
                 let found = self.scope.axis(&axis.text);
                 match self.scope.expect(axis, "an axis", found, &mut self.diagnostics) {
                     Some(id) if per_axis[id.0].is_some() => {
-                        self.diagnostics.push(Diagnostic::error(
-                            codes_check::STATED_TWICE,
-                            axis.span,
-                            format!("the order along `{}` is stated twice", axis.text),
-                        ));
+                        self.twice(axis.span, &format!("the order along `{}`", axis.text));
                         sound = false;
                     }
                     Some(id) => per_axis[id.0] = Some(asked),
@@ -151,11 +141,7 @@ impl Checker<'_> {
                 TimeKind::Step(_) | TimeKind::StepOfLimit(_) => step.is_some(),
             };
             if twice {
-                self.diagnostics.push(Diagnostic::error(
-                    codes_check::STATED_TWICE,
-                    line.span,
-                    "this is stated twice",
-                ));
+                self.twice(line.span, "this");
                 sound = false;
                 continue;
             }
@@ -207,7 +193,7 @@ impl Checker<'_> {
             self.mismatch(end.span, &second, start.span, &first, "the ends of the time interval");
             return None;
         }
-        let dimension = self.time_dimension.clone();
+        let dimension = b.dimension.clone().or_else(|| a.dimension.clone()).unwrap_or_else(Dimension::one);
         if !dimension.is_one() && dimension != Dimension::time() {
             self.diagnostics.push(
                 Diagnostic::error(
@@ -219,10 +205,7 @@ impl Checker<'_> {
             );
             return None;
         }
-        if matches!(
-            self.sign(&b.value.clone().minus(a.value.clone())),
-            Sign::Negative | Sign::Zero | Sign::NonPositive
-        ) {
+        if !self.is_positive(&b.value.clone().minus(a.value.clone())) {
             self.diagnostics.push(Diagnostic::error(
                 codes_check::TIME_DIRECTION,
                 span,
@@ -263,16 +246,18 @@ impl Checker<'_> {
     }
 
     /// A positive time.
-    fn duration(&mut self, tree: &tree::Expression, what: &str) -> Option<Expression> {
+    pub(super) fn duration(&mut self, tree: &tree::Expression, what: &str) -> Option<Expression> {
         let typed = self.formula(tree, Place::Constant)?;
-        if let Some(own) = typed.dimension.as_ref().filter(|own| **own != self.time_dimension) {
+        if let Some((own, interval)) = typed.dimension.as_ref().zip(self.time_dimension.as_ref())
+            && own != interval
+        {
             self.diagnostics.push(
                 Diagnostic::error(codes_check::NOT_A_TIME, tree.span, format!("{what} is a time"))
-                    .with_text(format!("this is in {own}, and the time interval in {}", self.time_dimension)),
+                    .with_text(format!("this is in {own}, and the time interval in {interval}")),
             );
             return None;
         }
-        if !matches!(self.sign(&typed.value), Sign::Positive) {
+        if !self.is_positive(&typed.value) {
             self.diagnostics.push(Diagnostic::error(
                 codes_check::NOT_POSITIVE,
                 tree.span,
@@ -302,328 +287,4 @@ impl Checker<'_> {
         );
         None
     }
-
-    pub(super) fn outputs(
-        &mut self,
-        axes: &Option<Vec<model::Axis>>,
-        fields: &Option<Vec<model::Field>>,
-    ) -> Option<Vec<Output>> {
-        let file = self.file;
-        let mut sound = !self.has_faulty(Section::Output);
-        let mut outputs: Vec<Output> = Vec::new();
-        for line in &file.outputs {
-            let every = match &line.every {
-                Some(duration) => self.duration(duration, "the time between outputs").map(Some),
-                None => Some(None),
-            };
-            let made = self.output(line, axes, fields);
-            let (Some(every), Some(made)) = (every, made) else {
-                sound = false;
-                continue;
-            };
-            for mut output in made {
-                output.every = every.clone();
-                if let Some(twin) = outputs.iter().find(|known| known.name == output.name) {
-                    self.diagnostics.push(
-                        Diagnostic::error(
-                            codes_check::DUPLICATE_NAME,
-                            line.span,
-                            format!("the output `{}` is named twice", output.name),
-                        )
-                        .with_label(twin.span, "first here"),
-                    );
-                    sound = false;
-                    continue;
-                }
-                outputs.push(output);
-            }
-        }
-        sound.then_some(outputs)
-    }
-
-    fn output(
-        &mut self,
-        line: &tree::OutputLine,
-        axes: &Option<Vec<model::Axis>>,
-        fields: &Option<Vec<model::Field>>,
-    ) -> Option<Vec<Output>> {
-        let span = line.span;
-        match &line.kind {
-            tree::OutputKind::Field(name) => {
-                let found = self.scope.field(&name.text);
-                let id = self.scope.expect(name, "a field", found, &mut self.diagnostics)?;
-                let dimension = self.scope.fields.get(id.0).cloned();
-                let typed = Typed { value: Expression::Field(id), dimension };
-                Some(vec![finish(&name.text, typed, OutputKind::Snapshot, fields, span)])
-            }
-            tree::OutputKind::Derived { name, value } => {
-                let typed = self.formula(value, Place::Output)?;
-                self.output_name(name)?;
-                Some(vec![finish(&name.text, typed, OutputKind::Snapshot, fields, span)])
-            }
-            tree::OutputKind::Maximum { name, value } => {
-                let typed = self.formula(value, Place::Output)?;
-                self.output_name(name)?;
-                Some(vec![finish(&name.text, typed, OutputKind::Maximum, fields, span)])
-            }
-            tree::OutputKind::Integral { name, value, over } => {
-                let typed = self.formula(value, Place::Output)?;
-                for axis in over {
-                    let found = self.scope.axis(&axis.text);
-                    self.scope.expect(axis, "an axis", found, &mut self.diagnostics)?;
-                }
-                if over.len() != self.file.axes.len() {
-                    self.not_yet(
-                        span,
-                        "an integral over some of the axes only",
-                        "integrate over all axes of the model",
-                    );
-                    return None;
-                }
-                let volume = self.scope.axes.iter().fold(Dimension::one(), |total, axis| total.times(axis));
-                let typed =
-                    Typed { dimension: typed.dimension.map(|own| own.times(&volume)), value: typed.value };
-                let mut output = finish(&name.text, typed, OutputKind::Integral, &None, span);
-                output.unit = output.dimension.to_string();
-                Some(vec![output])
-            }
-            tree::OutputKind::Gauge { name, value, place } => {
-                let typed = self.formula(value, Place::Output)?;
-                self.output_name(name)?;
-                let places: Vec<(tree::Name, Vec<Expression>)> = place
-                    .iter()
-                    .map(|coordinate| {
-                        Some((
-                            coordinate.axis.clone(),
-                            vec![self.coordinate(&coordinate.axis, &coordinate.value)?],
-                        ))
-                    })
-                    .collect::<Option<_>>()?;
-                let place = self.place(places, axes, span)?;
-                Some(
-                    place
-                        .into_iter()
-                        .map(|place| {
-                            finish(&name.text, typed.clone(), OutputKind::Gauge { place }, fields, span)
-                        })
-                        .collect(),
-                )
-            }
-            tree::OutputKind::Gauges { name, value, place } => {
-                let typed = self.formula(value, Place::Output)?;
-                self.output_name(name)?;
-                let mut places = Vec::new();
-                for range in place {
-                    places.push((range.axis.clone(), self.range(range)?));
-                }
-                let all = self.place(places, axes, span)?;
-                let many = all.len();
-                Some(
-                    all.into_iter()
-                        .enumerate()
-                        .map(|(index, place)| {
-                            let label = if many == 1 {
-                                name.text.clone()
-                            } else {
-                                format!("{}_{}", name.text, index + 1)
-                            };
-                            finish(&label, typed.clone(), OutputKind::Gauge { place }, fields, span)
-                        })
-                        .collect(),
-                )
-            }
-        }
-    }
-
-    /// An output may be named as anything but a field, which has a folder of that name already.
-    fn output_name(&mut self, name: &tree::Name) -> Option<()> {
-        if self.scope.field(&name.text).is_none() {
-            return Some(());
-        }
-        self.diagnostics.push(
-            Diagnostic::error(
-                codes_check::DUPLICATE_NAME,
-                name.span,
-                format!("`{}` is a field already", name.text),
-            )
-            .with_remedy("give the output a name of its own"),
-        );
-        None
-    }
-
-    fn coordinate(&mut self, axis: &tree::Name, value: &tree::Expression) -> Option<Expression> {
-        let found = self.scope.axis(&axis.text);
-        let id = self.scope.expect(axis, "an axis", found, &mut self.diagnostics)?;
-        let typed = self.formula(value, Place::Constant)?;
-        let wanted = self.scope.axes.get(id.0).cloned()?;
-        if let Some(own) = typed.dimension.as_ref().filter(|own| **own != wanted) {
-            let own = own.clone();
-            self.mismatch(value.span, &own, axis.span, &wanted, "a place and its axis");
-            return None;
-        }
-        let tree::Extent::Interval { low, high, .. } = &self.file.axes[id.0].extent else { return None };
-        let quiet = self.diagnostics.clone();
-        let (low, high) = (self.formula(low, Place::Constant), self.formula(high, Place::Constant));
-        self.diagnostics = quiet;
-        let (low, high) = (low?, high?);
-        let below = self.sign(&typed.value.clone().minus(low.value)) == Sign::Negative;
-        let above = self.sign(&high.value.minus(typed.value.clone())) == Sign::Negative;
-        if below || above {
-            self.diagnostics.push(
-                Diagnostic::error(
-                    codes_check::OUTSIDE,
-                    value.span,
-                    format!("this lies outside the axis `{}`", axis.text),
-                )
-                .with_label(self.file.axes[id.0].span, "the axis"),
-            );
-            return None;
-        }
-        Some(typed.value)
-    }
-
-    /// `A to B by C`: A, A + C, … up to B.
-    fn range(&mut self, range: &tree::GaugeRange) -> Option<Vec<Expression>> {
-        let first = self.coordinate(&range.axis, &range.first)?;
-        let Some((last, by)) = &range.to else { return Some(vec![first]) };
-        let (last, step) = (self.coordinate(&range.axis, last)?, self.formula(by, Place::Constant)?.value);
-        let (Expression::Number(a), Expression::Number(b), Expression::Number(c)) = (&first, &last, &step)
-        else {
-            self.not_yet(
-                by.span,
-                "a range of gauges that is not given by plain numbers",
-                "give the places as numbers with units",
-            );
-            return None;
-        };
-        let count = (b - a).checked_div(c).map(|count| count.floor()).and_then(|count| count.to_i64());
-        let Some(count) = count.filter(|count| (0..MOST_GAUGES).contains(count)) else {
-            self.diagnostics.push(
-                Diagnostic::error(
-                    codes_check::NOT_POSITIVE,
-                    by.span,
-                    "this distance does not lead from the first place to the last",
-                )
-                .with_text(format!("at most {MOST_GAUGES} gauges in a line")),
-            );
-            return None;
-        };
-        Some((0..=count).map(|index| Expression::Number(a + &(c * &Rational::from(index)))).collect())
-    }
-
-    /// All combinations of coordinates, one for each axis.
-    fn place(
-        &mut self,
-        given: Vec<(tree::Name, Vec<Expression>)>,
-        axes: &Option<Vec<model::Axis>>,
-        span: Span,
-    ) -> Option<Vec<Vec<Expression>>> {
-        let mut places: Vec<Vec<Expression>> = vec![Vec::new()];
-        for axis in axes.as_ref()? {
-            let mut of_axis = given.iter().filter(|(name, _)| name.text == axis.name);
-            let (Some((_, values)), None) = (of_axis.next(), of_axis.next()) else {
-                self.diagnostics.push(
-                    Diagnostic::error(
-                        codes_check::PLACE_INCOMPLETE,
-                        span,
-                        format!("a place needs one coordinate along `{}`", axis.name),
-                    )
-                    .with_remedy(format!("write `at {} = …`, one for each axis", axis.name)),
-                );
-                return None;
-            };
-            places = places
-                .into_iter()
-                .flat_map(|place| {
-                    values
-                        .iter()
-                        .map(move |value| place.iter().cloned().chain([value.clone()]).collect::<Vec<_>>())
-                })
-                .collect();
-            if places.len() as i64 > MOST_GAUGES {
-                self.diagnostics.push(Diagnostic::error(
-                    codes_check::NOT_POSITIVE,
-                    span,
-                    format!("more than {MOST_GAUGES} gauges in a line"),
-                ));
-                return None;
-            }
-        }
-        Some(places)
-    }
-
-    /// The outer nothing is a fault, the inner one an absent section.
-    pub(super) fn verification(&mut self) -> Option<Option<Verification>> {
-        let file = self.file;
-        if file.verification.is_empty() {
-            return (!self.has_faulty(Section::Verification)).then_some(None);
-        }
-        let mut result = Verification { solutions: Vec::new(), manufactured: false, grids: Vec::new() };
-        let mut sound = !self.has_faulty(Section::Verification);
-        for line in &file.verification {
-            match &line.kind {
-                VerificationKind::Exact { field, value }
-                | VerificationKind::Manufactured { field, value } => {
-                    result.manufactured |= matches!(line.kind, VerificationKind::Manufactured { .. });
-                    match self.solution(field, value) {
-                        Some((id, _)) if result.solutions.iter().any(|(known, _)| *known == id) => {
-                            self.diagnostics.push(Diagnostic::error(
-                                codes_check::STATED_TWICE,
-                                line.span,
-                                "this solution is stated twice",
-                            ));
-                            sound = false;
-                        }
-                        Some(solution) => result.solutions.push(solution),
-                        None => sound = false,
-                    }
-                }
-                VerificationKind::Grids(grids) => {
-                    result.grids = grids.iter().map(|grid| grid.value as usize).collect();
-                    if !result.grids.is_sorted_by(|a, b| a < b) {
-                        self.diagnostics.push(Diagnostic::error(
-                            codes_check::GRIDS_ORDER,
-                            line.span,
-                            "grids grow from one to the next",
-                        ));
-                        sound = false;
-                    }
-                }
-            }
-        }
-        sound.then_some(Some(result))
-    }
-
-    fn solution(&mut self, field: &tree::Name, value: &tree::Expression) -> Option<(FieldId, Expression)> {
-        let found = self.scope.field(&field.text);
-        let id = self.scope.expect(field, "a field", found, &mut self.diagnostics)?;
-        let typed = self.formula(value, Place::Data)?;
-        let wanted = self.scope.fields.get(id.0).cloned()?;
-        if let Some(own) = typed.dimension.as_ref().filter(|own| **own != wanted) {
-            let own = own.clone();
-            self.mismatch(value.span, &own, field.span, &wanted, "a solution and its field");
-            return None;
-        }
-        Some((id, typed.value))
-    }
-}
-
-/// An output in the unit of a field of the same dimension, or in SI.
-fn finish(
-    name: &str,
-    typed: Typed,
-    kind: OutputKind,
-    fields: &Option<Vec<model::Field>>,
-    span: Span,
-) -> Output {
-    let dimension = typed.dimension.unwrap_or_else(Dimension::one);
-    let like = match Checker::plain_field(&typed.value) {
-        Some(id) => fields.as_ref().and_then(|fields| fields.get(id.0)),
-        None => fields.iter().flatten().find(|field| field.dimension == dimension),
-    };
-    let (unit, scale) = match like {
-        Some(field) => (field.unit.clone(), field.scale.clone()),
-        None => (dimension.to_string(), Expression::one()),
-    };
-    Output { name: name.to_owned(), dimension, unit, scale, value: typed.value, kind, every: None, span }
 }

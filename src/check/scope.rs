@@ -3,7 +3,7 @@
 use std::collections::HashMap;
 
 use crate::diagnostic::nearest::nearest;
-use crate::diagnostic::{Diagnostic, Diagnostics, codes_check};
+use crate::diagnostic::{Diagnostic, Diagnostics, codes, codes_check};
 use crate::model::{AxisId, Dimension, Expression, FieldId};
 use crate::source::Span;
 use crate::syntax::names::reserved;
@@ -51,11 +51,12 @@ impl Typed {
 #[derive(Debug, Default)]
 pub(super) struct Scope {
     kinds: HashMap<String, (Kind, Span)>,
-    pub(super) axes: Vec<Dimension>,
-    pub(super) fields: Vec<Dimension>,
-    /// One for each constant and coefficient, once resolved.
-    pub(super) constants: Vec<Option<Typed>>,
-    pub(super) coefficients: Vec<Option<Typed>>,
+    /// Nothing where a fault hides it: then it agrees with any.
+    pub(super) axes: Vec<Option<Dimension>>,
+    pub(super) fields: Vec<Option<Dimension>>,
+    /// One for each constant and coefficient, once resolved; within, nothing where it has a fault.
+    pub(super) constants: Vec<Option<Option<Typed>>>,
+    pub(super) coefficients: Vec<Option<Option<Typed>>>,
 }
 
 impl Scope {
@@ -83,6 +84,7 @@ impl Scope {
             scope.add(name, kind, diagnostics);
         }
         scope.refuse_twins(file, diagnostics);
+        scope.refuse_shadows(file, diagnostics);
         scope
     }
 
@@ -90,6 +92,13 @@ impl Scope {
         if reserved(&name.text).is_some() {
             // The parser has said so.
             return;
+        }
+        if name.text == "n" && matches!(kind, Kind::Axis(_)) {
+            diagnostics.push(
+                Diagnostic::error(codes::RESERVED_NAME, name.span, "`n` cannot name an axis")
+                    .with_text("∂/∂n is the derivative along the outward normal")
+                    .with_remedy("give the axis another name"),
+            );
         }
         if let Some((known, first)) = self.kinds.get(&name.text) {
             if *known != Kind::Faulty && kind != Kind::Faulty {
@@ -125,6 +134,29 @@ impl Scope {
                     .with_text("too easily mistaken for the other")
                     .with_label(twin.name.span, "the other")
                     .with_remedy("rename one of them"),
+                );
+            }
+        }
+    }
+
+    /// Parameters of operators are names like others: each means one thing.
+    fn refuse_shadows(&self, file: &ModelFile, diagnostics: &mut Diagnostics) {
+        for operator in &file.operators {
+            for (index, parameter) in operator.parameters.iter().enumerate() {
+                let twin = operator.parameters[..index].iter().find(|other| other.text == parameter.text);
+                let other = twin
+                    .map(|twin| (twin.span, "another parameter".to_owned()))
+                    .or_else(|| self.kinds.get(&parameter.text).map(|(kind, span)| (*span, kind.word().to_owned())));
+                let Some((first, what)) = other else { continue };
+                diagnostics.push(
+                    Diagnostic::error(
+                        codes_check::DUPLICATE_NAME,
+                        parameter.span,
+                        format!("`{}` is declared twice", parameter.text),
+                    )
+                    .with_text("as a parameter here")
+                    .with_label(first, format!("first declared here, as {what}"))
+                    .with_remedy("give the parameter a name of its own"),
                 );
             }
         }

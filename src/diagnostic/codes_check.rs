@@ -31,6 +31,15 @@ code_table! {
     DIVISION_BY_ZERO = "E0218", "a division by zero",
         "What is below the line is exactly zero.",
         wrong "k = 1 / 0", right "k = 1";
+    NO_VALUE = "E0219", "a root, power or logarithm that has no value",
+        "Roots and broken powers are taken of numbers that are not negative, logarithms of positive ones. Where a constant shows that there is no value, the model is refused; what depends on place or state is looked at when it runs.",
+        wrong "a = sqrt(1 - 2)", right "a = sqrt(2 - 1)";
+    NUMBER_RANGE = "E0220", "a number that is too large, too small or too long",
+        "Constants are exact, and programs compute with doubles, which hold numbers from about 1e-300 to 1e300. An exact number may have some thousand digits on the way, no more.",
+        wrong "a = 1e200\nb = a * a", right "a = 1e20\nb = a * a";
+    TOO_MUCH = "E0221", "formulas that are too large when written out",
+        "Names stand for formulas, which are made of names. Written out, the formulas of a model may have a million parts together and be six hundred levels deep; a few lines that each use the line above twice would otherwise ask for more than any computer has.",
+        wrong "a(x) = x + x\nb(x) = a + a\nc(x) = b + b   # and so on, thirty times", right "a(x) = 2 * x\nb(x) = 2 * a";
     UNKNOWN_UNIT = "E0301", "an unknown unit",
         "Units are those of the SI, with prefixes, and min, h, d, °. A unit has no space in it; products are written with `·`, and after `/` stands one factor or a bracket.",
         wrong "3 furlong", right "603.5 m";
@@ -107,8 +116,11 @@ code_table! {
         "A place has one coordinate along each axis.",
         wrong "gauge a: T at x = 0.5 m   # axes x and y", right "gauge a: T at x = 0.5 m, y = 0.2 m";
     GRIDS_ORDER = "E0803", "grids that do not grow",
-        "The node counts of a verification grow from one to the next.",
+        "A verification has two grids or more, and their node counts grow from one to the next: an order is seen in how the error falls.",
         wrong "grids 33, 17", right "grids 17, 33";
+    VERIFICATION_INCOMPLETE = "E0804", "a verification that cannot be carried out",
+        "A verification states grids, and what the results are compared with: exact solutions of the model as it is, or manufactured solutions, one for every field, from which sources and data are derived.",
+        wrong "verification\n  grids 17, 33, 65", right "verification\n  exact T = 281 K\n  grids 17, 33, 65";
     NOT_AVAILABLE_YET = "E0901", "understood, but not available yet",
         "The language has this, and the compiler has not got it yet. The message names what and what to do instead.",
         wrong "method bdf2", right "method rk4";
