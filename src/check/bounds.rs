@@ -10,7 +10,7 @@ use crate::model::{CoefficientId, ConstantId, Expression};
 use crate::source::Span;
 
 /// Nodes that all formulas of a model may have together, names and operators written out.
-const MOST_NODES: usize = 1_000_000;
+const MOST_NODES: usize = 200_000;
 
 /// How deep conversion goes: brackets within named operators within brackets.
 const DEEPEST: usize = 600;
@@ -63,6 +63,10 @@ impl Checker<'_> {
 
     /// One step down into a formula; each is followed by [`Checker::ascend`].
     pub(super) fn descend(&mut self, span: Span) -> Option<()> {
+        // Once the account is overdrawn, nothing more is worked out.
+        if self.budget.exceeded.is_some() {
+            return None;
+        }
         self.spend(1, span)?;
         if self.budget.depth >= DEEPEST {
             self.budget.exceeded.get_or_insert(span);
@@ -113,7 +117,9 @@ impl Checker<'_> {
                     "the formulas of this model are too large when the names in them are written out",
                 )
                 .with_text(format!("here more than {MOST_NODES} parts are reached, or {DEEPEST} levels"))
-                .with_remedy("use fewer names that are made of names, or make them a field or a free constant"),
+                .with_remedy(
+                    "use fewer names that are made of names, or make them a field or a free constant",
+                ),
             );
         }
     }

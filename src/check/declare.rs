@@ -42,11 +42,14 @@ impl Checker<'_> {
             && !self.has_faulty(Section::Axes)
         {
             let span = file.axes.get(3).map_or_else(|| self.section_span(Section::Axes), |axis| axis.span);
-            self.diagnostics.push(Diagnostic::error(
-                codes_check::AXES_COUNT,
-                span,
-                format!("a model has 1 to 3 axes, this one has {}", file.axes.len()),
-            ));
+            self.diagnostics.push(
+                Diagnostic::error(
+                    codes_check::AXES_COUNT,
+                    span,
+                    format!("a model has 1 to 3 axes, this one has {}", file.axes.len()),
+                )
+                .with_text("expected one, two or three axes"),
+            );
         }
         let mut axes = Vec::new();
         for axis in &file.axes {
@@ -56,11 +59,14 @@ impl Checker<'_> {
         let total = axes.iter().fold(1u64, |total, axis| total.saturating_mul(axis.nodes as u64));
         if total > MOST_NODES {
             let span = self.section_span(Section::Axes);
-            self.diagnostics.push(Diagnostic::error(
-                codes_check::GRID_SIZE,
-                span,
-                format!("the grid has {total} nodes; at most {MOST_NODES} are possible"),
-            ));
+            self.diagnostics.push(
+                Diagnostic::error(
+                    codes_check::GRID_SIZE,
+                    span,
+                    format!("the grid has {total} nodes; at most {MOST_NODES} are possible"),
+                )
+                .with_remedy("use fewer nodes along the axes"),
+            );
             return None;
         }
         (1..=3).contains(&axes.len()).then_some(axes)
@@ -107,8 +113,7 @@ impl Checker<'_> {
         {
             self.mismatch(high.span, second, low.span, first, "the ends of an axis");
             sound = false;
-        }
-        if !self.is_positive(&b.value.clone().minus(a.value.clone())) {
+        } else if !self.is_positive(&b.value.clone().minus(a.value.clone())) {
             self.diagnostics.push(
                 Diagnostic::error(
                     codes_check::AXIS_DIRECTION,
@@ -296,11 +301,14 @@ impl Checker<'_> {
             }
         }
         if matches!(self.sign(&high.value.clone().minus(low.value.clone())), Sign::Negative) {
-            self.diagnostics.push(Diagnostic::error(
-                codes_check::BOUNDS_ORDER,
-                bounds.span,
-                "the lower bound lies above the upper one",
-            ));
+            self.diagnostics.push(
+                Diagnostic::error(
+                    codes_check::BOUNDS_ORDER,
+                    bounds.span,
+                    "the lower bound lies above the upper one",
+                )
+                .with_remedy("exchange the two"),
+            );
             return None;
         }
         Some((low.value, high.value))
@@ -336,7 +344,8 @@ impl Checker<'_> {
         let file = self.file;
         for (index, operator) in file.operators.iter().enumerate() {
             let any = Typed { value: Expression::Field(model::FieldId(0)), dimension: None };
-            let parameters = operator.parameters.iter().map(|name| (name.text.clone(), any.clone())).collect();
+            let parameters =
+                operator.parameters.iter().map(|name| (name.text.clone(), any.clone())).collect();
             let order = self.operator_order(&operator.accuracy);
             let Some(()) = self.enter(Kind::Operator(index), operator.name.span) else { continue };
             self.convert(&operator.value, Place::Operator, &Bound { parameters, order });
@@ -346,6 +355,9 @@ impl Checker<'_> {
 
     /// Begins to resolve something; refused where it is being resolved already.
     pub(super) fn enter(&mut self, kind: Kind, span: Span) -> Option<()> {
+        if self.circular.contains(&kind) {
+            return None;
+        }
         if let Some(place) = self.resolving.iter().position(|known| *known == kind) {
             let names: Vec<&str> =
                 self.resolving[place..].iter().chain([&kind]).map(|kind| self.declared_name(*kind)).collect();
@@ -355,6 +367,7 @@ impl Checker<'_> {
                     .with_text(format!("the circle is {way}"))
                     .with_remedy("break the circle: one of them must be given without the others"),
             );
+            self.circular.extend_from_slice(&self.resolving[place..]);
             return None;
         }
         self.resolving.push(kind);
@@ -499,7 +512,11 @@ impl Checker<'_> {
             Some(unit) => Some(self.unit(unit)?.dimension),
             None => None,
         };
-        for argument in &coefficient.arguments {
+        for (index, argument) in coefficient.arguments.iter().enumerate() {
+            if coefficient.arguments[..index].iter().any(|other| other.text == argument.text) {
+                self.twice(argument.span, "this argument");
+                return None;
+            }
             let known = argument.text == "t"
                 || matches!(self.scope.kind(&argument.text), Some(Kind::Axis(_) | Kind::Field(_)));
             self.scope.expect(

@@ -33,7 +33,7 @@ impl Checker<'_> {
         if in_time > 0 {
             return self.rate(derivative, in_time, span, place, bound);
         }
-        if derivative.by.iter().any(|by| by.name.text == "n") {
+        if derivative.by.iter().any(|by| by.name.text == "n" && self.scope.axis("n").is_none()) {
             return self.normal(derivative, span, place, bound);
         }
         self.allow_spatial(span, place)?;
@@ -114,11 +114,15 @@ impl Checker<'_> {
             1 => Expression::Rate(field),
             2 if matches!(place, Place::Equation | Place::Operator) => Expression::SecondRate(field),
             _ => {
-                self.diagnostics.push(Diagnostic::error(
-                    codes_check::TIME_ORDER,
-                    span,
-                    "equations are of first or second order in time, conditions and outputs of first",
-                ));
+                self.diagnostics.push(
+                    Diagnostic::error(
+                        codes_check::TIME_ORDER,
+                        span,
+                        "equations are of first or second order in time, conditions and outputs of first",
+                    )
+                    .with_text(format!("this is of order {in_time}"))
+                    .with_remedy("make the lower rate a field of its own, with an equation of its own"),
+                );
                 return None;
             }
         };
@@ -152,7 +156,8 @@ impl Checker<'_> {
         let (axis, length) = self.normal.clone().unzip();
         // A factor that varies along the normal would have to be differentiated as well.
         let still = |found: &Dependence| {
-            !found.noise && axis.map_or(found.coordinates.is_empty(), |axis| !found.coordinates.contains(&axis))
+            !found.noise
+                && axis.map_or(found.coordinates.is_empty(), |axis| !found.coordinates.contains(&axis))
         };
         let Some((factor, field)) = self.split_field(&typed.value, &still) else {
             self.diagnostics.push(
@@ -167,7 +172,10 @@ impl Checker<'_> {
         };
         Some(Typed {
             value: factor.times(Expression::Normal(Box::new(Expression::Field(field)))),
-            dimension: typed.dimension.zip(length.flatten()).map(|(dimension, length)| dimension.over(&length)),
+            dimension: typed
+                .dimension
+                .zip(length.flatten())
+                .map(|(dimension, length)| dimension.over(&length)),
         })
     }
 
@@ -204,7 +212,12 @@ impl Checker<'_> {
     }
 
     /// ∇·(flux): terms with one gradient each.
-    pub(super) fn divergence(&mut self, flux: &tree::Expression, place: Place, bound: &Bound) -> Option<Typed> {
+    pub(super) fn divergence(
+        &mut self,
+        flux: &tree::Expression,
+        place: Place,
+        bound: &Bound,
+    ) -> Option<Typed> {
         self.same_lengths(flux.span)?;
         match &flux.kind {
             ExpressionKind::Sum(terms) => {

@@ -107,21 +107,28 @@ impl Checker<'_> {
             return None;
         };
         if coefficient.is_zero() {
-            self.diagnostics.push(Diagnostic::error(
-                codes_check::NOT_LINEAR_IN_RATE,
-                one.span,
-                format!("the time derivative of `{name}` cancels out"),
-            ));
+            self.diagnostics.push(
+                Diagnostic::error(
+                    codes_check::NOT_LINEAR_IN_RATE,
+                    one.span,
+                    format!("the time derivative of `{name}` cancels out"),
+                )
+                .with_text("what multiplies it adds up to zero")
+                .with_remedy("check the signs of its terms"),
+            );
             return None;
         }
         if coefficient.any(&|node| {
             matches!(node, Expression::Derivative(_) | Expression::Rate(_) | Expression::SecondRate(_))
         }) {
-            self.diagnostics.push(Diagnostic::error(
-                codes_check::NOT_LINEAR_IN_RATE,
-                one.span,
-                format!("what multiplies the time derivative of `{name}` holds another derivative"),
-            ));
+            self.diagnostics.push(
+                Diagnostic::error(
+                    codes_check::NOT_LINEAR_IN_RATE,
+                    one.span,
+                    format!("what multiplies the time derivative of `{name}` holds another derivative"),
+                )
+                .with_remedy("multiply the time derivative by constants, coefficients and fields only"),
+            );
             return None;
         }
         let foreign = rates(&rest).into_iter().find(|other| !second.contains(other));

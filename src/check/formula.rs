@@ -37,7 +37,7 @@ impl Place {
             Place::Output => "no rate of change of a field that is first order in time can stand here",
             Place::Equation => "no normal derivative can stand here",
             Place::Condition => "only the field's value, ∂/∂n and ∂/∂t can stand in a condition",
-            Place::Operator => "not in an operator either",
+            Place::Operator => "only what can stand in equations, outputs or conditions can stand here",
         }
     }
 }
@@ -258,11 +258,14 @@ impl Checker<'_> {
         for (factor, typed) in factors.iter().zip(converted) {
             let typed = typed?;
             if factor.operation == Operation::Over && typed.value.is_zero() {
-                self.diagnostics.push(Diagnostic::error(
-                    codes_check::DIVISION_BY_ZERO,
-                    factor.value.span,
-                    "this divides by zero",
-                ));
+                self.diagnostics.push(
+                    Diagnostic::error(
+                        codes_check::DIVISION_BY_ZERO,
+                        factor.value.span,
+                        "this divides by zero",
+                    )
+                    .with_text("this is exactly zero"),
+                );
                 return None;
             }
             total = Some(match total {
@@ -312,11 +315,10 @@ impl Checker<'_> {
                 return None;
             }
             if typed.value.is_zero() && exact.is_negative() {
-                self.diagnostics.push(Diagnostic::error(
-                    codes_check::DIVISION_BY_ZERO,
-                    base.span,
-                    "a negative power of zero",
-                ));
+                self.diagnostics.push(
+                    Diagnostic::error(codes_check::DIVISION_BY_ZERO, base.span, "a negative power of zero")
+                        .with_text("this is exactly zero"),
+                );
                 return None;
             }
             if !exact.is_integer() {
@@ -410,7 +412,9 @@ impl Checker<'_> {
         let is_constant = !value.any(&|node| !is_part_of_constant(node));
         let sign = if is_constant { self.sign(value) } else { model::sign::Sign::Unknown };
         let (outside, expected) = match domain {
-            Domain::Positive => (matches!(sign, model::sign::Sign::Negative | model::sign::Sign::Zero), "greater than zero"),
+            Domain::Positive => {
+                (matches!(sign, model::sign::Sign::Negative | model::sign::Sign::Zero), "greater than zero")
+            }
             Domain::NotNegative => (sign == model::sign::Sign::Negative, "not less than zero"),
         };
         if !outside {

@@ -22,8 +22,8 @@ pub mod warnings;
 use crate::diagnostic::{Diagnostic, Diagnostics, codes_check};
 use crate::model::{AxisId, Coefficient, Dimension, FoldedConstant, FreeConstant, Model};
 use crate::source::{SourceFile, Span};
-use crate::syntax::tree::{ModelFile, Section};
 use crate::syntax::on_ample_stack;
+use crate::syntax::tree::{ModelFile, Section};
 use bounds::{Budget, Extent};
 use scope::Scope;
 
@@ -33,12 +33,17 @@ pub fn check(file: &ModelFile, source: &SourceFile) -> (Option<Model>, Diagnosti
 }
 
 fn check_here(file: &ModelFile, source: &SourceFile) -> (Option<Model>, Diagnostics) {
+    if file.header.is_none() && file.sections.is_empty() && file.faulty.is_empty() {
+        // Nothing could be read, and the parser has said so.
+        return (None, Diagnostics::new());
+    }
     let mut checker = Checker {
         file,
         source,
         diagnostics: Diagnostics::new(),
         scope: Scope::default(),
         resolving: Vec::new(),
+        circular: Vec::new(),
         free: Vec::new(),
         folded: Vec::new(),
         coefficients: Vec::new(),
@@ -72,6 +77,8 @@ struct Checker<'a> {
     scope: Scope,
     /// Constants and coefficients that are being resolved, for cycles.
     resolving: Vec<scope::Kind>,
+    /// What was found to be defined by itself; said once.
+    circular: Vec<scope::Kind>,
     free: Vec<FreeConstant>,
     folded: Vec<FoldedConstant>,
     coefficients: Vec<Coefficient>,

@@ -74,6 +74,18 @@ impl Checker<'_> {
             }
             tree::OutputKind::Maximum { name, value } => {
                 let typed = self.formula(value, Place::Output)?;
+                if let Some(every) = &line.every {
+                    self.diagnostics.push(
+                        Diagnostic::error(
+                            codes_check::MISPLACED,
+                            every.span,
+                            "a maximum over time is written once, at the end",
+                        )
+                        .with_text("`every` cannot stand here")
+                        .with_remedy("leave it out"),
+                    );
+                    return None;
+                }
                 self.output_name(name)?;
                 Some(vec![finish(&name.text, typed, OutputKind::Maximum, fields, span)])
             }

@@ -88,7 +88,8 @@ impl Checker<'_> {
                             "`{}` is first order in time: its rate at the start follows from its equation",
                             name.text
                         ),
-                    ));
+                    )
+                    .with_remedy("leave it out"));
                     sound = false;
                 }
             }

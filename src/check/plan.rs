@@ -206,11 +206,14 @@ impl Checker<'_> {
             return None;
         }
         if !self.is_positive(&b.value.clone().minus(a.value.clone())) {
-            self.diagnostics.push(Diagnostic::error(
-                codes_check::TIME_DIRECTION,
-                span,
-                "the end of the time interval is not after its start",
-            ));
+            self.diagnostics.push(
+                Diagnostic::error(
+                    codes_check::TIME_DIRECTION,
+                    span,
+                    "the end of the time interval is not after its start",
+                )
+                .with_text("expected `START to END`, the earlier time first"),
+            );
             return None;
         }
         Some((a.value, b.value))
@@ -258,11 +261,14 @@ impl Checker<'_> {
             return None;
         }
         if !self.is_positive(&typed.value) {
-            self.diagnostics.push(Diagnostic::error(
-                codes_check::NOT_POSITIVE,
-                tree.span,
-                format!("{what} must be greater than zero"),
-            ));
+            self.diagnostics.push(
+                Diagnostic::error(
+                    codes_check::NOT_POSITIVE,
+                    tree.span,
+                    format!("{what} must be greater than zero"),
+                )
+                .with_text("expected a positive duration"),
+            );
             return None;
         }
         Some(typed.value)

@@ -144,9 +144,9 @@ impl Scope {
         for operator in &file.operators {
             for (index, parameter) in operator.parameters.iter().enumerate() {
                 let twin = operator.parameters[..index].iter().find(|other| other.text == parameter.text);
-                let other = twin
-                    .map(|twin| (twin.span, "another parameter".to_owned()))
-                    .or_else(|| self.kinds.get(&parameter.text).map(|(kind, span)| (*span, kind.word().to_owned())));
+                let other = twin.map(|twin| (twin.span, "another parameter".to_owned())).or_else(|| {
+                    self.kinds.get(&parameter.text).map(|(kind, span)| (*span, kind.word().to_owned()))
+                });
                 let Some((first, what)) = other else { continue };
                 diagnostics.push(
                     Diagnostic::error(

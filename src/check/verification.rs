@@ -61,7 +61,9 @@ impl Checker<'_> {
                 span,
                 "these grids cannot show an order of convergence",
             )
-            .with_text(format!("expected two or more counts from 2 to {MOST_NODES}, each larger than the last"))
+            .with_text(format!(
+                "expected two or more counts from 2 to {MOST_NODES}, each larger than the last"
+            ))
             .with_remedy("write `grids 17, 33, 65`, say"),
         );
         None
@@ -70,7 +72,8 @@ impl Checker<'_> {
     /// A verification has grids and something to compare with: exact solutions, or a manufactured one of every field.
     fn complete(&mut self, result: &Verification) -> Option<()> {
         let file = self.file;
-        let kinds = |wanted: fn(&VerificationKind) -> bool| file.verification.iter().any(|line| wanted(&line.kind));
+        let kinds =
+            |wanted: fn(&VerificationKind) -> bool| file.verification.iter().any(|line| wanted(&line.kind));
         let exact = kinds(|kind| matches!(kind, VerificationKind::Exact { .. }));
         let lacking: Vec<String> = (file.fields.iter().enumerate())
             .filter(|(index, _)| !result.solutions.iter().any(|(id, _)| id.0 == *index))
@@ -86,7 +89,10 @@ impl Checker<'_> {
                 "write all lines with `manufactured`: sources are then derived for every field".to_owned(),
             )
         } else if result.manufactured && !lacking.is_empty() {
-            ("a manufactured solution needs a formula for every field", format!("add {}", lacking.join(" and ")))
+            (
+                "a manufactured solution needs a formula for every field",
+                format!("add {}", lacking.join(" and ")),
+            )
         } else {
             return Some(());
         };

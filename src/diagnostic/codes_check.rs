@@ -38,7 +38,7 @@ code_table! {
         "Constants are exact, and programs compute with doubles, which hold numbers from about 1e-300 to 1e300. An exact number may have some thousand digits on the way, no more.",
         wrong "a = 1e200\nb = a * a", right "a = 1e20\nb = a * a";
     TOO_MUCH = "E0221", "formulas that are too large when written out",
-        "Names stand for formulas, which are made of names. Written out, the formulas of a model may have a million parts together and be six hundred levels deep; a few lines that each use the line above twice would otherwise ask for more than any computer has.",
+        "Names stand for formulas, which are made of names. Written out, the formulas of a model may have two hundred thousand parts together and be six hundred levels deep; a few lines that each use the line above twice would otherwise ask for more than any computer has.",
         wrong "a(x) = x + x\nb(x) = a + a\nc(x) = b + b   # and so on, thirty times", right "a(x) = 2 * x\nb(x) = 2 * a";
     UNKNOWN_UNIT = "E0301", "an unknown unit",
         "Units are those of the SI, with prefixes, and min, h, d, °. A unit has no space in it; products are written with `·`, and after `/` stands one factor or a bracket.",

@@ -2,6 +2,7 @@
 
 mod beyond;
 mod c_driver;
+mod check;
 mod cli;
 mod closed;
 mod convergence;
