@@ -34,6 +34,7 @@
 pub mod build;
 pub mod lower;
 pub mod operator;
+pub mod plan;
 pub mod validate;
 
 pub use build::Builder;
