@@ -1,8 +1,9 @@
 //! Axes, constants, coefficients and fields.
 
 use super::Checker;
-use super::formula::Place;
+use super::formula::{Bound, Place};
 use super::scope::{Kind, Typed};
+use super::size::{Size, size};
 use super::units::{self, Scale};
 use crate::diagnostic::{Diagnostic, codes_check};
 use crate::model::sign::Sign;
@@ -25,9 +26,7 @@ impl Checker<'_> {
                     [end, start].into_iter().find_map(|side| self.formula(side, Place::Constant)?.dimension);
                 // Faults are reported when the section itself is read.
                 self.diagnostics = quiet;
-                if let Some(dimension) = found {
-                    self.time_dimension = dimension;
-                }
+                self.time_dimension = self.time_dimension.take().or(found);
             }
         }
     }
@@ -44,7 +43,8 @@ impl Checker<'_> {
                 codes_check::AXES_COUNT,
                 span,
                 format!("a model has 1 to 3 axes, this one has {}", file.axes.len()),
-            ));
+            )
+            .with_text("expected 1 to 3 axes in all"));
         }
         let mut axes = Vec::new();
         for axis in &file.axes {
@@ -58,7 +58,8 @@ impl Checker<'_> {
                 codes_check::GRID_SIZE,
                 span,
                 format!("the grid has {total} nodes; at most {MOST_NODES} are possible"),
-            ));
+            )
+            .with_remedy("take fewer nodes along each axis"));
             return None;
         }
         (1..=3).contains(&axes.len()).then_some(axes)
@@ -67,7 +68,15 @@ impl Checker<'_> {
     fn axis(&mut self, axis: &tree::Axis) -> Option<model::Axis> {
         let mut periodic = false;
         let mut sound = true;
-        for property in &axis.properties {
+        for (index, property) in axis.properties.iter().enumerate() {
+            let same = |known: &&tree::AxisProperty| {
+                std::mem::discriminant(&known.kind) == std::mem::discriminant(&property.kind)
+            };
+            if let Some(first) = axis.properties[..index].iter().find(same) {
+                self.stated_twice(property.span, first.span, "this property of the axis");
+                sound = false;
+                continue;
+            }
             match &property.kind {
                 AxisPropertyKind::Periodic => periodic = true,
                 AxisPropertyKind::Graded(_) => {
@@ -83,7 +92,7 @@ impl Checker<'_> {
         let (low, high, count) = match &axis.extent {
             Extent::Interval { low, high, count } => (low, high, count),
             Extent::Listed(_) => {
-                self.scope.axes.push(Dimension::one());
+                self.scope.axes.push(None);
                 self.not_yet(axis.span, "an axis with listed nodes", "use `A to B, N nodes`");
                 return None;
             }
@@ -91,17 +100,16 @@ impl Checker<'_> {
         let (a, b) = (self.formula(low, Place::Constant), self.formula(high, Place::Constant));
         let dimension = [&b, &a]
             .into_iter()
-            .find_map(|side| side.as_ref()?.dimension.clone())
-            .unwrap_or_else(Dimension::one);
+            .find_map(|side| side.as_ref()?.dimension.clone());
         self.scope.axes.push(dimension.clone());
         let (a, b) = (a?, b?);
+        let dimension = dimension.unwrap_or_else(Dimension::one);
         if let (Some(first), Some(second)) = (&a.dimension, &b.dimension)
             && first != second
         {
             self.mismatch(high.span, second, low.span, first, "the ends of an axis");
             sound = false;
-        }
-        if matches!(
+        } else if matches!(
             self.sign(&b.value.clone().minus(a.value.clone())),
             Sign::Negative | Sign::Zero | Sign::NonPositive
         ) {
@@ -111,7 +119,8 @@ impl Checker<'_> {
                     axis.span,
                     format!("axis `{}` does not run upwards", axis.name.text),
                 )
-                .with_text("the first end must be less than the second"),
+                .with_text("the first end must be less than the second")
+                .with_remedy("exchange the two ends"),
             );
             sound = false;
         }
@@ -178,7 +187,8 @@ impl Checker<'_> {
                 codes_check::SECTION_MISSING,
                 span,
                 "the model has no field",
-            ));
+            )
+            .with_remedy("add a line like `T in K on x`"));
         }
         let mut fields = Vec::new();
         for field in &file.fields {
@@ -186,9 +196,7 @@ impl Checker<'_> {
                 Some(unit) => units::resolve(unit, &mut self.diagnostics),
                 None => Some(Scale { factor: Expression::one(), dimension: Dimension::one() }),
             };
-            self.scope
-                .fields
-                .push(scale.as_ref().map_or_else(Dimension::one, |scale| scale.dimension.clone()));
+            self.scope.fields.push(scale.as_ref().map(|scale| scale.dimension.clone()));
             fields.push((field, scale));
         }
         let mut result = Vec::new();
@@ -204,6 +212,11 @@ impl Checker<'_> {
         for axis in &field.axes {
             let found = self.scope.axis(&axis.text);
             match self.scope.expect(axis, "an axis", found, &mut self.diagnostics) {
+                Some(id) if named.contains(&id) => {
+                    let first = field.axes.iter().find(|name| name.text == axis.text).unwrap_or(axis);
+                    self.stated_twice(axis.span, first.span, &format!("the axis `{}`", axis.text));
+                    sound = false;
+                }
                 Some(id) => named.push(id),
                 None => sound = false,
             }
@@ -252,6 +265,14 @@ impl Checker<'_> {
         let (low, high) = (low?, high?);
         let dimension = dimension?;
         for (side, typed) in [(&bounds.low, &low), (&bounds.high, &high)] {
+            if typed.value.any(&|part| matches!(part, Expression::Constant(_))) {
+                self.diagnostics.push(
+                    Diagnostic::error(codes_check::MISPLACED, side.span, "a free constant cannot stand here")
+                        .with_text("bounds are known before the run")
+                        .with_remedy("give the bound by a number or by a constant that is not free"),
+                );
+                return None;
+            }
             if let Some(own) = typed.dimension.as_ref().filter(|own| **own != dimension) {
                 let own = own.clone();
                 self.mismatch(side.span, &own, bounds.span, &dimension, "a bound and what it bounds");
@@ -263,7 +284,8 @@ impl Checker<'_> {
                 codes_check::BOUNDS_ORDER,
                 bounds.span,
                 "the lower bound lies above the upper one",
-            ));
+            )
+            .with_remedy("exchange the two bounds"));
             return None;
         }
         Some((low.value, high.value))
@@ -283,6 +305,7 @@ impl Checker<'_> {
                 value: Expression::zero(),
             });
         }
+        self.sizes = vec![Size::default(); self.file.coefficients.len()];
         for index in 0..self.file.coefficients.len() {
             let span = self.file.coefficients[index].name.span;
             self.coefficient(index, span);
@@ -293,16 +316,55 @@ impl Checker<'_> {
         }
     }
 
-    fn enter(&mut self, kind: Kind, name: &str, span: Span) -> Option<()> {
-        if self.resolving.contains(&kind) {
-            self.diagnostics.push(
-                Diagnostic::error(codes_check::CYCLE, span, format!("`{name}` is defined by itself"))
-                    .with_remedy("break the circle: one of them must be given by a number"),
-            );
+    /// Marks what is being resolved; nothing, and one diagnostic, where it leads back to itself.
+    pub(super) fn enter(&mut self, kind: Kind, span: Span) -> Option<()> {
+        if self.failed.contains(&kind) {
             return None;
         }
-        self.resolving.push(kind);
-        Some(())
+        let Some(first) = self.resolving.iter().position(|known| *known == kind) else {
+            self.resolving.push(kind);
+            return Some(());
+        };
+        let circle: Vec<Kind> = self.resolving[first..].to_vec();
+        self.failed.extend(&circle);
+        let names: Vec<String> =
+            circle.iter().chain([&kind]).map(|kind| self.declared(*kind).0.text.clone()).collect();
+        let (name, declared) = self.declared(kind);
+        let mut diagnostic =
+            Diagnostic::error(codes_check::CYCLE, span, format!("`{}` is defined by itself", name.text))
+                .with_text(names.join(" → "))
+                .with_remedy("break the circle: one of them must be given without the others");
+        if declared != span {
+            diagnostic = diagnostic.with_label(declared, "declared here");
+        }
+        self.diagnostics.push(diagnostic);
+        None
+    }
+
+    /// The name of something that can be resolved, and where it is declared.
+    fn declared(&self, kind: Kind) -> (&tree::Name, Span) {
+        let name = match kind {
+            Kind::Constant(index) => &self.file.constants[index].name,
+            Kind::Coefficient(index) => &self.file.coefficients[index].name,
+            Kind::Operator(index) => &self.file.operators[index].name,
+            Kind::Axis(_) | Kind::Field(_) | Kind::Faulty => panic!("only definitions are resolved"),
+        };
+        (name, name.span)
+    }
+
+    /// Reads operators that nothing uses, so that their faults are found too.
+    pub(super) fn unused_operators(&mut self) {
+        let file = self.file;
+        for (index, operator) in file.operators.iter().enumerate() {
+            if self.applied.contains(&index) || file.fields.is_empty() {
+                continue;
+            }
+            let stand_in = Typed { value: Expression::Field(model::FieldId(0)), dimension: None };
+            let parameters =
+                operator.parameters.iter().map(|name| (name.text.clone(), stand_in.clone())).collect();
+            let bound = Bound { parameters, ..Bound::default() };
+            self.body(index, operator.name.span, Place::Equation, bound);
+        }
     }
 
     /// A constant, resolved when it is first used.
@@ -310,11 +372,20 @@ impl Checker<'_> {
         if let Some(known) = &self.scope.constants[index] {
             return Some(known.clone());
         }
-        let constant = &self.file.constants[index];
-        self.enter(Kind::Constant(index), &constant.name.text, span)?;
-        let typed = self.formula(&constant.value, Place::Constant);
+        self.enter(Kind::Constant(index), span)?;
+        let typed = self.constant_value(index);
         self.resolving.pop();
-        let typed = typed?;
+        if typed.is_none() {
+            self.failed.insert(Kind::Constant(index));
+        }
+        self.scope.constants[index] = typed.clone();
+        typed
+    }
+
+    fn constant_value(&mut self, index: usize) -> Option<Typed> {
+        let file = self.file;
+        let constant = &file.constants[index];
+        let typed = self.formula(&constant.value, Place::Constant)?;
         let unit = match &constant.value.kind {
             ExpressionKind::Quantity { unit, .. } => {
                 units::resolve(unit, &mut self.diagnostics).map(|scale| (unit.spelling.clone(), scale))
@@ -325,7 +396,11 @@ impl Checker<'_> {
         let description = constant.description.as_ref().map(|text| text.text.clone());
         let typed = if constant.free.is_some() {
             let bounds = match &constant.bounds {
-                Some(bounds) => Some(self.bounds(bounds, Some(dimension.clone()))?),
+                Some(bounds) => {
+                    let (low, high) = self.bounds(bounds, Some(dimension.clone()))?;
+                    self.default_inside(constant, &typed.value, bounds.span, (&low, &high))?;
+                    Some((low, high))
+                }
                 None => None,
             };
             let (unit, scale) = match &unit {
@@ -352,8 +427,34 @@ impl Checker<'_> {
             });
             typed
         };
-        self.scope.constants[index] = Some(typed.clone());
         Some(typed)
+    }
+
+    /// A free constant begins inside its range.
+    fn default_inside(
+        &mut self,
+        constant: &tree::Constant,
+        value: &Expression,
+        range: Span,
+        (low, high): (&Expression, &Expression),
+    ) -> Option<()> {
+        let below = self.sign(&value.clone().minus(low.clone())) == Sign::Negative;
+        let above = self.sign(&high.clone().minus(value.clone())) == Sign::Negative;
+        if !below && !above {
+            return Some(());
+        }
+        let side = if below { "below" } else { "above" };
+        self.diagnostics.push(
+            Diagnostic::error(
+                codes_check::DEFAULT_OUTSIDE,
+                constant.value.span,
+                format!("the value of `{}` lies {side} its range", constant.name.text),
+            )
+            .with_text("the value when nothing else is given")
+            .with_label(range, "the range")
+            .with_remedy("widen the range, or give a value inside it"),
+        );
+        None
     }
 
     /// A coefficient, resolved when it is first used.
@@ -363,10 +464,14 @@ impl Checker<'_> {
         }
         let file = self.file;
         let coefficient = &file.coefficients[index];
-        self.enter(Kind::Coefficient(index), &coefficient.name.text, span)?;
+        self.enter(Kind::Coefficient(index), span)?;
         let typed = self.coefficient_value(coefficient);
         self.resolving.pop();
-        let typed = typed?;
+        let Some(typed) = typed else {
+            self.failed.insert(Kind::Coefficient(index));
+            return None;
+        };
+        self.sizes[index] = size(&typed.value, &self.sizes);
         self.coefficients[index] = model::Coefficient {
             name: coefficient.name.text.clone(),
             dimension: typed.dimension.clone().unwrap_or_else(Dimension::one),
@@ -393,16 +498,7 @@ impl Checker<'_> {
             Some(unit) => Some(units::resolve(unit, &mut self.diagnostics)?.dimension),
             None => None,
         };
-        for argument in &coefficient.arguments {
-            let known = argument.text == "t"
-                || matches!(self.scope.kind(&argument.text), Some(Kind::Axis(_) | Kind::Field(_)));
-            self.scope.expect(
-                argument,
-                "an axis, `t` or a field",
-                known.then_some(()),
-                &mut self.diagnostics,
-            )?;
-        }
+        self.arguments(coefficient)?;
         let typed = self.formula(value, Place::Pointwise)?;
         if let (Some(wanted), Some(found)) = (&unit, &typed.dimension)
             && wanted != found
@@ -414,6 +510,26 @@ impl Checker<'_> {
         }
         self.hidden_dependence(coefficient, &typed.value)?;
         Some(Typed { dimension: typed.dimension.or(unit), value: typed.value })
+    }
+
+    /// Arguments are axes, `t` and fields, each once.
+    fn arguments(&mut self, coefficient: &tree::Coefficient) -> Option<()> {
+        let mut sound = Some(());
+        for (index, argument) in coefficient.arguments.iter().enumerate() {
+            let known = argument.text == "t"
+                || matches!(self.scope.kind(&argument.text), Some(Kind::Axis(_) | Kind::Field(_)));
+            let found = known.then_some(());
+            let what = "an axis, `t` or a field";
+            if self.scope.expect(argument, what, found, &mut self.diagnostics).is_none() {
+                sound = None;
+            }
+            let twin = coefficient.arguments[..index].iter().find(|known| known.text == argument.text);
+            if let Some(twin) = twin {
+                self.stated_twice(argument.span, twin.span, &format!("the argument `{}`", argument.text));
+                sound = None;
+            }
+        }
+        sound
     }
 
     /// The arguments name all that the coefficient depends on.

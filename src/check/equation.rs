@@ -60,7 +60,9 @@ impl Checker<'_> {
                         equation.span,
                         format!("`{name}` has two equations"),
                     )
-                    .with_label(span, "the first one"),
+                    .with_text("the second one")
+                    .with_label(span, "the first one")
+                    .with_remedy("leave one out, or write it for the field that it belongs to"),
                 );
                 sound = false;
             } else {
@@ -111,7 +113,8 @@ impl Checker<'_> {
                 codes_check::NOT_LINEAR_IN_RATE,
                 one.span,
                 format!("the time derivative of `{name}` cancels out"),
-            ));
+            )
+            .with_text("what multiplies it is exactly zero"));
             return None;
         }
         if coefficient.any(&|node| {
@@ -121,7 +124,8 @@ impl Checker<'_> {
                 codes_check::NOT_LINEAR_IN_RATE,
                 one.span,
                 format!("what multiplies the time derivative of `{name}` holds another derivative"),
-            ));
+            )
+            .with_remedy("divide by it on paper, or name the derivative as a field of its own"));
             return None;
         }
         let foreign = rates(&rest).into_iter().find(|other| !second.contains(other));

@@ -1,11 +1,12 @@
 //! Formulas: from the tree to exact expressions in SI, with dimensions checked in every term.
 
 use super::Checker;
-use super::derive::differentiate;
 use super::scope::{Kind, Typed};
+use super::size::{DEEPEST, DEEPEST_READING, digits};
 use super::units;
 use crate::diagnostic::{Diagnostic, codes_check};
 use crate::exact::Rational;
+use crate::model::calculus::dependence;
 use crate::model::{self, AxisId, CoefficientId, Dimension, Expression, FieldId};
 use crate::source::Span;
 use crate::syntax::tree::{self, ExpressionKind, Operation, Sign};
@@ -45,20 +46,27 @@ impl Place {
 pub(super) struct Bound {
     pub(super) parameters: Vec<(String, Typed)>,
     pub(super) order: Option<usize>,
-    /// How many operators deep.
-    depth: usize,
 }
-
-/// Named operators may use each other this deep.
-const DEEPEST_OPERATORS: usize = 16;
 
 impl Checker<'_> {
     /// A formula at a place; faults are reported and give nothing.
     pub(super) fn formula(&mut self, tree: &tree::Expression, place: Place) -> Option<Typed> {
-        self.convert(tree, place, &Bound::default())
+        let typed = self.convert(tree, place, &Bound::default())?;
+        self.bounded(typed, tree.span)
     }
 
     pub(super) fn convert(&mut self, tree: &tree::Expression, place: Place, bound: &Bound) -> Option<Typed> {
+        if self.nesting >= DEEPEST_READING {
+            self.too_large(tree.span);
+            return None;
+        }
+        self.nesting += 1;
+        let typed = self.convert_kind(tree, place, bound);
+        self.nesting -= 1;
+        typed
+    }
+
+    fn convert_kind(&mut self, tree: &tree::Expression, place: Place, bound: &Bound) -> Option<Typed> {
         match &tree.kind {
             ExpressionKind::Number(number) => Some(Typed {
                 value: Expression::Number(number.clone()),
@@ -66,8 +74,8 @@ impl Checker<'_> {
             }),
             ExpressionKind::Quantity { value, unit } => {
                 let scale = units::resolve(unit, &mut self.diagnostics)?;
-                let dimension = (!value.is_zero()).then_some(scale.dimension);
-                Some(Typed { value: Expression::Number(value.clone()).times(scale.factor), dimension })
+                let value = Expression::Number(value.clone()).times(scale.factor);
+                Some(Typed { value, dimension: Some(scale.dimension) })
             }
             ExpressionKind::Pi => Some(Typed::number(Expression::Pi)),
             ExpressionKind::Name(name) => self.name(name, tree.span, place, bound),
@@ -116,7 +124,7 @@ impl Checker<'_> {
         }
     }
 
-    fn misplaced(&mut self, span: Span, what: &str, place: Place) -> Option<Typed> {
+    pub(super) fn misplaced(&mut self, span: Span, what: &str, place: Place) -> Option<Typed> {
         self.diagnostics.push(
             Diagnostic::error(codes_check::MISPLACED, span, format!("{what} cannot stand here"))
                 .with_text(place.what()),
@@ -126,13 +134,13 @@ impl Checker<'_> {
 
     fn name(&mut self, name: &str, span: Span, place: Place, bound: &Bound) -> Option<Typed> {
         if let Some((_, typed)) = bound.parameters.iter().find(|(own, _)| own == name) {
-            return Some(typed.clone());
+            return self.grow(typed.clone(), span);
         }
         if name == "t" {
             if place == Place::Constant {
                 return self.misplaced(span, "the time `t`", place);
             }
-            return Some(Typed { value: Expression::Time, dimension: Some(self.time_dimension.clone()) });
+            return Some(Typed { value: Expression::Time, dimension: self.time_dimension.clone() });
         }
         match self.scope.kind(name) {
             None => {
@@ -140,19 +148,26 @@ impl Checker<'_> {
                 None
             }
             Some(Kind::Faulty) => None,
-            Some(Kind::Constant(index)) => self.constant(index, span),
+            Some(Kind::Constant(index)) => {
+                let typed = self.constant(index, span)?;
+                self.grow(typed, span)
+            }
             Some(Kind::Axis(_)) if place == Place::Constant => {
                 self.misplaced(span, &format!("the coordinate `{name}`"), place)
             }
             Some(Kind::Axis(index)) => Some(Typed {
                 value: Expression::Coordinate(AxisId(index)),
-                dimension: self.scope.axes.get(index).cloned(),
+                dimension: self.scope.length(AxisId(index)),
             }),
             Some(Kind::Coefficient(_)) if place == Place::Constant => {
                 self.misplaced(span, &format!("the coefficient `{name}`"), place)
             }
             Some(Kind::Coefficient(index)) => {
                 let typed = self.coefficient(index, span)?;
+                if place == Place::Data && dependence(&typed.value, &self.coefficients).on_state() {
+                    let what = format!("the coefficient `{name}`, which depends on a field,");
+                    return self.misplaced(span, &what, place);
+                }
                 Some(Typed {
                     value: Expression::Coefficient(CoefficientId(index)),
                     dimension: typed.dimension,
@@ -163,7 +178,7 @@ impl Checker<'_> {
             }
             Some(Kind::Field(index)) => Some(Typed {
                 value: Expression::Field(FieldId(index)),
-                dimension: self.scope.fields.get(index).cloned(),
+                dimension: self.scope.fields.get(index).cloned().flatten(),
             }),
             Some(Kind::Operator(_)) => {
                 self.diagnostics.push(
@@ -185,6 +200,7 @@ impl Checker<'_> {
         let mut dimension: Option<(Dimension, Span)> = None;
         let mut sound = true;
         let mut parts = Vec::new();
+        let mut total = Rational::zero();
         for (term, typed) in terms.iter().zip(converted) {
             let Some(typed) = typed else {
                 sound = false;
@@ -200,6 +216,11 @@ impl Checker<'_> {
                     }
                     Some(_) => {}
                 }
+            }
+            if let Expression::Number(number) = &typed.value {
+                total = &total + number;
+                let many = total.numerator().bits() + total.denominator().bits();
+                self.short(many, term.value.span)?;
             }
             parts.push(if term.sign == Sign::Minus { typed.value.negative() } else { typed.value });
         }
@@ -231,15 +252,22 @@ impl Checker<'_> {
         let converted: Vec<Option<Typed>> =
             factors.iter().map(|factor| self.convert(&factor.value, place, bound)).collect();
         let mut total: Option<Typed> = None;
+        let mut quotients = 0;
         for (factor, typed) in factors.iter().zip(converted) {
             let typed = typed?;
             if factor.operation == Operation::Over && typed.value.is_zero() {
-                self.diagnostics.push(Diagnostic::error(
-                    codes_check::DIVISION_BY_ZERO,
-                    factor.value.span,
-                    "this divides by zero",
-                ));
+                self.diagnostics.push(
+                    Diagnostic::error(codes_check::DIVISION_BY_ZERO, factor.value.span, "this divides by zero")
+                        .with_text("this is exactly zero"),
+                );
                 return None;
+            }
+            if factor.operation == Operation::Over && !matches!(typed.value, Expression::Number(_)) {
+                quotients += 1;
+                if quotients > DEEPEST {
+                    self.too_large(factor.value.span);
+                    return None;
+                }
             }
             total = Some(match total {
                 None => typed,
@@ -255,8 +283,11 @@ impl Checker<'_> {
                     },
                 },
             });
+            let many = total.as_ref().map_or(0, |total| digits(&total.value));
+            self.short(many, factor.value.span)?;
         }
-        total
+        // Quotients of quotients are the one thing that grows deeper than it is written.
+        if quotients > 8 { self.bounded(total?, factors.first()?.value.span) } else { total }
     }
 
     fn power(
@@ -285,12 +316,15 @@ impl Checker<'_> {
                 return None;
             }
             if typed.value.is_zero() && exact.is_negative() {
-                self.diagnostics.push(Diagnostic::error(
-                    codes_check::DIVISION_BY_ZERO,
-                    base.span,
-                    "a negative power of zero",
-                ));
+                self.diagnostics.push(
+                    Diagnostic::error(codes_check::DIVISION_BY_ZERO, base.span, "a negative power of zero")
+                        .with_text("this is exactly zero"),
+                );
                 return None;
+            }
+            if matches!(typed.value, Expression::Number(_)) && exact.is_integer() {
+                let times = exact.abs().to_i64().map_or(u64::MAX, |times| times as u64);
+                self.short(digits(&typed.value).saturating_mul(times), base.span)?;
             }
             let dimension = typed.dimension.map(|dimension| dimension.power(exact));
             return Some(Typed { value: typed.value.power(exact.clone()), dimension });
@@ -377,13 +411,19 @@ impl Checker<'_> {
         bound: &Bound,
     ) -> Option<Typed> {
         let index = match self.scope.kind(&operator.text) {
-            Some(Kind::Operator(index)) => Some(index),
-            _ => None,
+            Some(Kind::Operator(index)) => index,
+            Some(Kind::Faulty) => return None,
+            None => {
+                self.scope.unknown(&operator.text, operator.span, &mut self.diagnostics);
+                return None;
+            }
+            Some(kind) => return self.not_an_operator(operator, kind),
         };
-        let index =
-            self.scope.expect(operator, "a named operator or a function", index, &mut self.diagnostics)?;
-        let declared = &self.file.operators[index];
+        let file = self.file;
+        let declared = &file.operators[index];
+        self.applied.insert(index);
         if declared.parameters.len() != arguments.len() {
+            let parameters: Vec<&str> = declared.parameters.iter().map(|name| name.text.as_str()).collect();
             self.diagnostics.push(
                 Diagnostic::error(
                     codes_check::OPERATOR_ARGUMENTS,
@@ -395,25 +435,45 @@ impl Checker<'_> {
                         arguments.len()
                     ),
                 )
+                .with_text(format!("expected `{}({})`", operator.text, parameters.join(", ")))
                 .with_label(declared.name.span, "declared here"),
             );
             return None;
         }
-        if bound.depth >= DEEPEST_OPERATORS {
-            self.diagnostics.push(Diagnostic::error(
-                codes_check::CYCLE,
-                operator.span,
-                format!("`{}` is defined by itself, or operators are nested too deep", operator.text),
-            ));
-            return None;
-        }
-        let mut inner = Bound { depth: bound.depth + 1, order: bound.order, ..Bound::default() };
+        let mut inner = Bound { order: bound.order, ..Bound::default() };
         for (parameter, argument) in declared.parameters.iter().zip(arguments) {
             let typed = self.convert(argument, place, bound)?;
             inner.parameters.push((parameter.text.clone(), typed));
         }
+        self.body(index, operator.span, place, inner)
+    }
+
+    /// The value of an operator with its parameters put in.
+    pub(super) fn body(&mut self, index: usize, span: Span, place: Place, mut inner: Bound) -> Option<Typed> {
+        let file = self.file;
+        let declared = &file.operators[index];
+        self.enter(Kind::Operator(index), span)?;
         inner.order = self.operator_order(&declared.accuracy).or(inner.order);
-        self.convert(&declared.value, place, &inner)
+        let typed = self.convert(&declared.value, place, &inner);
+        self.resolving.pop();
+        self.grow(typed?, span)
+    }
+
+    fn not_an_operator(&mut self, name: &tree::Name, kind: Kind) -> Option<Typed> {
+        let remedy = match kind {
+            Kind::Coefficient(_) => format!("write `{}`: a coefficient is used by its bare name", name.text),
+            _ => format!("write `{} * (…)` if a product is meant", name.text),
+        };
+        self.diagnostics.push(
+            Diagnostic::error(
+                codes_check::WRONG_KIND,
+                name.span,
+                format!("`{}` is {} and takes no arguments", name.text, kind.word()),
+            )
+            .with_text("expected a function or a named operator before the bracket")
+            .with_remedy(remedy),
+        );
+        None
     }
 
     fn cases(
@@ -476,340 +536,6 @@ impl Checker<'_> {
         };
         Some(model::Comparison { left: left.value, relation, right: right.value })
     }
-
-    fn allow_spatial(&mut self, span: Span, place: Place) -> Option<()> {
-        if matches!(place, Place::Output | Place::Equation) {
-            return Some(());
-        }
-        self.misplaced(span, "a spatial derivative", place);
-        None
-    }
-
-    fn derivative(
-        &mut self,
-        derivative: &tree::Derivative,
-        span: Span,
-        place: Place,
-        bound: &Bound,
-    ) -> Option<Typed> {
-        let in_time: u32 = derivative.by.iter().filter(|by| by.name.text == "t").map(|by| by.power).sum();
-        if in_time > 0 {
-            return self.rate(derivative, in_time, span, place, bound);
-        }
-        if derivative.by.iter().any(|by| by.name.text == "n" && self.scope.kind("n").is_none()) {
-            return self.normal(derivative, span, place, bound);
-        }
-        self.allow_spatial(span, place)?;
-        let mut typed = self.convert(&derivative.of, place, bound)?;
-        for by in derivative.by.iter().rev() {
-            let axis = self.scope.axis(&by.name.text);
-            let axis = self.scope.expect(&by.name, "an axis, `t` or `n`", axis, &mut self.diagnostics)?;
-            for _ in 0..by.power {
-                typed = self.along(axis, typed, bound);
-            }
-        }
-        Some(typed)
-    }
-
-    fn along(&mut self, axis: AxisId, typed: Typed, bound: &Bound) -> Typed {
-        let length = self.scope.axes.get(axis.0).cloned().unwrap_or_else(Dimension::one);
-        Typed {
-            value: differentiate(axis, typed.value, bound.order, &self.coefficients),
-            dimension: typed.dimension.map(|dimension| dimension.over(&length)),
-        }
-    }
-
-    fn rate(
-        &mut self,
-        derivative: &tree::Derivative,
-        in_time: u32,
-        span: Span,
-        place: Place,
-        bound: &Bound,
-    ) -> Option<Typed> {
-        if !matches!(place, Place::Equation | Place::Condition | Place::Output) {
-            return self.misplaced(span, "a rate of change", place);
-        }
-        if in_time != derivative.order {
-            // ∂²u/∂t∂x: the rate of a field under a spatial derivative.
-            let mut typed = self.rate_of(&derivative.of, in_time, span, place, bound)?;
-            for by in derivative.by.iter().rev().filter(|by| by.name.text != "t") {
-                let axis = self.scope.axis(&by.name.text);
-                let axis = self.scope.expect(&by.name, "an axis", axis, &mut self.diagnostics)?;
-                for _ in 0..by.power {
-                    typed = self.along(axis, typed, bound);
-                }
-            }
-            return Some(typed);
-        }
-        self.rate_of(&derivative.of, in_time, span, place, bound)
-    }
-
-    fn rate_of(
-        &mut self,
-        of: &tree::Expression,
-        in_time: u32,
-        span: Span,
-        place: Place,
-        bound: &Bound,
-    ) -> Option<Typed> {
-        let typed = self.convert(of, place, bound)?;
-        let (factor, field) = match split_field(&typed.value) {
-            Some(found) => found,
-            None => {
-                self.diagnostics.push(
-                    Diagnostic::error(
-                        codes_check::RATE_OF_FORMULA,
-                        span,
-                        "the rate of change of a formula: only fields have one here",
-                    )
-                    .with_remedy("write the rule out, for example c * ∂T/∂t for a constant c"),
-                );
-                return None;
-            }
-        };
-        let value = match in_time {
-            1 => Expression::Rate(field),
-            2 if place == Place::Equation => Expression::SecondRate(field),
-            _ => {
-                self.diagnostics.push(Diagnostic::error(
-                    codes_check::TIME_ORDER,
-                    span,
-                    "equations are of first or second order in time, conditions and outputs of first",
-                ));
-                return None;
-            }
-        };
-        let duration = self.time_dimension.power(&Rational::from(i64::from(in_time)));
-        Some(Typed {
-            value: factor.times(value),
-            dimension: typed.dimension.map(|dimension| dimension.over(&duration)),
-        })
-    }
-
-    fn normal(
-        &mut self,
-        derivative: &tree::Derivative,
-        span: Span,
-        place: Place,
-        bound: &Bound,
-    ) -> Option<Typed> {
-        if place != Place::Condition {
-            return self.misplaced(span, "a normal derivative ∂/∂n", place);
-        }
-        if derivative.order != 1 {
-            self.not_yet(
-                span,
-                "a condition on a higher normal derivative",
-                "give the value or the first normal derivative",
-            );
-            return None;
-        }
-        let typed = self.convert(&derivative.of, place, bound)?;
-        let length = self.normal_dimension.clone().unwrap_or_else(Dimension::one);
-        let Some((factor, field)) = split_field(&typed.value) else {
-            self.diagnostics.push(
-                Diagnostic::error(
-                    codes_check::RATE_OF_FORMULA,
-                    span,
-                    "the normal derivative of a formula: only fields have one here",
-                )
-                .with_remedy("write the rule out"),
-            );
-            return None;
-        };
-        Some(Typed {
-            value: factor.times(Expression::Normal(Box::new(Expression::Field(field)))),
-            dimension: typed.dimension.map(|dimension| dimension.over(&length)),
-        })
-    }
-
-    fn laplacian(
-        &mut self,
-        inner: &tree::Expression,
-        span: Span,
-        place: Place,
-        bound: &Bound,
-    ) -> Option<Typed> {
-        self.allow_spatial(span, place)?;
-        let typed = self.convert(inner, place, bound)?;
-        let mut parts = Vec::new();
-        let mut dimension = None;
-        for axis in (0..self.scope.axes.len()).map(AxisId) {
-            let once = self.along(axis, typed.clone(), bound);
-            let twice = self.along(axis, once, bound);
-            dimension = twice.dimension;
-            parts.push(twice.value);
-        }
-        self.same_lengths(span)?;
-        Some(Typed { value: Expression::sum(parts), dimension })
-    }
-
-    /// Δ and ∇· add derivatives along all axes, whose units must agree.
-    fn same_lengths(&mut self, span: Span) -> Option<()> {
-        let first = self.scope.axes.first().cloned()?;
-        if let Some(other) = self.scope.axes.iter().find(|dimension| **dimension != first).cloned() {
-            self.mismatch(span, &other, span, &first, "the axes under Δ or ∇");
-            return None;
-        }
-        Some(())
-    }
-
-    /// ∇·(flux): terms with one gradient each.
-    fn divergence(&mut self, flux: &tree::Expression, place: Place, bound: &Bound) -> Option<Typed> {
-        self.same_lengths(flux.span)?;
-        match &flux.kind {
-            ExpressionKind::Sum(terms) => {
-                let converted: Vec<Option<Typed>> =
-                    terms.iter().map(|term| self.divergence(&term.value, place, bound)).collect();
-                let mut parts = Vec::new();
-                let mut dimension: Option<(Dimension, Span)> = None;
-                for (term, typed) in terms.iter().zip(converted) {
-                    let typed = typed?;
-                    if let (Some((first, span)), Some(own)) = (&dimension, &typed.dimension)
-                        && first != own
-                    {
-                        let (first, span, own) = (first.clone(), *span, own.clone());
-                        self.mismatch(term.value.span, &own, span, &first, "the terms of a flux");
-                        return None;
-                    }
-                    if dimension.is_none() {
-                        dimension = typed.dimension.clone().map(|own| (own, term.value.span));
-                    }
-                    parts.push(if term.sign == Sign::Minus { typed.value.negative() } else { typed.value });
-                }
-                Some(Typed { value: Expression::sum(parts), dimension: dimension.map(|(own, _)| own) })
-            }
-            ExpressionKind::Negate(inner) => {
-                let typed = self.divergence(inner, place, bound)?;
-                Some(Typed { value: typed.value.negative(), ..typed })
-            }
-            ExpressionKind::Gradient(inner) => {
-                let of = self.convert(inner, place, bound)?;
-                Some(self.divergence_of(&Typed::number(Expression::one()), of, bound))
-            }
-            ExpressionKind::Product(factors) => {
-                let gradients =
-                    factors.iter().filter(|factor| matches!(factor.value.kind, ExpressionKind::Gradient(_)));
-                let (1, Some(gradient)) = (gradients.clone().count(), gradients.clone().next()) else {
-                    return self.scalar_flux(flux.span);
-                };
-                let ExpressionKind::Gradient(inner) = &gradient.value.kind else { return None };
-                if gradient.operation == Operation::Over {
-                    return self.scalar_flux(gradient.value.span);
-                }
-                let mut coefficient = Typed::number(Expression::one());
-                for factor in factors {
-                    if matches!(factor.value.kind, ExpressionKind::Gradient(_)) {
-                        continue;
-                    }
-                    let typed = self.convert(&factor.value, place, bound)?;
-                    coefficient = Typed {
-                        dimension: match (coefficient.dimension, typed.dimension, factor.operation) {
-                            (Some(a), Some(b), Operation::Times) => Some(a.times(&b)),
-                            (Some(a), Some(b), Operation::Over) => Some(a.over(&b)),
-                            _ => None,
-                        },
-                        value: match factor.operation {
-                            Operation::Times => coefficient.value.times(typed.value),
-                            Operation::Over => coefficient.value.over(typed.value),
-                        },
-                    };
-                }
-                let of = self.convert(inner, place, bound)?;
-                Some(self.divergence_of(&coefficient, of, bound))
-            }
-            _ => self.scalar_flux(flux.span),
-        }
-    }
-
-    fn scalar_flux(&mut self, span: Span) -> Option<Typed> {
-        self.diagnostics.push(
-            Diagnostic::error(codes_check::VECTOR_ALONE, span, "∇· takes a vector, and this is none")
-                .with_text("expected terms like k * ∇T, one gradient each")
-                .with_remedy(
-                    "transport by a velocity is written axis by axis: ∂/∂x(u_x * q) + ∂/∂y(u_y * q)",
-                ),
-        );
-        None
-    }
-
-    fn divergence_of(&mut self, coefficient: &Typed, of: Typed, bound: &Bound) -> Typed {
-        let mut parts = Vec::new();
-        let mut dimension = None;
-        for axis in (0..self.scope.axes.len()).map(AxisId) {
-            let slope = self.along(axis, of.clone(), bound);
-            let flux = Typed {
-                value: coefficient.value.clone().times(slope.value),
-                dimension: coefficient
-                    .dimension
-                    .as_ref()
-                    .zip(slope.dimension.as_ref())
-                    .map(|(a, b)| a.times(b)),
-            };
-            let outer = self.along(axis, flux, bound);
-            dimension = outer.dimension;
-            parts.push(outer.value);
-        }
-        Typed { value: Expression::sum(parts), dimension }
-    }
-
-    /// ∇f·∇g.
-    fn dot(
-        &mut self,
-        left: &tree::Expression,
-        right: &tree::Expression,
-        span: Span,
-        place: Place,
-        bound: &Bound,
-    ) -> Option<Typed> {
-        self.allow_spatial(span, place)?;
-        self.same_lengths(span)?;
-        let (ExpressionKind::Gradient(f), ExpressionKind::Gradient(g)) = (&left.kind, &right.kind) else {
-            return self.scalar_flux(span);
-        };
-        let (f, g) = (self.convert(f, place, bound)?, self.convert(g, place, bound)?);
-        let mut parts = Vec::new();
-        let mut dimension = None;
-        for axis in (0..self.scope.axes.len()).map(AxisId) {
-            let (a, b) = (self.along(axis, f.clone(), bound), self.along(axis, g.clone(), bound));
-            dimension = a.dimension.zip(b.dimension).map(|(a, b)| a.times(&b));
-            parts.push(a.value.times(b.value));
-        }
-        Some(Typed { value: Expression::sum(parts), dimension })
-    }
-}
-
-/// factor · field, with a factor that holds no field.
-fn split_field(value: &Expression) -> Option<(Expression, FieldId)> {
-    match value {
-        Expression::Field(field) => Some((Expression::one(), *field)),
-        Expression::Product(items) => {
-            let mut fields = items.iter().filter_map(|item| match item {
-                Expression::Field(field) => Some(*field),
-                _ => None,
-            });
-            let field =
-                fields.next().filter(|_| items.iter().filter(|item| holds_state(item)).count() == 1)?;
-            let rest = items.iter().filter(|item| !holds_state(item)).cloned();
-            let rest: Vec<Expression> = rest.collect();
-            // A factor that varies in time would have to be differentiated as well.
-            let still = rest
-                .iter()
-                .all(|item| !item.any(&|node| matches!(node, Expression::Time | Expression::Coefficient(_))));
-            still.then(|| (Expression::product(rest), field))
-        }
-        _ => None,
-    }
-}
-
-fn holds_state(value: &Expression) -> bool {
-    value.any(&|node| {
-        matches!(
-            node,
-            Expression::Field(_) | Expression::Rate(_) | Expression::Derivative(_) | Expression::Normal(_)
-        )
-    })
 }
 
 fn target(function: tree::Function) -> model::Function {

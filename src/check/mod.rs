@@ -12,7 +12,9 @@ mod place;
 mod plan;
 pub mod raw;
 mod scope;
+mod size;
 mod units;
+mod vector;
 pub mod warnings;
 
 use crate::diagnostic::{Diagnostic, Diagnostics, codes_check};
@@ -20,6 +22,7 @@ use crate::model::{Coefficient, Dimension, FoldedConstant, FreeConstant, Model};
 use crate::source::{SourceFile, Span};
 use crate::syntax::tree::{ModelFile, Section};
 use scope::Scope;
+use std::collections::HashSet;
 
 /// Checks a parsed file. The model is there only when nothing is wrong with it.
 pub fn check(file: &ModelFile, source: &SourceFile) -> (Option<Model>, Diagnostics) {
@@ -32,7 +35,12 @@ pub fn check(file: &ModelFile, source: &SourceFile) -> (Option<Model>, Diagnosti
         free: Vec::new(),
         folded: Vec::new(),
         coefficients: Vec::new(),
-        time_dimension: Dimension::one(),
+        time_dimension: None,
+        sizes: Vec::new(),
+        growth: 0,
+        nesting: 0,
+        failed: HashSet::new(),
+        applied: HashSet::new(),
         normal_dimension: None,
     };
     let model = checker.model();
@@ -62,8 +70,18 @@ struct Checker<'a> {
     free: Vec<FreeConstant>,
     folded: Vec<FoldedConstant>,
     coefficients: Vec<Coefficient>,
-    /// The unit of `t`, as the time section has it.
-    time_dimension: Dimension,
+    /// What has a fault of its own that was told: uses of it are no second fault.
+    failed: HashSet<scope::Kind>,
+    /// Operators that some formula uses.
+    applied: HashSet<usize>,
+    /// One for each coefficient, those it uses put in.
+    sizes: Vec<size::Size>,
+    /// Parts that were put into formulas so far.
+    growth: u64,
+    /// How deep the formula that is being read stands.
+    nesting: usize,
+    /// The unit of `t`, as the time section has it; nothing where it is not known.
+    time_dimension: Option<Dimension>,
     /// The unit of the axis that a condition is normal to, while it is read.
     normal_dimension: Option<Dimension>,
 }
@@ -83,6 +101,7 @@ impl Checker<'_> {
         let time = self.time();
         let outputs = self.outputs(&axes, &fields);
         let verification = self.verification();
+        self.unused_operators();
         self.bounded_axes(&axes, &equations);
         let header = self.file.header.as_ref();
         let model = Model {
@@ -148,6 +167,16 @@ impl Checker<'_> {
     /// Whether a statement of the section could not be read.
     fn has_faulty(&self, section: Section) -> bool {
         self.file.faulty.iter().any(|faulty| faulty.section == Some(section))
+    }
+
+    /// Something that may be said once.
+    fn stated_twice(&mut self, span: Span, first: Span, what: &str) {
+        self.diagnostics.push(
+            Diagnostic::error(codes_check::STATED_TWICE, span, format!("{what} is stated twice"))
+                .with_text("stated again here")
+                .with_label(first, "first stated here")
+                .with_remedy("leave one of them out"),
+        );
     }
 
     /// Something that is understood and comes later.

@@ -30,7 +30,9 @@ impl Checker<'_> {
                                 condition.span,
                                 "the start is given twice",
                             )
-                            .with_label(twin.span, "first given here"),
+                            .with_text("given again here")
+                            .with_label(twin.span, "first given here")
+                            .with_remedy("leave one of them out"),
                         );
                         sound = false;
                         continue;
@@ -70,14 +72,17 @@ impl Checker<'_> {
                         .iter()
                         .find(|known| known.field == equation.field && known.derivative == 1)
                         .map_or(name.span, |known| known.span);
-                    self.diagnostics.push(Diagnostic::error(
-                        codes_check::SECOND_INITIAL,
-                        span,
-                        format!(
-                            "`{}` is first order in time: its rate at the start follows from its equation",
-                            name.text
-                        ),
-                    ));
+                    self.diagnostics.push(
+                        Diagnostic::error(
+                            codes_check::SECOND_INITIAL,
+                            span,
+                            format!(
+                                "`{}` is first order in time: its rate at the start follows from its equation",
+                                name.text
+                            ),
+                        )
+                        .with_remedy("leave this start out"),
+                    );
                     sound = false;
                 }
             }
@@ -99,7 +104,8 @@ impl Checker<'_> {
                         condition.left.span,
                         "the left side of a start is a field or its rate",
                     )
-                    .with_text("expected a field, or ∂/∂t of one"),
+                    .with_text("expected a field, or ∂/∂t of one")
+                    .with_remedy("solve for the field: write `at t = start: T = …`"),
                 );
                 return None;
             }
@@ -215,7 +221,7 @@ impl Checker<'_> {
         face: Face,
         patch: Vec<model::Comparison>,
     ) -> Option<RawCondition> {
-        self.normal_dimension = self.scope.axes.get(face.axis.0).cloned();
+        self.normal_dimension = self.scope.length(face.axis);
         let left = self.formula(&condition.left, Place::Condition);
         let right = self.formula(&condition.right, Place::Condition);
         self.normal_dimension = None;

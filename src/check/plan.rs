@@ -1,5 +1,7 @@
 //! Accuracy, time, outputs and verification.
 
+use std::collections::BTreeMap;
+
 use super::Checker;
 use super::formula::Place;
 use super::scope::Typed;
@@ -71,13 +73,23 @@ impl Checker<'_> {
 
     pub(super) fn accuracy(&mut self) -> Option<Accuracy> {
         let file = self.file;
-        let mut per_axis: Vec<Option<AskedOrder>> = vec![None; file.axes.len()];
+        let mut per_axis: Vec<Option<(AskedOrder, Span)>> = vec![None; file.axes.len()];
         let mut span = None;
         let mut sound = !self.has_faulty(Section::Accuracy);
-        let mut general: Option<AskedOrder> = None;
+        let mut general: Option<(AskedOrder, Span)> = None;
+        let mut closures: Option<Span> = None;
         for line in &file.accuracy {
             let AccuracyKind::Order { order, of, axes } = &line.kind else {
-                self.refuse_closures(&line.kind, line.span);
+                match closures {
+                    Some(first) if matches!(line.kind, AccuracyKind::Closures(_)) => {
+                        self.stated_twice(line.span, first, "the family of closures");
+                        sound = false;
+                    }
+                    _ => self.refuse_closures(&line.kind, line.span),
+                }
+                if matches!(line.kind, AccuracyKind::Closures(_)) {
+                    closures.get_or_insert(line.span);
+                }
                 continue;
             };
             span.get_or_insert(line.span);
@@ -90,28 +102,22 @@ impl Checker<'_> {
                 OrderOf::Interior => AskedOrder::Interior(value),
             };
             if axes.is_empty() {
-                if general.is_some() {
-                    self.diagnostics.push(Diagnostic::error(
-                        codes_check::STATED_TWICE,
-                        line.span,
-                        "the order is stated twice",
-                    ));
+                if let Some((_, first)) = general {
+                    self.stated_twice(line.span, first, "the order");
                     sound = false;
                 }
-                general = Some(asked);
+                general = Some((asked, line.span));
             }
             for axis in axes {
                 let found = self.scope.axis(&axis.text);
                 match self.scope.expect(axis, "an axis", found, &mut self.diagnostics) {
-                    Some(id) if per_axis[id.0].is_some() => {
-                        self.diagnostics.push(Diagnostic::error(
-                            codes_check::STATED_TWICE,
-                            axis.span,
-                            format!("the order along `{}` is stated twice", axis.text),
-                        ));
-                        sound = false;
+                    Some(id) => {
+                        if let Some((_, first)) = per_axis[id.0] {
+                            self.stated_twice(axis.span, first, &format!("the order along `{}`", axis.text));
+                            sound = false;
+                        }
+                        per_axis[id.0] = Some((asked, axis.span));
                     }
-                    Some(id) => per_axis[id.0] = Some(asked),
                     None => sound = false,
                 }
             }
@@ -132,7 +138,7 @@ impl Checker<'_> {
             );
             return None;
         }
-        let per_axis: Option<Vec<AskedOrder>> = per_axis.into_iter().map(|own| own.or(general)).collect();
+        let per_axis: Option<Vec<AskedOrder>> = per_axis.into_iter().map(|own| own.or(general).map(|(asked, _)| asked)).collect();
         sound.then_some(())?;
         Some(Accuracy {
             span: span.unwrap_or_else(|| self.section_span(Section::Accuracy)),
@@ -143,22 +149,20 @@ impl Checker<'_> {
     pub(super) fn time(&mut self) -> Option<TimePlan> {
         let file = self.file;
         let (mut interval, mut method, mut step) = (None, None, None);
+        let mut first: [Option<Span>; 3] = [None; 3];
         let mut sound = !self.has_faulty(Section::Time);
         for line in &file.time {
-            let twice = match &line.kind {
-                TimeKind::Interval { .. } => interval.is_some(),
-                TimeKind::Method(_) => method.is_some(),
-                TimeKind::Step(_) | TimeKind::StepOfLimit(_) => step.is_some(),
+            let (first, what) = match &line.kind {
+                TimeKind::Interval { .. } => (&mut first[0], "the interval"),
+                TimeKind::Method(_) => (&mut first[1], "the method"),
+                TimeKind::Step(_) | TimeKind::StepOfLimit(_) => (&mut first[2], "the step"),
             };
-            if twice {
-                self.diagnostics.push(Diagnostic::error(
-                    codes_check::STATED_TWICE,
-                    line.span,
-                    "this is stated twice",
-                ));
+            if let Some(first) = *first {
+                self.stated_twice(line.span, first, what);
                 sound = false;
                 continue;
             }
+            *first = Some(line.span);
             match &line.kind {
                 TimeKind::Interval { start, end } => interval = Some(self.interval(start, end, line.span)),
                 TimeKind::Method(name) => method = Some(self.method(name)),
@@ -207,8 +211,10 @@ impl Checker<'_> {
             self.mismatch(end.span, &second, start.span, &first, "the ends of the time interval");
             return None;
         }
-        let dimension = self.time_dimension.clone();
-        if !dimension.is_one() && dimension != Dimension::time() {
+        if let Some(dimension) = self.time_dimension.clone()
+            && !dimension.is_one()
+            && dimension != Dimension::time()
+        {
             self.diagnostics.push(
                 Diagnostic::error(
                     codes_check::NOT_A_TIME,
@@ -227,7 +233,8 @@ impl Checker<'_> {
                 codes_check::TIME_DIRECTION,
                 span,
                 "the end of the time interval is not after its start",
-            ));
+            )
+            .with_remedy("give the earlier time first, like `0 s to 60 s`"));
             return None;
         }
         Some((a.value, b.value))
@@ -265,10 +272,12 @@ impl Checker<'_> {
     /// A positive time.
     fn duration(&mut self, tree: &tree::Expression, what: &str) -> Option<Expression> {
         let typed = self.formula(tree, Place::Constant)?;
-        if let Some(own) = typed.dimension.as_ref().filter(|own| **own != self.time_dimension) {
+        if let (Some(own), Some(time)) = (&typed.dimension, &self.time_dimension)
+            && own != time
+        {
             self.diagnostics.push(
                 Diagnostic::error(codes_check::NOT_A_TIME, tree.span, format!("{what} is a time"))
-                    .with_text(format!("this is in {own}, and the time interval in {}", self.time_dimension)),
+                    .with_text(format!("this is in {own}, and the time interval in {time}")),
             );
             return None;
         }
@@ -277,7 +286,8 @@ impl Checker<'_> {
                 codes_check::NOT_POSITIVE,
                 tree.span,
                 format!("{what} must be greater than zero"),
-            ));
+            )
+            .with_text("expected a positive time"));
             return None;
         }
         Some(typed.value)
@@ -330,7 +340,9 @@ impl Checker<'_> {
                             line.span,
                             format!("the output `{}` is named twice", output.name),
                         )
-                        .with_label(twin.span, "first here"),
+                        .with_text("named again here")
+                        .with_label(twin.span, "first here")
+                        .with_remedy("give each output a name of its own"),
                     );
                     sound = false;
                     continue;
@@ -352,7 +364,7 @@ impl Checker<'_> {
             tree::OutputKind::Field(name) => {
                 let found = self.scope.field(&name.text);
                 let id = self.scope.expect(name, "a field", found, &mut self.diagnostics)?;
-                let dimension = self.scope.fields.get(id.0).cloned();
+                let dimension = self.scope.fields.get(id.0).cloned().flatten();
                 let typed = Typed { value: Expression::Field(id), dimension };
                 Some(vec![finish(&name.text, typed, OutputKind::Snapshot, fields, span)])
             }
@@ -380,7 +392,7 @@ impl Checker<'_> {
                     );
                     return None;
                 }
-                let volume = self.scope.axes.iter().fold(Dimension::one(), |total, axis| total.times(axis));
+                let volume = self.scope.axes.iter().flatten().fold(Dimension::one(), |total, axis| total.times(axis));
                 let typed =
                     Typed { dimension: typed.dimension.map(|own| own.times(&volume)), value: typed.value };
                 let mut output = finish(&name.text, typed, OutputKind::Integral, &None, span);
@@ -455,9 +467,9 @@ impl Checker<'_> {
         let found = self.scope.axis(&axis.text);
         let id = self.scope.expect(axis, "an axis", found, &mut self.diagnostics)?;
         let typed = self.formula(value, Place::Constant)?;
-        let wanted = self.scope.axes.get(id.0).cloned()?;
-        if let Some(own) = typed.dimension.as_ref().filter(|own| **own != wanted) {
-            let own = own.clone();
+        if let (Some(own), Some(wanted)) = (typed.dimension.clone(), self.scope.length(id))
+            && own != wanted
+        {
             self.mismatch(value.span, &own, axis.span, &wanted, "a place and its axis");
             return None;
         }
@@ -475,6 +487,7 @@ impl Checker<'_> {
                     value.span,
                     format!("this lies outside the axis `{}`", axis.text),
                 )
+                .with_text("expected a place on the axis")
                 .with_label(self.file.axes[id.0].span, "the axis"),
             );
             return None;
@@ -545,7 +558,8 @@ impl Checker<'_> {
                     codes_check::NOT_POSITIVE,
                     span,
                     format!("more than {MOST_GAUGES} gauges in a line"),
-                ));
+                )
+                .with_remedy("write a field instead, and read the places from its file"));
                 return None;
             }
         }
@@ -560,32 +574,43 @@ impl Checker<'_> {
         }
         let mut result = Verification { solutions: Vec::new(), manufactured: false, grids: Vec::new() };
         let mut sound = !self.has_faulty(Section::Verification);
+        let mut first: BTreeMap<FieldId, Span> = BTreeMap::new();
+        let mut grids_at: Option<Span> = None;
         for line in &file.verification {
             match &line.kind {
                 VerificationKind::Exact { field, value }
                 | VerificationKind::Manufactured { field, value } => {
                     result.manufactured |= matches!(line.kind, VerificationKind::Manufactured { .. });
                     match self.solution(field, value) {
-                        Some((id, _)) if result.solutions.iter().any(|(known, _)| *known == id) => {
-                            self.diagnostics.push(Diagnostic::error(
-                                codes_check::STATED_TWICE,
-                                line.span,
-                                "this solution is stated twice",
-                            ));
-                            sound = false;
-                        }
-                        Some(solution) => result.solutions.push(solution),
+                        Some((id, value)) => match first.get(&id) {
+                            Some(first) => {
+                                let what = format!("the solution of `{}`", field.text);
+                                self.stated_twice(line.span, *first, &what);
+                                sound = false;
+                            }
+                            None => {
+                                first.insert(id, line.span);
+                                result.solutions.push((id, value));
+                            }
+                        },
                         None => sound = false,
                     }
                 }
                 VerificationKind::Grids(grids) => {
+                    if let Some(first) = grids_at {
+                        self.stated_twice(line.span, first, "the list of grids");
+                        sound = false;
+                        continue;
+                    }
+                    grids_at = Some(line.span);
                     result.grids = grids.iter().map(|grid| grid.value as usize).collect();
                     if !result.grids.is_sorted_by(|a, b| a < b) {
                         self.diagnostics.push(Diagnostic::error(
                             codes_check::GRIDS_ORDER,
                             line.span,
                             "grids grow from one to the next",
-                        ));
+                        )
+                        .with_text("expected node counts that increase, like `grids 17, 33, 65`"));
                         sound = false;
                     }
                 }
@@ -598,9 +623,10 @@ impl Checker<'_> {
         let found = self.scope.field(&field.text);
         let id = self.scope.expect(field, "a field", found, &mut self.diagnostics)?;
         let typed = self.formula(value, Place::Data)?;
-        let wanted = self.scope.fields.get(id.0).cloned()?;
-        if let Some(own) = typed.dimension.as_ref().filter(|own| **own != wanted) {
-            let own = own.clone();
+        let wanted = self.scope.fields.get(id.0).cloned().flatten();
+        if let (Some(own), Some(wanted)) = (typed.dimension.clone(), wanted)
+            && own != wanted
+        {
             self.mismatch(value.span, &own, field.span, &wanted, "a solution and its field");
             return None;
         }

@@ -10,7 +10,7 @@ use crate::syntax::names::reserved;
 use crate::syntax::tree::{ModelFile, Name};
 
 /// What a name was declared as; indices are places in the lists of the file.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Hash)]
 pub(super) enum Kind {
     Axis(usize),
     Constant(usize),
@@ -34,7 +34,7 @@ impl Kind {
     }
 }
 
-/// An expression in SI with its dimension; no dimension is the literal zero, which takes any.
+/// An expression in SI with its dimension. None is that of the literal zero, which takes any, and of what has a fault elsewhere.
 #[derive(Clone, Debug)]
 pub(super) struct Typed {
     pub(super) value: Expression,
@@ -51,8 +51,9 @@ impl Typed {
 #[derive(Debug, Default)]
 pub(super) struct Scope {
     kinds: HashMap<String, (Kind, Span)>,
-    pub(super) axes: Vec<Dimension>,
-    pub(super) fields: Vec<Dimension>,
+    /// Nothing where a fault hides it.
+    pub(super) axes: Vec<Option<Dimension>>,
+    pub(super) fields: Vec<Option<Dimension>>,
     /// One for each constant and coefficient, once resolved.
     pub(super) constants: Vec<Option<Typed>>,
     pub(super) coefficients: Vec<Option<Typed>>,
@@ -134,6 +135,11 @@ impl Scope {
         self.kinds.get(name).map(|(kind, _)| *kind)
     }
 
+    /// The unit of length along an axis; nothing where it is not known.
+    pub(super) fn length(&self, axis: AxisId) -> Option<Dimension> {
+        self.axes.get(axis.0).cloned().flatten()
+    }
+
     pub(super) fn axis(&self, name: &str) -> Option<AxisId> {
         match self.kind(name) {
             Some(Kind::Axis(index)) => Some(AxisId(index)),
@@ -183,7 +189,7 @@ impl Scope {
                 .with_text("not a name of this model");
         diagnostic = match nearest(name, names) {
             Some(near) => diagnostic.with_remedy(format!("did you mean `{near}`?")),
-            None => diagnostic.with_remedy("declare it in the section where it belongs"),
+            None => diagnostic.with_remedy("declare it, for example under `constants`, or correct the name"),
         };
         diagnostics.push(diagnostic);
     }

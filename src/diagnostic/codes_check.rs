@@ -31,6 +31,12 @@ code_table! {
     DIVISION_BY_ZERO = "E0218", "a division by zero",
         "What is below the line is exactly zero.",
         wrong "k = 1 / 0", right "k = 1";
+    FORMULA_TOO_LARGE = "E0219", "a formula that grows too large",
+        "Constants, coefficients and operators may build on each other, but with everything put in a formula has at most 5000 parts, at most 300 deep: each of them is worked through at every node. A chain in which every name holds the one before twice doubles its size with each line.",
+        wrong "a_1(x) = a_0 * a_0\na_2(x) = a_1 * a_1   # … and so on to a_60", right "a_60(x) = exp(2^60 * log(a_0))";
+    NUMBER_OUT_OF_RANGE = "E0220", "a number beyond what a run can hold",
+        "Numbers are exact here, but a run computes with doubles, in SI base units: a number is zero or has a size between about 1e-307 and 1e308.",
+        wrong "L = 1e400 m", right "L = 1e4 m";
     UNKNOWN_UNIT = "E0301", "an unknown unit",
         "Units are those of the SI, with prefixes, and min, h, d, °. A unit has no space in it; products are written with `·`, and after `/` stands one factor or a bracket.",
         wrong "3 furlong", right "603.5 m";
@@ -86,7 +92,7 @@ code_table! {
         "Orders go from 1 to 16; with boundaries the offered closures set a lower bound.",
         wrong "order 40", right "order 4";
     STATED_TWICE = "E0602", "something that is stated twice",
-        "The order, the interval, the method, the step and each solution are stated once.",
+        "Properties of an axis, the axes of a field, the arguments of a coefficient, the order, the closures, the interval, the method, the step, the grids and each solution are stated once.",
         wrong "order 2\norder 4", right "order 4";
     UNKNOWN_METHOD = "E0701", "an unknown time method",
         "The methods are euler, ssprk3, rk4, lsrk4 and leapfrog, by their names in the literature.",
@@ -127,4 +133,7 @@ code_table! {
     BOUNDS_ORDER = "E0914", "bounds in the wrong order",
         "`between A and B` has the lower bound first.",
         wrong "between 1 and 0", right "between 0 and 1";
+    DEFAULT_OUTSIDE = "E0915", "a value outside its range",
+        "A free constant has the value of the model when a run gives none, so that value lies in the range that `between` states.",
+        wrong "f = 8, free between 0 and 5", right "f = 8, free between 0 and 50";
 }
