@@ -36,6 +36,7 @@ pub fn check(file: &ModelFile, source: &SourceFile) -> (Option<Model>, Diagnosti
         folded: Vec::new(),
         coefficients: Vec::new(),
         time_dimension: None,
+        whole_time: None,
         sizes: Vec::new(),
         growth: 0,
         nesting: 0,
@@ -82,6 +83,8 @@ struct Checker<'a> {
     nesting: usize,
     /// The unit of `t`, as the time section has it; nothing where it is not known.
     time_dimension: Option<Dimension>,
+    /// The length of the time interval, where it is sound.
+    whole_time: Option<crate::model::Expression>,
     /// The unit of the axis that a condition is normal to, while it is read.
     normal_dimension: Option<Dimension>,
 }

@@ -1,5 +1,6 @@
 //! The one test binary.
 
+mod agreement;
 mod c_driver;
 mod cli;
 mod convergence;
@@ -9,6 +10,7 @@ mod exactness;
 mod layering;
 mod limits;
 mod lowering;
+mod mutations;
 mod published;
 mod reference;
 mod rejects;
