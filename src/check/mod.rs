@@ -24,8 +24,21 @@ use crate::syntax::tree::{ModelFile, Section};
 use scope::Scope;
 use std::collections::HashSet;
 
+/// Bytes of stack for a check: formulas are read by descent, as deep as [`size`] allows, on whatever thread a caller has.
+const STACK: usize = 32 << 20;
+
 /// Checks a parsed file. The model is there only when nothing is wrong with it.
 pub fn check(file: &ModelFile, source: &SourceFile) -> (Option<Model>, Diagnostics) {
+    std::thread::scope(|scope| {
+        let roomy = std::thread::Builder::new().stack_size(STACK);
+        match roomy.spawn_scoped(scope, || check_here(file, source)) {
+            Ok(thread) => thread.join().unwrap_or_else(|panic| std::panic::resume_unwind(panic)),
+            Err(_) => check_here(file, source),
+        }
+    })
+}
+
+fn check_here(file: &ModelFile, source: &SourceFile) -> (Option<Model>, Diagnostics) {
     let mut checker = Checker {
         file,
         source,
