@@ -24,8 +24,21 @@ use crate::syntax::tree::{ModelFile, Section};
 use scope::Scope;
 use std::collections::HashSet;
 
+/// Bytes of stack for a check: formulas are read by descent, as deep as [`size`] allows, on whatever thread a caller has.
+const STACK: usize = 32 << 20;
+
 /// Checks a parsed file. The model is there only when nothing is wrong with it.
 pub fn check(file: &ModelFile, source: &SourceFile) -> (Option<Model>, Diagnostics) {
+    std::thread::scope(|scope| {
+        let roomy = std::thread::Builder::new().stack_size(STACK);
+        match roomy.spawn_scoped(scope, || check_here(file, source)) {
+            Ok(thread) => thread.join().unwrap_or_else(|panic| std::panic::resume_unwind(panic)),
+            Err(_) => check_here(file, source),
+        }
+    })
+}
+
+fn check_here(file: &ModelFile, source: &SourceFile) -> (Option<Model>, Diagnostics) {
     let mut checker = Checker {
         file,
         source,
@@ -36,6 +49,7 @@ pub fn check(file: &ModelFile, source: &SourceFile) -> (Option<Model>, Diagnosti
         folded: Vec::new(),
         coefficients: Vec::new(),
         time_dimension: None,
+        whole_time: None,
         sizes: Vec::new(),
         growth: 0,
         nesting: 0,
@@ -82,6 +96,8 @@ struct Checker<'a> {
     nesting: usize,
     /// The unit of `t`, as the time section has it; nothing where it is not known.
     time_dimension: Option<Dimension>,
+    /// The length of the time interval, where it is sound.
+    whole_time: Option<crate::model::Expression>,
     /// The unit of the axis that a condition is normal to, while it is read.
     normal_dimension: Option<Dimension>,
 }

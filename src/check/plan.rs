@@ -21,6 +21,9 @@ use crate::syntax::tree::{
 /// Gauges that one line may make.
 const MOST_GAUGES: i64 = 10_000;
 
+/// Steps and outputs of a run: at a million steps a second this takes eleven days.
+const MOST_STEPS: i64 = 1_000_000_000_000;
+
 /// Methods that the literature names and that come later.
 const IMPLICIT: [&str; 6] = ["backward-euler", "crank-nicolson", "bdf2", "trapezoidal", "implicit", "sdirk"];
 
@@ -193,6 +196,9 @@ impl Checker<'_> {
         }
         let (start, end) = interval??;
         let (method, step) = (method??, step??);
+        if let (Step::Duration(duration), Some(at)) = (&step, first[2]) {
+            self.countable(duration, &end.clone().minus(start.clone()), at, "steps")?;
+        }
         sound.then(|| TimePlan { start, end, method, step, span: self.section_span(Section::Time) })
     }
 
@@ -237,6 +243,7 @@ impl Checker<'_> {
             .with_remedy("give the earlier time first, like `0 s to 60 s`"));
             return None;
         }
+        self.whole_time = Some(b.value.clone().minus(a.value.clone()));
         Some((a.value, b.value))
     }
 
@@ -293,6 +300,23 @@ impl Checker<'_> {
         Some(typed.value)
     }
 
+    /// Whether an interval holds a number of steps or outputs that anyone could wait for.
+    fn countable(&mut self, each: &Expression, whole: &Expression, at: Span, what: &str) -> Option<()> {
+        let most = Expression::Number(Rational::from(MOST_STEPS));
+        if self.sign(&whole.clone().minus(each.clone().times(most))) != Sign::Positive {
+            return Some(());
+        }
+        self.diagnostics.push(
+            Diagnostic::error(
+                codes_check::TOO_MANY_STEPS,
+                at,
+                format!("the time interval has more than {MOST_STEPS} of these {what}"),
+            )
+            .with_remedy("give a longer duration here, or a shorter interval"),
+        );
+        None
+    }
+
     fn fraction(&mut self, tree: &tree::Expression) -> Option<Step> {
         let typed = self.formula(tree, Place::Constant)?;
         if let Expression::Number(fraction) = &typed.value
@@ -313,6 +337,15 @@ impl Checker<'_> {
         None
     }
 
+    /// The time between outputs; how many that makes is known where the interval is sound.
+    fn every(&mut self, tree: &tree::Expression) -> Option<Expression> {
+        let every = self.duration(tree, "the time between outputs")?;
+        if let Some(whole) = self.whole_time.clone() {
+            self.countable(&every, &whole, tree.span, "outputs")?;
+        }
+        Some(every)
+    }
+
     pub(super) fn outputs(
         &mut self,
         axes: &Option<Vec<model::Axis>>,
@@ -323,7 +356,7 @@ impl Checker<'_> {
         let mut outputs: Vec<Output> = Vec::new();
         for line in &file.outputs {
             let every = match &line.every {
-                Some(duration) => self.duration(duration, "the time between outputs").map(Some),
+                Some(duration) => self.every(duration).map(Some),
                 None => Some(None),
             };
             let made = self.output(line, axes, fields);

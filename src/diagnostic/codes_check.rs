@@ -106,6 +106,9 @@ code_table! {
     NOT_POSITIVE = "E0704", "not greater than zero, or out of range",
         "Steps, fractions of the limit and distances between outputs are greater than zero; ranges lead from the first to the last.",
         wrong "step 0 s", right "step 0.9 of limit";
+    TOO_MANY_STEPS = "E0705", "more steps or outputs than a run can make",
+        "A run has at most 10¹² steps, and as many outputs of one line.",
+        wrong "0 s to 1 d\n  step 1e-300 s", right "0 s to 1 d\n  step 0.9 of limit";
     OUTSIDE = "E0801", "a place outside the grid",
         "Gauges stand inside the axes or on their ends.",
         wrong "gauge a: T at x = 2 m   # x: 0 m to 1 m", right "gauge a: T at x = 0.5 m";

@@ -1,5 +1,6 @@
 //! The one test binary.
 
+mod agreement;
 mod beyond;
 mod c_driver;
 mod cli;
@@ -13,6 +14,7 @@ mod in_process;
 mod layering;
 mod limits;
 mod lowering;
+mod mutations;
 mod published;
 mod reference;
 mod rejects;
