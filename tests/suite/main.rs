@@ -12,3 +12,4 @@ mod lowering;
 mod published;
 mod reference;
 mod syntax;
+mod waves;
