@@ -20,3 +20,4 @@ mod reference;
 mod rejects;
 mod syntax;
 mod traps;
+mod waves;
