@@ -2,6 +2,7 @@
 //! certificates of all of them. Each kind has its submodule; here is what they share.
 
 mod biased;
+mod certificates;
 mod dissipation;
 mod high_orders;
 mod one_sided;
