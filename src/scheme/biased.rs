@@ -78,17 +78,20 @@ impl BiasedPair {
 
     fn check_entries(&self, nodes: usize) -> Result<(), BiasedFault> {
         let mut sums = vec![vec![Rational::zero(); nodes]; nodes];
-        for index in 0..nodes {
+        let placed = |direction: Direction, index: usize| {
             let height = self.central.norm().weight(index, nodes);
-            let columns =
-                |first: i64| (first..).map(|column| column.rem_euclid(nodes as i64).unsigned_abs() as usize);
-            let (first, weights) = self.row(Direction::Forward, index, nodes).unwrap_or_default();
-            for (column, weight) in columns(first).zip(&weights) {
-                sums[index][column] += &height * weight;
+            let (first, weights) = self.row(direction, index, nodes).unwrap_or_default();
+            let column = |column: i64| column.rem_euclid(nodes as i64).unsigned_abs() as usize;
+            (first..).map(column).zip(weights).map(move |(column, weight)| (column, weight * &height))
+        };
+        for (index, sums) in sums.iter_mut().enumerate() {
+            for (column, entry) in placed(Direction::Forward, index) {
+                sums[column] += entry;
             }
-            let (first, weights) = self.row(Direction::Backward, index, nodes).unwrap_or_default();
-            for (column, weight) in columns(first).zip(&weights) {
-                sums[column][index] += &height * weight;
+        }
+        for (index, entries) in (0..nodes).map(|index| placed(Direction::Backward, index)).enumerate() {
+            for (column, entry) in entries {
+                sums[column][index] += entry;
             }
         }
         for (row, entries) in sums.iter().enumerate() {

@@ -24,7 +24,7 @@ pub(super) fn form<'a>(fact: &'a SecondDerivativeForm) -> Box<dyn Iterator<Item 
 
 pub(super) fn dissipation<'a>(fact: &'a Dissipation) -> Box<dyn Iterator<Item = Line> + 'a> {
     let sawtooth = || {
-        let signs = |offset: usize| if offset % 2 == 0 { 1 } else { -1 };
+        let signs = |offset: usize| if offset.is_multiple_of(2) { 1 } else { -1 };
         let interior = &fact.constant().interior;
         let products = (0..interior.len())
             .rev()
