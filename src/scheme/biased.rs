@@ -235,9 +235,11 @@ fn closed_rows(central: &SummationByParts, damping: &Dissipation, direction: Dir
                 let sum: Rational = form.iter().map(|(_, factor)| factor).sum();
                 weights[column] += sum * direction.sign();
             }
-            let first = weights.iter().take_while(|weight| weight.is_zero()).count();
-            let end = weights.iter().rposition(|weight| !weight.is_zero()).map_or(first, |last| last + 1);
-            ClosedRow { first, weights: weights[first..end].to_vec() }
+            // D₋ of order one has no way to look beyond the left end: its row there is nought.
+            let last = weights.iter().rposition(|weight| !weight.is_zero()).unwrap_or(0);
+            weights.truncate(last + 1);
+            let first = weights.iter().take_while(|weight| weight.is_zero()).count().min(last);
+            ClosedRow { first, weights: weights.split_off(first) }
         })
         .collect()
 }
