@@ -1,10 +1,10 @@
 //! Axes, constants, coefficients and fields.
 
 use super::Checker;
-use super::bounds::Extent as Size;
 use super::formula::{Bound, Place};
 use super::scope::{Kind, Typed};
-use super::units::Scale;
+use super::size::{Size, size};
+use super::units::{self, Scale};
 use crate::diagnostic::{Diagnostic, codes_check};
 use crate::model::numeric::{Point, evaluate};
 use crate::model::sign::Sign;
@@ -23,13 +23,11 @@ impl Checker<'_> {
         for line in &self.file.time {
             if let tree::TimeKind::Interval { start, end } = &line.kind {
                 let quiet = self.diagnostics.clone();
-                let sides = [start, end].map(|side| self.formula(side, Place::Constant));
+                let found =
+                    [end, start].into_iter().find_map(|side| self.formula(side, Place::Constant)?.dimension);
                 // Faults are reported when the section itself is read.
                 self.diagnostics = quiet;
-                let [Some(start), Some(end)] = sides else { return };
-                let dimension = end.dimension.or(start.dimension).unwrap_or_else(Dimension::one);
-                self.time_dimension = Some(dimension).filter(|own| own.is_one() || *own == Dimension::time());
-                return;
+                self.time_dimension = self.time_dimension.take().or(found);
             }
         }
     }
@@ -48,7 +46,7 @@ impl Checker<'_> {
                     span,
                     format!("a model has 1 to 3 axes, this one has {}", file.axes.len()),
                 )
-                .with_text("expected one, two or three axes"),
+                .with_text("expected 1 to 3 axes in all"),
             );
         }
         let mut axes = Vec::new();
@@ -65,7 +63,7 @@ impl Checker<'_> {
                     span,
                     format!("the grid has {total} nodes; at most {MOST_NODES} are possible"),
                 )
-                .with_remedy("use fewer nodes along the axes"),
+                .with_remedy("take fewer nodes along each axis"),
             );
             return None;
         }
@@ -76,9 +74,13 @@ impl Checker<'_> {
         let mut periodic = false;
         let mut sound = true;
         for (index, property) in axis.properties.iter().enumerate() {
-            if axis.properties[..index].iter().any(|other| other.kind == property.kind) {
-                self.twice(property.span, "this property of the axis");
+            let same = |known: &&tree::AxisProperty| {
+                std::mem::discriminant(&known.kind) == std::mem::discriminant(&property.kind)
+            };
+            if let Some(first) = axis.properties[..index].iter().find(same) {
+                self.stated_twice(property.span, first.span, "this property of the axis");
                 sound = false;
+                continue;
             }
             match &property.kind {
                 AxisPropertyKind::Periodic => periodic = true,
@@ -101,10 +103,7 @@ impl Checker<'_> {
             }
         };
         let (a, b) = (self.formula(low, Place::Constant), self.formula(high, Place::Constant));
-        let dimension = match (&a, &b) {
-            (Some(a), Some(b)) => b.dimension.clone().or_else(|| a.dimension.clone()),
-            _ => None,
-        };
+        let dimension = [&b, &a].into_iter().find_map(|side| side.as_ref()?.dimension.clone());
         self.scope.axes.push(dimension.clone());
         let (a, b) = (a?, b?);
         let dimension = dimension.unwrap_or_else(Dimension::one);
@@ -120,7 +119,8 @@ impl Checker<'_> {
                     axis.span,
                     format!("axis `{}` does not run upwards", axis.name.text),
                 )
-                .with_text("the first end must be less than the second"),
+                .with_text("the first end must be less than the second")
+                .with_remedy("exchange the two ends"),
             );
             sound = false;
         }
@@ -146,15 +146,6 @@ impl Checker<'_> {
             periodic,
             span: axis.span,
         })
-    }
-
-    /// Says that something is stated a second time.
-    pub(super) fn twice(&mut self, span: Span, what: &str) {
-        self.diagnostics.push(
-            Diagnostic::error(codes_check::STATED_TWICE, span, format!("{what} is stated twice"))
-                .with_text("stated again here")
-                .with_remedy("leave one of them out"),
-        );
     }
 
     /// Whether an expression of constants is greater than zero: for the whole range of free constants where that can be
@@ -214,16 +205,15 @@ impl Checker<'_> {
             && !self.has_faulty(Section::Fields)
         {
             let span = self.section_span(Section::Fields);
-            self.diagnostics.push(Diagnostic::error(
-                codes_check::SECTION_MISSING,
-                span,
-                "the model has no field",
-            ));
+            self.diagnostics.push(
+                Diagnostic::error(codes_check::SECTION_MISSING, span, "the model has no field")
+                    .with_remedy("add a line like `T in K on x`"),
+            );
         }
         let mut fields = Vec::new();
         for field in &file.fields {
             let scale = match &field.unit {
-                Some(unit) => self.unit(unit),
+                Some(unit) => units::resolve(unit, &mut self.diagnostics),
                 None => Some(Scale { factor: Expression::one(), dimension: Dimension::one() }),
             };
             self.scope.fields.push(scale.as_ref().map(|scale| scale.dimension.clone()));
@@ -243,7 +233,8 @@ impl Checker<'_> {
             let found = self.scope.axis(&axis.text);
             match self.scope.expect(axis, "an axis", found, &mut self.diagnostics) {
                 Some(id) if named.contains(&id) => {
-                    self.twice(axis.span, "this axis");
+                    let first = field.axes.iter().find(|name| name.text == axis.text).unwrap_or(axis);
+                    self.stated_twice(axis.span, first.span, &format!("the axis `{}`", axis.text));
                     sound = false;
                 }
                 Some(id) => named.push(id),
@@ -294,6 +285,14 @@ impl Checker<'_> {
         let (low, high) = (low?, high?);
         let dimension = dimension?;
         for (side, typed) in [(&bounds.low, &low), (&bounds.high, &high)] {
+            if typed.value.any(&|part| matches!(part, Expression::Constant(_))) {
+                self.diagnostics.push(
+                    Diagnostic::error(codes_check::MISPLACED, side.span, "a free constant cannot stand here")
+                        .with_text("bounds are known before the run")
+                        .with_remedy("give the bound by a number or by a constant that is not free"),
+                );
+                return None;
+            }
             if let Some(own) = typed.dimension.as_ref().filter(|own| **own != dimension) {
                 let own = own.clone();
                 self.mismatch(side.span, &own, bounds.span, &dimension, "a bound and what it bounds");
@@ -307,25 +306,20 @@ impl Checker<'_> {
                     bounds.span,
                     "the lower bound lies above the upper one",
                 )
-                .with_remedy("exchange the two"),
+                .with_remedy("exchange the two bounds"),
             );
             return None;
         }
         Some((low.value, high.value))
     }
 
-    /// Resolves every constant, used or not, so that every fault is found.
-    pub(super) fn constants(&mut self) {
+    /// Resolves every constant, coefficient and operator, used or not, so that every fault is found.
+    pub(super) fn resolve_all(&mut self) {
         for index in 0..self.file.constants.len() {
             let span = self.file.constants[index].name.span;
             self.constant(index, span);
         }
-    }
-
-    /// Resolves every coefficient, used or not.
-    pub(super) fn coefficients(&mut self) {
         // Places first, so that indices of the file and of the model agree whatever is wrong.
-        self.coefficient_extents = vec![Size::default(); self.file.coefficients.len()];
         for coefficient in &self.file.coefficients {
             self.coefficients.push(model::Coefficient {
                 name: coefficient.name.text.clone(),
@@ -333,65 +327,80 @@ impl Checker<'_> {
                 value: Expression::zero(),
             });
         }
+        self.sizes = vec![Size::default(); self.file.coefficients.len()];
         for index in 0..self.file.coefficients.len() {
             let span = self.file.coefficients[index].name.span;
             self.coefficient(index, span);
         }
+        let accuracy: Vec<_> = self.file.operators.iter().map(|operator| &operator.accuracy).collect();
+        for clauses in accuracy {
+            self.operator_order(clauses);
+        }
     }
 
-    /// Reads the body of every operator once with parameters of any unit, so that one that nobody uses is checked too.
-    pub(super) fn operators(&mut self) {
+    /// Marks what is being resolved; nothing, and one diagnostic, where it leads back to itself.
+    pub(super) fn enter(&mut self, kind: Kind, span: Span) -> Option<()> {
+        if self.failed.contains(&kind) {
+            return None;
+        }
+        let Some(first) = self.resolving.iter().position(|known| *known == kind) else {
+            self.resolving.push(kind);
+            return Some(());
+        };
+        let circle: Vec<Kind> = self.resolving[first..].to_vec();
+        self.failed.extend(&circle);
+        let names: Vec<String> =
+            circle.iter().chain([&kind]).map(|kind| self.declared(*kind).0.text.clone()).collect();
+        let (name, declared) = self.declared(kind);
+        let mut diagnostic =
+            Diagnostic::error(codes_check::CYCLE, span, format!("`{}` is defined by itself", name.text))
+                .with_text(names.join(" → "))
+                .with_remedy("break the circle: one of them must be given without the others");
+        if declared != span {
+            diagnostic = diagnostic.with_label(declared, "declared here");
+        }
+        self.diagnostics.push(diagnostic);
+        None
+    }
+
+    /// The name of something that can be resolved, and where it is declared.
+    fn declared(&self, kind: Kind) -> (&tree::Name, Span) {
+        let name = match kind {
+            Kind::Constant(index) => &self.file.constants[index].name,
+            Kind::Coefficient(index) => &self.file.coefficients[index].name,
+            Kind::Operator(index) => &self.file.operators[index].name,
+            Kind::Axis(_) | Kind::Field(_) | Kind::Faulty => panic!("only definitions are resolved"),
+        };
+        (name, name.span)
+    }
+
+    /// Reads operators that nothing uses, so that their faults are found too.
+    pub(super) fn unused_operators(&mut self) {
         let file = self.file;
         for (index, operator) in file.operators.iter().enumerate() {
-            let any = Typed { value: Expression::Field(model::FieldId(0)), dimension: None };
+            if self.applied.contains(&index) || file.fields.is_empty() {
+                continue;
+            }
+            let stand_in = Typed { value: Expression::Field(model::FieldId(0)), dimension: None };
             let parameters =
-                operator.parameters.iter().map(|name| (name.text.clone(), any.clone())).collect();
-            let order = self.operator_order(&operator.accuracy);
-            let Some(()) = self.enter(Kind::Operator(index), operator.name.span) else { continue };
-            self.convert(&operator.value, Place::Operator, &Bound { parameters, order });
-            self.resolving.pop();
-        }
-    }
-
-    /// Begins to resolve something; refused where it is being resolved already.
-    pub(super) fn enter(&mut self, kind: Kind, span: Span) -> Option<()> {
-        if self.circular.contains(&kind) {
-            return None;
-        }
-        if let Some(place) = self.resolving.iter().position(|known| *known == kind) {
-            let names: Vec<&str> =
-                self.resolving[place..].iter().chain([&kind]).map(|kind| self.declared_name(*kind)).collect();
-            let (name, way) = (names[0], names.join(" → "));
-            self.diagnostics.push(
-                Diagnostic::error(codes_check::CYCLE, span, format!("`{name}` is defined by itself"))
-                    .with_text(format!("the circle is {way}"))
-                    .with_remedy("break the circle: one of them must be given without the others"),
-            );
-            self.circular.extend_from_slice(&self.resolving[place..]);
-            return None;
-        }
-        self.resolving.push(kind);
-        Some(())
-    }
-
-    fn declared_name(&self, kind: Kind) -> &str {
-        match kind {
-            Kind::Constant(index) => &self.file.constants[index].name.text,
-            Kind::Coefficient(index) => &self.file.coefficients[index].name.text,
-            Kind::Operator(index) => &self.file.operators[index].name.text,
-            Kind::Axis(_) | Kind::Field(_) | Kind::Faulty => "",
+                operator.parameters.iter().map(|name| (name.text.clone(), stand_in.clone())).collect();
+            let bound = Bound { parameters, ..Bound::default() };
+            self.body(index, operator.name.span, Place::Operator, bound);
         }
     }
 
     /// A constant, resolved when it is first used.
     pub(super) fn constant(&mut self, index: usize, span: Span) -> Option<Typed> {
         if let Some(known) = &self.scope.constants[index] {
-            return known.clone();
+            return Some(known.clone());
         }
         self.enter(Kind::Constant(index), span)?;
         let typed = self.constant_value(index);
         self.resolving.pop();
-        self.scope.constants[index] = Some(typed.clone());
+        if typed.is_none() {
+            self.failed.insert(Kind::Constant(index));
+        }
+        self.scope.constants[index] = typed.clone();
         typed
     }
 
@@ -399,28 +408,27 @@ impl Checker<'_> {
         let file = self.file;
         let constant = &file.constants[index];
         let typed = self.formula(&constant.value, Place::Constant)?;
-        let extent = self.measured(&typed.value, constant.value.span)?;
-        let unit = match leading_unit(&constant.value) {
-            Some(unit) => self.unit(unit).map(|scale| (unit.spelling.clone(), scale)),
-            None => None,
+        let unit = match &constant.value.kind {
+            ExpressionKind::Quantity { unit, .. } => {
+                units::resolve(unit, &mut self.diagnostics).map(|scale| (unit.spelling.clone(), scale))
+            }
+            _ => None,
         };
         let dimension = typed.dimension.clone().unwrap_or_else(Dimension::one);
         let description = constant.description.as_ref().map(|text| text.text.clone());
         let typed = if constant.free.is_some() {
             let bounds = match &constant.bounds {
-                Some(bounds) => Some(self.bounds(bounds, Some(dimension.clone()))?),
+                Some(bounds) => {
+                    let (low, high) = self.bounds(bounds, Some(dimension.clone()))?;
+                    self.default_inside(constant, &typed.value, bounds.span, (&low, &high))?;
+                    Some((low, high))
+                }
                 None => None,
             };
-            if let (Some((low, high)), Some(written)) = (&bounds, &constant.bounds) {
-                self.default_within(constant, &typed.value, low, high, written.span)?;
-            }
             let (unit, scale) = match &unit {
-                Some((spelling, scale)) if scale.dimension == dimension => {
-                    (spelling.clone(), scale.factor.clone())
-                }
-                _ => (dimension.to_string(), Expression::one()),
+                Some((spelling, scale)) => (spelling.clone(), scale.factor.clone()),
+                None => (dimension.to_string(), Expression::one()),
             };
-            self.free_extents.push(extent);
             self.free.push(FreeConstant {
                 name: constant.name.text.clone(),
                 description,
@@ -444,30 +452,29 @@ impl Checker<'_> {
         Some(typed)
     }
 
-    /// The default of a free constant lies in its own range.
-    fn default_within(
+    /// A free constant begins inside its range.
+    fn default_inside(
         &mut self,
         constant: &tree::Constant,
         value: &Expression,
-        low: &Expression,
-        high: &Expression,
         range: Span,
+        (low, high): (&Expression, &Expression),
     ) -> Option<()> {
-        let outside = [value.clone().minus(low.clone()), high.clone().minus(value.clone())]
-            .iter()
-            .any(|room| self.sign(room) == Sign::Negative);
-        if !outside {
+        let below = self.sign(&value.clone().minus(low.clone())) == Sign::Negative;
+        let above = self.sign(&high.clone().minus(value.clone())) == Sign::Negative;
+        if !below && !above {
             return Some(());
         }
+        let side = if below { "below" } else { "above" };
         self.diagnostics.push(
             Diagnostic::error(
-                codes_check::BOUNDS_ORDER,
+                codes_check::DEFAULT_OUTSIDE,
                 constant.value.span,
-                format!("`{}` lies outside its own range", constant.name.text),
+                format!("the value of `{}` lies {side} its range", constant.name.text),
             )
-            .with_text("the value that holds unless another is given")
-            .with_label(range, "its range")
-            .with_remedy("widen the range, or correct the value"),
+            .with_text("the value when nothing else is given")
+            .with_label(range, "the range")
+            .with_remedy("widen the range, or give a value inside it"),
         );
         None
     }
@@ -475,23 +482,24 @@ impl Checker<'_> {
     /// A coefficient, resolved when it is first used.
     pub(super) fn coefficient(&mut self, index: usize, span: Span) -> Option<Typed> {
         if let Some(known) = &self.scope.coefficients[index] {
-            return known.clone();
+            return Some(known.clone());
         }
         let file = self.file;
         let coefficient = &file.coefficients[index];
         self.enter(Kind::Coefficient(index), span)?;
         let typed = self.coefficient_value(coefficient);
         self.resolving.pop();
-        let extent = typed.as_ref().and_then(|typed| self.measured(&typed.value, coefficient.span));
-        let typed = typed.filter(|_| extent.is_some());
-        self.scope.coefficients[index] = Some(typed.clone());
-        let (typed, extent) = (typed?, extent?);
-        self.coefficient_extents[index] = extent;
+        let Some(typed) = typed else {
+            self.failed.insert(Kind::Coefficient(index));
+            return None;
+        };
+        self.sizes[index] = size(&typed.value, &self.sizes);
         self.coefficients[index] = model::Coefficient {
             name: coefficient.name.text.clone(),
             dimension: typed.dimension.clone().unwrap_or_else(Dimension::one),
             value: typed.value.clone(),
         };
+        self.scope.coefficients[index] = Some(typed.clone());
         Some(typed)
     }
 
@@ -509,23 +517,10 @@ impl Checker<'_> {
             }
         };
         let unit = match &coefficient.unit {
-            Some(unit) => Some(self.unit(unit)?.dimension),
+            Some(unit) => Some(units::resolve(unit, &mut self.diagnostics)?.dimension),
             None => None,
         };
-        for (index, argument) in coefficient.arguments.iter().enumerate() {
-            if coefficient.arguments[..index].iter().any(|other| other.text == argument.text) {
-                self.twice(argument.span, "this argument");
-                return None;
-            }
-            let known = argument.text == "t"
-                || matches!(self.scope.kind(&argument.text), Some(Kind::Axis(_) | Kind::Field(_)));
-            self.scope.expect(
-                argument,
-                "an axis, `t` or a field",
-                known.then_some(()),
-                &mut self.diagnostics,
-            )?;
-        }
+        self.arguments(coefficient)?;
         let typed = self.formula(value, Place::Pointwise)?;
         if let (Some(wanted), Some(found)) = (&unit, &typed.dimension)
             && wanted != found
@@ -537,6 +532,26 @@ impl Checker<'_> {
         }
         self.hidden_dependence(coefficient, &typed.value)?;
         Some(Typed { dimension: typed.dimension.or(unit), value: typed.value })
+    }
+
+    /// Arguments are axes, `t` and fields, each once.
+    fn arguments(&mut self, coefficient: &tree::Coefficient) -> Option<()> {
+        let mut sound = Some(());
+        for (index, argument) in coefficient.arguments.iter().enumerate() {
+            let known = argument.text == "t"
+                || matches!(self.scope.kind(&argument.text), Some(Kind::Axis(_) | Kind::Field(_)));
+            let found = known.then_some(());
+            let what = "an axis, `t` or a field";
+            if self.scope.expect(argument, what, found, &mut self.diagnostics).is_none() {
+                sound = None;
+            }
+            let twin = coefficient.arguments[..index].iter().find(|known| known.text == argument.text);
+            if let Some(twin) = twin {
+                self.stated_twice(argument.span, twin.span, &format!("the argument `{}`", argument.text));
+                sound = None;
+            }
+        }
+        sound
     }
 
     /// The arguments name all that the coefficient depends on.
@@ -579,14 +594,5 @@ impl Checker<'_> {
             })),
         );
         None
-    }
-}
-
-/// The unit that a value is written in, where it is one quantity.
-fn leading_unit(value: &tree::Expression) -> Option<&tree::Unit> {
-    match &value.kind {
-        ExpressionKind::Quantity { unit, .. } => Some(unit),
-        ExpressionKind::Negate(inner) => leading_unit(inner),
-        _ => None,
     }
 }

@@ -60,7 +60,9 @@ impl Checker<'_> {
                         equation.span,
                         format!("`{name}` has two equations"),
                     )
-                    .with_label(span, "the first one"),
+                    .with_text("the second one")
+                    .with_label(span, "the first one")
+                    .with_remedy("leave one out, or write it for the field that it belongs to"),
                 );
                 sound = false;
             } else {
@@ -113,8 +115,7 @@ impl Checker<'_> {
                     one.span,
                     format!("the time derivative of `{name}` cancels out"),
                 )
-                .with_text("what multiplies it adds up to zero")
-                .with_remedy("check the signs of its terms"),
+                .with_text("what multiplies it is exactly zero"),
             );
             return None;
         }
@@ -127,7 +128,7 @@ impl Checker<'_> {
                     one.span,
                     format!("what multiplies the time derivative of `{name}` holds another derivative"),
                 )
-                .with_remedy("multiply the time derivative by constants, coefficients and fields only"),
+                .with_remedy("divide by it on paper, or name the derivative as a field of its own"),
             );
             return None;
         }

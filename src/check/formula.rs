@@ -2,9 +2,12 @@
 
 use super::Checker;
 use super::scope::{Kind, Typed};
+use super::size::{DEEPEST, DEEPEST_READING, digits};
 use super::units;
 use crate::diagnostic::{Diagnostic, codes_check};
 use crate::exact::Rational;
+use crate::model::calculus::dependence;
+use crate::model::sign;
 use crate::model::{self, AxisId, CoefficientId, Dimension, Expression, FieldId};
 use crate::source::Span;
 use crate::syntax::tree::{self, ExpressionKind, Operation, Sign};
@@ -28,6 +31,13 @@ pub(super) enum Place {
     Operator,
 }
 
+/// Where a function has a value.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+enum Domain {
+    Positive,
+    NotNegative,
+}
+
 impl Place {
     fn what(self) -> &'static str {
         match self {
@@ -42,13 +52,6 @@ impl Place {
     }
 }
 
-/// Where a function has a value.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
-enum Domain {
-    Positive,
-    NotNegative,
-}
-
 /// Names that stand for something else inside a named operator.
 #[derive(Clone, Debug, Default)]
 pub(super) struct Bound {
@@ -59,16 +62,19 @@ pub(super) struct Bound {
 impl Checker<'_> {
     /// A formula at a place; faults are reported and give nothing.
     pub(super) fn formula(&mut self, tree: &tree::Expression, place: Place) -> Option<Typed> {
-        self.convert(tree, place, &Bound::default())
+        let typed = self.convert(tree, place, &Bound::default())?;
+        self.bounded(typed, tree.span)
     }
 
     pub(super) fn convert(&mut self, tree: &tree::Expression, place: Place, bound: &Bound) -> Option<Typed> {
-        self.descend(tree.span)?;
+        if self.nesting >= DEEPEST_READING {
+            self.too_large(tree.span);
+            return None;
+        }
+        self.nesting += 1;
         let typed = self.convert_kind(tree, place, bound);
-        self.ascend();
-        let typed = typed?;
-        self.in_range(&typed.value, tree.span)?;
-        Some(typed)
+        self.nesting -= 1;
+        typed
     }
 
     fn convert_kind(&mut self, tree: &tree::Expression, place: Place, bound: &Bound) -> Option<Typed> {
@@ -78,13 +84,13 @@ impl Checker<'_> {
                 dimension: (!number.is_zero()).then(Dimension::one),
             }),
             ExpressionKind::Quantity { value, unit } => {
-                let scale = self.unit(unit)?;
+                let scale = units::resolve(unit, &mut self.diagnostics)?;
                 let value = Expression::Number(value.clone()).times(scale.factor);
                 Some(Typed { value, dimension: Some(scale.dimension) })
             }
             ExpressionKind::Pi => Some(Typed::number(Expression::Pi)),
             ExpressionKind::Name(name) => self.name(name, tree.span, place, bound),
-            ExpressionKind::Sum(terms) => self.sum(terms, tree.span, place, bound),
+            ExpressionKind::Sum(terms) => self.sum(terms, place, bound),
             ExpressionKind::Product(factors) => self.product(factors, place, bound),
             ExpressionKind::Negate(inner) => {
                 let inner = self.convert(inner, place, bound)?;
@@ -139,9 +145,7 @@ impl Checker<'_> {
 
     fn name(&mut self, name: &str, span: Span, place: Place, bound: &Bound) -> Option<Typed> {
         if let Some((_, typed)) = bound.parameters.iter().find(|(own, _)| own == name) {
-            let size = self.extent(&typed.value).nodes;
-            self.spend(size, span)?;
-            return Some(typed.clone());
+            return self.grow(typed.clone(), span);
         }
         if name == "t" {
             if place == Place::Constant {
@@ -157,24 +161,24 @@ impl Checker<'_> {
             Some(Kind::Faulty) => None,
             Some(Kind::Constant(index)) => {
                 let typed = self.constant(index, span)?;
-                let size = self.extent(&typed.value).nodes;
-                self.spend(size, span)?;
-                Some(typed)
+                self.grow(typed, span)
             }
             Some(Kind::Axis(_)) if place == Place::Constant => {
                 self.misplaced(span, &format!("the coordinate `{name}`"), place)
             }
             Some(Kind::Axis(index)) => Some(Typed {
                 value: Expression::Coordinate(AxisId(index)),
-                dimension: self.scope.axes.get(index).cloned().flatten(),
+                dimension: self.scope.length(AxisId(index)),
             }),
             Some(Kind::Coefficient(_)) if place == Place::Constant => {
                 self.misplaced(span, &format!("the coefficient `{name}`"), place)
             }
             Some(Kind::Coefficient(index)) => {
                 let typed = self.coefficient(index, span)?;
-                let size = self.coefficient_extents.get(index).map_or(1, |extent| extent.nodes);
-                self.spend(size, span)?;
+                if place == Place::Data && dependence(&typed.value, &self.coefficients).on_state() {
+                    let what = format!("the coefficient `{name}`, which depends on a field,");
+                    return self.misplaced(span, &what, place);
+                }
                 Some(Typed {
                     value: Expression::Coefficient(CoefficientId(index)),
                     dimension: typed.dimension,
@@ -201,12 +205,13 @@ impl Checker<'_> {
         }
     }
 
-    fn sum(&mut self, terms: &[tree::Term], span: Span, place: Place, bound: &Bound) -> Option<Typed> {
+    fn sum(&mut self, terms: &[tree::Term], place: Place, bound: &Bound) -> Option<Typed> {
         let converted: Vec<Option<Typed>> =
             terms.iter().map(|term| self.convert(&term.value, place, bound)).collect();
         let mut dimension: Option<(Dimension, Span)> = None;
         let mut sound = true;
         let mut parts = Vec::new();
+        let mut total = Rational::zero();
         for (term, typed) in terms.iter().zip(converted) {
             let Some(typed) = typed else {
                 sound = false;
@@ -223,11 +228,14 @@ impl Checker<'_> {
                     Some(_) => {}
                 }
             }
+            if let Expression::Number(number) = &typed.value {
+                total = &total + number;
+                let many = total.numerator().bits() + total.denominator().bits();
+                self.short(many, term.value.span)?;
+            }
             parts.push(if term.sign == Sign::Minus { typed.value.negative() } else { typed.value });
         }
-        sound.then_some(())?;
-        self.small_enough(parts.iter(), span)?;
-        Some(Typed { value: Expression::sum(parts), dimension: dimension.map(|(own, _)| own) })
+        sound.then(|| Typed { value: Expression::sum(parts), dimension: dimension.map(|(own, _)| own) })
     }
 
     /// Two things that must have the same dimension and have not.
@@ -255,6 +263,7 @@ impl Checker<'_> {
         let converted: Vec<Option<Typed>> =
             factors.iter().map(|factor| self.convert(&factor.value, place, bound)).collect();
         let mut total: Option<Typed> = None;
+        let mut quotients = 0;
         for (factor, typed) in factors.iter().zip(converted) {
             let typed = typed?;
             if factor.operation == Operation::Over && typed.value.is_zero() {
@@ -267,6 +276,13 @@ impl Checker<'_> {
                     .with_text("this is exactly zero"),
                 );
                 return None;
+            }
+            if factor.operation == Operation::Over && !matches!(typed.value, Expression::Number(_)) {
+                quotients += 1;
+                if quotients > DEEPEST {
+                    self.too_large(factor.value.span);
+                    return None;
+                }
             }
             total = Some(match total {
                 None => typed,
@@ -282,11 +298,11 @@ impl Checker<'_> {
                     },
                 },
             });
-            if let Some(total) = &total {
-                self.in_range(&total.value, factor.value.span)?;
-            }
+            let many = total.as_ref().map_or(0, |total| digits(&total.value));
+            self.short(many, factor.value.span)?;
         }
-        total
+        // Quotients of quotients are the one thing that grows deeper than it is written.
+        if quotients > 8 { self.bounded(total?, factors.first()?.value.span) } else { total }
     }
 
     fn power(
@@ -321,10 +337,13 @@ impl Checker<'_> {
                 );
                 return None;
             }
+            if matches!(typed.value, Expression::Number(_)) && exact.is_integer() {
+                let times = exact.abs().to_i64().map_or(u64::MAX, |times| times as u64);
+                self.short(digits(&typed.value).saturating_mul(times), base.span)?;
+            }
             if !exact.is_integer() {
                 self.within_domain(&typed.value, base.span, "a broken power", Domain::NotNegative)?;
             }
-            self.small_power(&typed.value, exact, base.span)?;
             let dimension = typed.dimension.map(|dimension| dimension.power(exact));
             return Some(Typed { value: typed.value.power(exact.clone()), dimension });
         }
@@ -410,12 +429,12 @@ impl Checker<'_> {
     /// What a function is taken of, where that is a constant whose sign is known.
     fn within_domain(&mut self, value: &Expression, span: Span, what: &str, domain: Domain) -> Option<()> {
         let is_constant = !value.any(&|node| !is_part_of_constant(node));
-        let sign = if is_constant { self.sign(value) } else { model::sign::Sign::Unknown };
+        let known = if is_constant { self.sign(value) } else { sign::Sign::Unknown };
         let (outside, expected) = match domain {
             Domain::Positive => {
-                (matches!(sign, model::sign::Sign::Negative | model::sign::Sign::Zero), "greater than zero")
+                (matches!(known, sign::Sign::Negative | sign::Sign::Zero), "greater than zero")
             }
-            Domain::NotNegative => (sign == model::sign::Sign::Negative, "not less than zero"),
+            Domain::NotNegative => (known == sign::Sign::Negative, "not less than zero"),
         };
         if !outside {
             return Some(());
@@ -427,13 +446,6 @@ impl Checker<'_> {
         None
     }
 
-    /// The scale of a unit.
-    pub(super) fn unit(&mut self, unit: &tree::Unit) -> Option<units::Scale> {
-        let scale = units::resolve(unit, &mut self.diagnostics)?;
-        self.in_range(&scale.factor, unit.span)?;
-        Some(scale)
-    }
-
     fn apply(
         &mut self,
         operator: &tree::Name,
@@ -442,14 +454,19 @@ impl Checker<'_> {
         bound: &Bound,
     ) -> Option<Typed> {
         let index = match self.scope.kind(&operator.text) {
-            Some(Kind::Operator(index)) => Some(index),
-            _ => None,
+            Some(Kind::Operator(index)) => index,
+            Some(Kind::Faulty) => return None,
+            None => {
+                self.scope.unknown(&operator.text, operator.span, &mut self.diagnostics);
+                return None;
+            }
+            Some(kind) => return self.not_an_operator(operator, kind),
         };
-        let index =
-            self.scope.expect(operator, "a named operator or a function", index, &mut self.diagnostics)?;
         let file = self.file;
         let declared = &file.operators[index];
+        self.applied.insert(index);
         if declared.parameters.len() != arguments.len() {
+            let parameters: Vec<&str> = declared.parameters.iter().map(|name| name.text.as_str()).collect();
             self.diagnostics.push(
                 Diagnostic::error(
                     codes_check::OPERATOR_ARGUMENTS,
@@ -461,6 +478,7 @@ impl Checker<'_> {
                         arguments.len()
                     ),
                 )
+                .with_text(format!("expected `{}({})`", operator.text, parameters.join(", ")))
                 .with_label(declared.name.span, "declared here"),
             );
             return None;
@@ -470,11 +488,35 @@ impl Checker<'_> {
             let typed = self.convert(argument, place, bound)?;
             inner.parameters.push((parameter.text.clone(), typed));
         }
+        self.body(index, operator.span, place, inner)
+    }
+
+    /// The value of an operator with its parameters put in.
+    pub(super) fn body(&mut self, index: usize, span: Span, place: Place, mut inner: Bound) -> Option<Typed> {
+        let file = self.file;
+        let declared = &file.operators[index];
+        self.enter(Kind::Operator(index), span)?;
         inner.order = self.operator_order(&declared.accuracy).or(inner.order);
-        self.enter(Kind::Operator(index), operator.span)?;
         let typed = self.convert(&declared.value, place, &inner);
         self.resolving.pop();
-        typed
+        self.grow(typed?, span)
+    }
+
+    fn not_an_operator(&mut self, name: &tree::Name, kind: Kind) -> Option<Typed> {
+        let remedy = match kind {
+            Kind::Coefficient(_) => format!("write `{}`: a coefficient is used by its bare name", name.text),
+            _ => format!("write `{} * (…)` if a product is meant", name.text),
+        };
+        self.diagnostics.push(
+            Diagnostic::error(
+                codes_check::WRONG_KIND,
+                name.span,
+                format!("`{}` is {} and takes no arguments", name.text, kind.word()),
+            )
+            .with_text("expected a function or a named operator before the bracket")
+            .with_remedy(remedy),
+        );
+        None
     }
 
     fn cases(

@@ -3,54 +3,59 @@
 //! All faults are reported in one go; a statement with a fault is left out and the rest is checked as if it were not there. Nothing
 //! here derives weights.
 
-mod bounds;
 pub mod conditions;
 mod declare;
 mod derive;
-mod differential;
 mod equation;
 mod formula;
-mod output;
 mod place;
 mod plan;
 pub mod raw;
 mod scope;
+mod size;
 mod units;
+mod vector;
 mod verification;
 pub mod warnings;
 
 use crate::diagnostic::{Diagnostic, Diagnostics, codes_check};
 use crate::model::{AxisId, Coefficient, Dimension, FoldedConstant, FreeConstant, Model};
 use crate::source::{SourceFile, Span};
-use crate::syntax::on_ample_stack;
 use crate::syntax::tree::{ModelFile, Section};
-use bounds::{Budget, Extent};
 use scope::Scope;
+use std::collections::HashSet;
+
+/// Bytes of stack for a check: formulas are read by descent, as deep as [`size`] allows, on whatever thread a caller has.
+const STACK: usize = 32 << 20;
 
 /// Checks a parsed file. The model is there only when nothing is wrong with it.
 pub fn check(file: &ModelFile, source: &SourceFile) -> (Option<Model>, Diagnostics) {
-    on_ample_stack(|| check_here(file, source))
+    std::thread::scope(|scope| {
+        let roomy = std::thread::Builder::new().stack_size(STACK);
+        match roomy.spawn_scoped(scope, || check_here(file, source)) {
+            Ok(thread) => thread.join().unwrap_or_else(|panic| std::panic::resume_unwind(panic)),
+            Err(_) => check_here(file, source),
+        }
+    })
 }
 
 fn check_here(file: &ModelFile, source: &SourceFile) -> (Option<Model>, Diagnostics) {
-    if file.header.is_none() && file.sections.is_empty() && file.faulty.is_empty() {
-        // Nothing could be read, and the parser has said so.
-        return (None, Diagnostics::new());
-    }
     let mut checker = Checker {
         file,
         source,
         diagnostics: Diagnostics::new(),
         scope: Scope::default(),
         resolving: Vec::new(),
-        circular: Vec::new(),
         free: Vec::new(),
         folded: Vec::new(),
         coefficients: Vec::new(),
-        free_extents: Vec::new(),
-        coefficient_extents: Vec::new(),
-        budget: Budget::default(),
         time_dimension: None,
+        whole_time: None,
+        sizes: Vec::new(),
+        growth: 0,
+        nesting: 0,
+        failed: HashSet::new(),
+        applied: HashSet::new(),
         normal: None,
     };
     let model = checker.model();
@@ -77,17 +82,23 @@ struct Checker<'a> {
     scope: Scope,
     /// Constants and coefficients that are being resolved, for cycles.
     resolving: Vec<scope::Kind>,
-    /// What was found to be defined by itself; said once.
-    circular: Vec<scope::Kind>,
     free: Vec<FreeConstant>,
     folded: Vec<FoldedConstant>,
     coefficients: Vec<Coefficient>,
-    /// How large the free constants and coefficients are.
-    free_extents: Vec<Extent>,
-    coefficient_extents: Vec<Extent>,
-    budget: Budget,
-    /// The unit of `t`, as the time section has it; nothing where a fault hides it.
+    /// What has a fault of its own that was told: uses of it are no second fault.
+    failed: HashSet<scope::Kind>,
+    /// Operators that some formula uses.
+    applied: HashSet<usize>,
+    /// One for each coefficient, those it uses put in.
+    sizes: Vec<size::Size>,
+    /// Parts that were put into formulas so far.
+    growth: u64,
+    /// How deep the formula that is being read stands.
+    nesting: usize,
+    /// The unit of `t`, as the time section has it; nothing where it is not known.
     time_dimension: Option<Dimension>,
+    /// The length of the time interval, where it is sound.
+    whole_time: Option<crate::model::Expression>,
     /// The axis that a condition is normal to, and its unit, while the condition is read.
     normal: Option<(AxisId, Option<Dimension>)>,
 }
@@ -96,12 +107,10 @@ impl Checker<'_> {
     fn model(&mut self) -> Option<(Model, Vec<raw::RawCondition>)> {
         self.scope = Scope::declare(self.file, &mut self.diagnostics);
         self.require_sections();
-        self.constants();
         self.find_time_dimension();
         let axes = self.axes();
         let fields = self.fields();
-        self.coefficients();
-        self.operators();
+        self.resolve_all();
         let equations = self.equations();
         let initial = self.initial_conditions(&equations);
         let raw = self.face_conditions();
@@ -109,9 +118,9 @@ impl Checker<'_> {
         let time = self.time();
         let outputs = self.outputs(&axes, &fields);
         let verification = self.verification();
+        self.unused_operators();
         self.bounded_axes(&axes, &equations, &outputs);
         self.rates_in_outputs(&equations, &outputs);
-        self.close_account();
         let header = self.file.header.as_ref();
         let model = Model {
             name: header.map_or_else(|| "model".to_owned(), |header| header.name.text.clone()),
@@ -176,6 +185,16 @@ impl Checker<'_> {
     /// Whether a statement of the section could not be read.
     fn has_faulty(&self, section: Section) -> bool {
         self.file.faulty.iter().any(|faulty| faulty.section == Some(section))
+    }
+
+    /// Something that may be said once.
+    fn stated_twice(&mut self, span: Span, first: Span, what: &str) {
+        self.diagnostics.push(
+            Diagnostic::error(codes_check::STATED_TWICE, span, format!("{what} is stated twice"))
+                .with_text("stated again here")
+                .with_label(first, "first stated here")
+                .with_remedy("leave one of them out"),
+        );
     }
 
     /// Something that is understood and comes later.

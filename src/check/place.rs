@@ -30,7 +30,9 @@ impl Checker<'_> {
                                 condition.span,
                                 "the start is given twice",
                             )
-                            .with_label(twin.span, "first given here"),
+                            .with_text("given again here")
+                            .with_label(twin.span, "first given here")
+                            .with_remedy("leave one of them out"),
                         );
                         sound = false;
                         continue;
@@ -48,16 +50,8 @@ impl Checker<'_> {
                     found.iter().any(|known| known.field == equation.field && known.derivative == derivative)
                 };
                 let second = equation.order == TimeOrder::Second;
-                let mut missing = Vec::new();
-                if !has(0) {
-                    missing.push(name.text.clone());
-                }
-                if second && !has(1) {
-                    missing.push(format!("∂{}/∂t", name.text));
-                }
-                if !missing.is_empty() {
-                    let what = missing.join(" and ");
-                    let lines: Vec<String> = missing.iter().map(|one| format!("{one} = …")).collect();
+                if !has(0) || second && !has(1) {
+                    let what = if has(0) { format!("∂{}/∂t", name.text) } else { name.text.clone() };
                     let why = if second {
                         " (its equation is second order in time: value and rate are needed)"
                     } else {
@@ -69,10 +63,7 @@ impl Checker<'_> {
                             name.span,
                             format!("the start of {what} is not given{why}"),
                         )
-                        .with_remedy(format!(
-                            "add `at t = start: {}` to the section `conditions`",
-                            lines.join("; ")
-                        )),
+                        .with_remedy(format!("add `at t = start: {what} = …` to the section `conditions`")),
                     );
                     sound = false;
                 }
@@ -81,15 +72,17 @@ impl Checker<'_> {
                         .iter()
                         .find(|known| known.field == equation.field && known.derivative == 1)
                         .map_or(name.span, |known| known.span);
-                    self.diagnostics.push(Diagnostic::error(
-                        codes_check::SECOND_INITIAL,
-                        span,
-                        format!(
-                            "`{}` is first order in time: its rate at the start follows from its equation",
-                            name.text
-                        ),
-                    )
-                    .with_remedy("leave it out"));
+                    self.diagnostics.push(
+                        Diagnostic::error(
+                            codes_check::SECOND_INITIAL,
+                            span,
+                            format!(
+                                "`{}` is first order in time: its rate at the start follows from its equation",
+                                name.text
+                            ),
+                        )
+                        .with_remedy("leave this start out"),
+                    );
                     sound = false;
                 }
             }
@@ -111,7 +104,8 @@ impl Checker<'_> {
                         condition.left.span,
                         "the left side of a start is a field or its rate",
                     )
-                    .with_text("expected a field, or ∂/∂t of one"),
+                    .with_text("expected a field, or ∂/∂t of one")
+                    .with_remedy("solve for the field: write `at t = start: T = …`"),
                 );
                 return None;
             }
@@ -241,7 +235,7 @@ impl Checker<'_> {
         face: Face,
         patch: Vec<model::Comparison>,
     ) -> Option<RawCondition> {
-        self.normal = Some((face.axis, self.scope.axes.get(face.axis.0).cloned().flatten()));
+        self.normal = Some((face.axis, self.scope.length(face.axis)));
         let left = self.formula(&condition.left, Place::Condition);
         let right = self.formula(&condition.right, Place::Condition);
         self.normal = None;

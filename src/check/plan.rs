@@ -1,13 +1,23 @@
-//! Accuracy and time.
+//! Accuracy, time and outputs.
 
 use super::Checker;
 use super::formula::Place;
+use super::scope::Typed;
 use crate::diagnostic::nearest::nearest;
 use crate::diagnostic::{Diagnostic, codes_check};
 use crate::exact::Rational;
-use crate::model::{Accuracy, AskedOrder, Dimension, Expression, Method, Step, TimePlan};
+use crate::model::sign::Sign;
+use crate::model::{
+    self, Accuracy, AskedOrder, Dimension, Expression, Method, Output, OutputKind, Step, TimePlan,
+};
 use crate::source::Span;
 use crate::syntax::tree::{self, AccuracyKind, AccuracyLine, ClosureFamily, OrderOf, Section, TimeKind};
+
+/// Gauges that one line may make.
+const MOST_GAUGES: i64 = 10_000;
+
+/// Steps and outputs of a run: at a million steps a second this takes eleven days.
+const MOST_STEPS: i64 = 1_000_000_000_000;
 
 /// Methods that the literature names and that come later.
 const IMPLICIT: [&str; 6] = ["backward-euler", "crank-nicolson", "bdf2", "trapezoidal", "implicit", "sdirk"];
@@ -16,17 +26,21 @@ impl Checker<'_> {
     /// The interior order of a named operator's `with` clauses.
     pub(super) fn operator_order(&mut self, clauses: &[AccuracyLine]) -> Option<usize> {
         let mut order = None;
+        let mut first: Option<Span> = None;
         for clause in clauses {
             match &clause.kind {
-                AccuracyKind::Order { axes, .. } if !axes.is_empty() => {
-                    self.not_yet(
-                        clause.span,
-                        "an operator's order along one axis",
-                        "state the order for the operator as a whole, or make an operator for each axis",
-                    );
+                AccuracyKind::Order { axes, .. } if !axes.is_empty() => self.not_yet(
+                    clause.span,
+                    "an operator's order along one axis",
+                    "state the order for the operator as a whole, or make an operator for each axis",
+                ),
+                AccuracyKind::Order { order: own, .. } => {
+                    if let Some(first) = first {
+                        self.stated_twice(clause.span, first, "the order of the operator");
+                    }
+                    first.get_or_insert(clause.span);
+                    order = self.order_in_range(own, own.span);
                 }
-                AccuracyKind::Order { .. } if order.is_some() => self.twice(clause.span, "the order"),
-                AccuracyKind::Order { order: own, .. } => order = self.order_in_range(own, own.span),
                 other => self.refuse_closures(other, clause.span),
             }
         }
@@ -69,13 +83,23 @@ impl Checker<'_> {
 
     pub(super) fn accuracy(&mut self) -> Option<Accuracy> {
         let file = self.file;
-        let mut per_axis: Vec<Option<AskedOrder>> = vec![None; file.axes.len()];
+        let mut per_axis: Vec<Option<(AskedOrder, Span)>> = vec![None; file.axes.len()];
         let mut span = None;
         let mut sound = !self.has_faulty(Section::Accuracy);
-        let mut general: Option<AskedOrder> = None;
+        let mut general: Option<(AskedOrder, Span)> = None;
+        let mut closures: Option<Span> = None;
         for line in &file.accuracy {
             let AccuracyKind::Order { order, of, axes } = &line.kind else {
-                self.refuse_closures(&line.kind, line.span);
+                match closures {
+                    Some(first) if matches!(line.kind, AccuracyKind::Closures(_)) => {
+                        self.stated_twice(line.span, first, "the family of closures");
+                        sound = false;
+                    }
+                    _ => self.refuse_closures(&line.kind, line.span),
+                }
+                if matches!(line.kind, AccuracyKind::Closures(_)) {
+                    closures.get_or_insert(line.span);
+                }
                 continue;
             };
             span.get_or_insert(line.span);
@@ -88,20 +112,22 @@ impl Checker<'_> {
                 OrderOf::Interior => AskedOrder::Interior(value),
             };
             if axes.is_empty() {
-                if general.is_some() {
-                    self.twice(line.span, "the order");
+                if let Some((_, first)) = general {
+                    self.stated_twice(line.span, first, "the order");
                     sound = false;
                 }
-                general = Some(asked);
+                general = Some((asked, line.span));
             }
             for axis in axes {
                 let found = self.scope.axis(&axis.text);
                 match self.scope.expect(axis, "an axis", found, &mut self.diagnostics) {
-                    Some(id) if per_axis[id.0].is_some() => {
-                        self.twice(axis.span, &format!("the order along `{}`", axis.text));
-                        sound = false;
+                    Some(id) => {
+                        if let Some((_, first)) = per_axis[id.0] {
+                            self.stated_twice(axis.span, first, &format!("the order along `{}`", axis.text));
+                            sound = false;
+                        }
+                        per_axis[id.0] = Some((asked, axis.span));
                     }
-                    Some(id) => per_axis[id.0] = Some(asked),
                     None => sound = false,
                 }
             }
@@ -122,7 +148,8 @@ impl Checker<'_> {
             );
             return None;
         }
-        let per_axis: Option<Vec<AskedOrder>> = per_axis.into_iter().map(|own| own.or(general)).collect();
+        let per_axis: Option<Vec<AskedOrder>> =
+            per_axis.into_iter().map(|own| own.or(general).map(|(asked, _)| asked)).collect();
         sound.then_some(())?;
         Some(Accuracy {
             span: span.unwrap_or_else(|| self.section_span(Section::Accuracy)),
@@ -133,18 +160,20 @@ impl Checker<'_> {
     pub(super) fn time(&mut self) -> Option<TimePlan> {
         let file = self.file;
         let (mut interval, mut method, mut step) = (None, None, None);
+        let mut first: [Option<Span>; 3] = [None; 3];
         let mut sound = !self.has_faulty(Section::Time);
         for line in &file.time {
-            let twice = match &line.kind {
-                TimeKind::Interval { .. } => interval.is_some(),
-                TimeKind::Method(_) => method.is_some(),
-                TimeKind::Step(_) | TimeKind::StepOfLimit(_) => step.is_some(),
+            let (first, what) = match &line.kind {
+                TimeKind::Interval { .. } => (&mut first[0], "the interval"),
+                TimeKind::Method(_) => (&mut first[1], "the method"),
+                TimeKind::Step(_) | TimeKind::StepOfLimit(_) => (&mut first[2], "the step"),
             };
-            if twice {
-                self.twice(line.span, "this");
+            if let Some(first) = *first {
+                self.stated_twice(line.span, first, what);
                 sound = false;
                 continue;
             }
+            *first = Some(line.span);
             match &line.kind {
                 TimeKind::Interval { start, end } => interval = Some(self.interval(start, end, line.span)),
                 TimeKind::Method(name) => method = Some(self.method(name)),
@@ -175,6 +204,9 @@ impl Checker<'_> {
         }
         let (start, end) = interval??;
         let (method, step) = (method??, step??);
+        if let (Step::Duration(duration), Some(at)) = (&step, first[2]) {
+            self.countable(duration, &end.clone().minus(start.clone()), at, "steps")?;
+        }
         sound.then(|| TimePlan { start, end, method, step, span: self.section_span(Section::Time) })
     }
 
@@ -193,8 +225,10 @@ impl Checker<'_> {
             self.mismatch(end.span, &second, start.span, &first, "the ends of the time interval");
             return None;
         }
-        let dimension = b.dimension.clone().or_else(|| a.dimension.clone()).unwrap_or_else(Dimension::one);
-        if !dimension.is_one() && dimension != Dimension::time() {
+        if let Some(dimension) = self.time_dimension.clone()
+            && !dimension.is_one()
+            && dimension != Dimension::time()
+        {
             self.diagnostics.push(
                 Diagnostic::error(
                     codes_check::NOT_A_TIME,
@@ -212,10 +246,11 @@ impl Checker<'_> {
                     span,
                     "the end of the time interval is not after its start",
                 )
-                .with_text("expected `START to END`, the earlier time first"),
+                .with_remedy("give the earlier time first, like `0 s to 60 s`"),
             );
             return None;
         }
+        self.whole_time = Some(b.value.clone().minus(a.value.clone()));
         Some((a.value, b.value))
     }
 
@@ -249,14 +284,14 @@ impl Checker<'_> {
     }
 
     /// A positive time.
-    pub(super) fn duration(&mut self, tree: &tree::Expression, what: &str) -> Option<Expression> {
+    fn duration(&mut self, tree: &tree::Expression, what: &str) -> Option<Expression> {
         let typed = self.formula(tree, Place::Constant)?;
-        if let Some((own, interval)) = typed.dimension.as_ref().zip(self.time_dimension.as_ref())
-            && own != interval
+        if let (Some(own), Some(time)) = (&typed.dimension, &self.time_dimension)
+            && own != time
         {
             self.diagnostics.push(
                 Diagnostic::error(codes_check::NOT_A_TIME, tree.span, format!("{what} is a time"))
-                    .with_text(format!("this is in {own}, and the time interval in {interval}")),
+                    .with_text(format!("this is in {own}, and the time interval in {time}")),
             );
             return None;
         }
@@ -267,11 +302,28 @@ impl Checker<'_> {
                     tree.span,
                     format!("{what} must be greater than zero"),
                 )
-                .with_text("expected a positive duration"),
+                .with_text("expected a positive time"),
             );
             return None;
         }
         Some(typed.value)
+    }
+
+    /// Whether an interval holds a number of steps or outputs that anyone could wait for.
+    fn countable(&mut self, each: &Expression, whole: &Expression, at: Span, what: &str) -> Option<()> {
+        let most = Expression::Number(Rational::from(MOST_STEPS));
+        if self.sign(&whole.clone().minus(each.clone().times(most))) != Sign::Positive {
+            return Some(());
+        }
+        self.diagnostics.push(
+            Diagnostic::error(
+                codes_check::TOO_MANY_STEPS,
+                at,
+                format!("the time interval has more than {MOST_STEPS} of these {what}"),
+            )
+            .with_remedy("give a longer duration here, or a shorter interval"),
+        );
+        None
     }
 
     fn fraction(&mut self, tree: &tree::Expression) -> Option<Step> {
@@ -293,4 +345,315 @@ impl Checker<'_> {
         );
         None
     }
+
+    /// The time between outputs; how many that makes is known where the interval is sound.
+    fn every(&mut self, tree: &tree::Expression) -> Option<Expression> {
+        let every = self.duration(tree, "the time between outputs")?;
+        if let Some(whole) = self.whole_time.clone() {
+            self.countable(&every, &whole, tree.span, "outputs")?;
+        }
+        Some(every)
+    }
+
+    pub(super) fn outputs(
+        &mut self,
+        axes: &Option<Vec<model::Axis>>,
+        fields: &Option<Vec<model::Field>>,
+    ) -> Option<Vec<Output>> {
+        let file = self.file;
+        let mut sound = !self.has_faulty(Section::Output);
+        let mut outputs: Vec<Output> = Vec::new();
+        for line in &file.outputs {
+            let every = match &line.every {
+                Some(duration) => self.every(duration).map(Some),
+                None => Some(None),
+            };
+            let made = self.output(line, axes, fields);
+            let (Some(every), Some(made)) = (every, made) else {
+                sound = false;
+                continue;
+            };
+            for mut output in made {
+                output.every = every.clone();
+                if let Some(twin) = outputs.iter().find(|known| known.name == output.name) {
+                    self.diagnostics.push(
+                        Diagnostic::error(
+                            codes_check::DUPLICATE_NAME,
+                            line.span,
+                            format!("the output `{}` is named twice", output.name),
+                        )
+                        .with_text("named again here")
+                        .with_label(twin.span, "first here")
+                        .with_remedy("give each output a name of its own"),
+                    );
+                    sound = false;
+                    continue;
+                }
+                outputs.push(output);
+            }
+        }
+        sound.then_some(outputs)
+    }
+
+    fn output(
+        &mut self,
+        line: &tree::OutputLine,
+        axes: &Option<Vec<model::Axis>>,
+        fields: &Option<Vec<model::Field>>,
+    ) -> Option<Vec<Output>> {
+        let span = line.span;
+        match &line.kind {
+            tree::OutputKind::Field(name) => {
+                let found = self.scope.field(&name.text);
+                let id = self.scope.expect(name, "a field", found, &mut self.diagnostics)?;
+                let dimension = self.scope.fields.get(id.0).cloned().flatten();
+                let typed = Typed { value: Expression::Field(id), dimension };
+                Some(vec![finish(&name.text, typed, OutputKind::Snapshot, fields, span)])
+            }
+            tree::OutputKind::Derived { name, value } => {
+                let typed = self.formula(value, Place::Output)?;
+                self.output_name(name)?;
+                Some(vec![finish(&name.text, typed, OutputKind::Snapshot, fields, span)])
+            }
+            tree::OutputKind::Maximum { name, value } => {
+                let typed = self.formula(value, Place::Output)?;
+                if let Some(every) = &line.every {
+                    self.diagnostics.push(
+                        Diagnostic::error(
+                            codes_check::MISPLACED,
+                            every.span,
+                            "a maximum over time is written once, at the end",
+                        )
+                        .with_text("`every` cannot stand here")
+                        .with_remedy("leave it out"),
+                    );
+                    return None;
+                }
+                self.output_name(name)?;
+                Some(vec![finish(&name.text, typed, OutputKind::Maximum, fields, span)])
+            }
+            tree::OutputKind::Integral { name, value, over } => {
+                let typed = self.formula(value, Place::Output)?;
+                self.output_name(name)?;
+                for (index, axis) in over.iter().enumerate() {
+                    let found = self.scope.axis(&axis.text);
+                    self.scope.expect(axis, "an axis", found, &mut self.diagnostics)?;
+                    if let Some(first) = over[..index].iter().find(|other| other.text == axis.text) {
+                        self.stated_twice(axis.span, first.span, &format!("the axis `{}`", axis.text));
+                        return None;
+                    }
+                }
+                if over.len() != self.file.axes.len() {
+                    self.not_yet(
+                        span,
+                        "an integral over some of the axes only",
+                        "integrate over all axes of the model",
+                    );
+                    return None;
+                }
+                let volume =
+                    self.scope.axes.iter().flatten().fold(Dimension::one(), |total, axis| total.times(axis));
+                let typed =
+                    Typed { dimension: typed.dimension.map(|own| own.times(&volume)), value: typed.value };
+                let mut output = finish(&name.text, typed, OutputKind::Integral, &None, span);
+                output.unit = output.dimension.to_string();
+                Some(vec![output])
+            }
+            tree::OutputKind::Gauge { name, value, place } => {
+                let typed = self.formula(value, Place::Output)?;
+                self.output_name(name)?;
+                let places: Vec<(tree::Name, Vec<Expression>)> = place
+                    .iter()
+                    .map(|coordinate| {
+                        Some((
+                            coordinate.axis.clone(),
+                            vec![self.coordinate(&coordinate.axis, &coordinate.value)?],
+                        ))
+                    })
+                    .collect::<Option<_>>()?;
+                let place = self.place(places, axes, span)?;
+                Some(
+                    place
+                        .into_iter()
+                        .map(|place| {
+                            finish(&name.text, typed.clone(), OutputKind::Gauge { place }, fields, span)
+                        })
+                        .collect(),
+                )
+            }
+            tree::OutputKind::Gauges { name, value, place } => {
+                let typed = self.formula(value, Place::Output)?;
+                self.output_name(name)?;
+                let mut places = Vec::new();
+                for range in place {
+                    places.push((range.axis.clone(), self.range(range)?));
+                }
+                let all = self.place(places, axes, span)?;
+                let many = all.len();
+                Some(
+                    all.into_iter()
+                        .enumerate()
+                        .map(|(index, place)| {
+                            let label = if many == 1 {
+                                name.text.clone()
+                            } else {
+                                format!("{}_{}", name.text, index + 1)
+                            };
+                            finish(&label, typed.clone(), OutputKind::Gauge { place }, fields, span)
+                        })
+                        .collect(),
+                )
+            }
+        }
+    }
+
+    /// An output may be named as anything but a field, which has a folder of that name already.
+    fn output_name(&mut self, name: &tree::Name) -> Option<()> {
+        if self.scope.field(&name.text).is_none() {
+            return Some(());
+        }
+        self.diagnostics.push(
+            Diagnostic::error(
+                codes_check::DUPLICATE_NAME,
+                name.span,
+                format!("`{}` is a field already", name.text),
+            )
+            .with_remedy("give the output a name of its own"),
+        );
+        None
+    }
+
+    fn coordinate(&mut self, axis: &tree::Name, value: &tree::Expression) -> Option<Expression> {
+        let found = self.scope.axis(&axis.text);
+        let id = self.scope.expect(axis, "an axis", found, &mut self.diagnostics)?;
+        let typed = self.formula(value, Place::Constant)?;
+        if let (Some(own), Some(wanted)) = (typed.dimension.clone(), self.scope.length(id))
+            && own != wanted
+        {
+            self.mismatch(value.span, &own, axis.span, &wanted, "a place and its axis");
+            return None;
+        }
+        let tree::Extent::Interval { low, high, .. } = &self.file.axes[id.0].extent else { return None };
+        let quiet = self.diagnostics.clone();
+        let (low, high) = (self.formula(low, Place::Constant), self.formula(high, Place::Constant));
+        self.diagnostics = quiet;
+        let (low, high) = (low?, high?);
+        let below = self.sign(&typed.value.clone().minus(low.value)) == Sign::Negative;
+        let above = self.sign(&high.value.minus(typed.value.clone())) == Sign::Negative;
+        if below || above {
+            self.diagnostics.push(
+                Diagnostic::error(
+                    codes_check::OUTSIDE,
+                    value.span,
+                    format!("this lies outside the axis `{}`", axis.text),
+                )
+                .with_text("expected a place on the axis")
+                .with_label(self.file.axes[id.0].span, "the axis"),
+            );
+            return None;
+        }
+        Some(typed.value)
+    }
+
+    /// `A to B by C`: A, A + C, … up to B.
+    fn range(&mut self, range: &tree::GaugeRange) -> Option<Vec<Expression>> {
+        let first = self.coordinate(&range.axis, &range.first)?;
+        let Some((last, by)) = &range.to else { return Some(vec![first]) };
+        let last = self.coordinate(&range.axis, last)?;
+        let distance = self.formula(by, Place::Constant)?;
+        let wanted = self.scope.axis(&range.axis.text).and_then(|id| self.scope.length(id));
+        if let Some((own, wanted)) = distance.dimension.clone().zip(wanted)
+            && own != wanted
+        {
+            self.mismatch(by.span, &own, range.axis.span, &wanted, "the distance of gauges and their axis");
+            return None;
+        }
+        let step = distance.value;
+        let (Expression::Number(a), Expression::Number(b), Expression::Number(c)) = (&first, &last, &step)
+        else {
+            self.not_yet(
+                by.span,
+                "a range of gauges that is not given by plain numbers",
+                "give the places as numbers with units",
+            );
+            return None;
+        };
+        let count = (b - a).checked_div(c).map(|count| count.floor()).and_then(|count| count.to_i64());
+        let Some(count) = count.filter(|count| (0..MOST_GAUGES).contains(count)) else {
+            self.diagnostics.push(
+                Diagnostic::error(
+                    codes_check::NOT_POSITIVE,
+                    by.span,
+                    "this distance does not lead from the first place to the last",
+                )
+                .with_text(format!("at most {MOST_GAUGES} gauges in a line")),
+            );
+            return None;
+        };
+        Some((0..=count).map(|index| Expression::Number(a + &(c * &Rational::from(index)))).collect())
+    }
+
+    /// All combinations of coordinates, one for each axis.
+    fn place(
+        &mut self,
+        given: Vec<(tree::Name, Vec<Expression>)>,
+        axes: &Option<Vec<model::Axis>>,
+        span: Span,
+    ) -> Option<Vec<Vec<Expression>>> {
+        let mut places: Vec<Vec<Expression>> = vec![Vec::new()];
+        for axis in axes.as_ref()? {
+            let mut of_axis = given.iter().filter(|(name, _)| name.text == axis.name);
+            let (Some((_, values)), None) = (of_axis.next(), of_axis.next()) else {
+                self.diagnostics.push(
+                    Diagnostic::error(
+                        codes_check::PLACE_INCOMPLETE,
+                        span,
+                        format!("a place needs one coordinate along `{}`", axis.name),
+                    )
+                    .with_remedy(format!("write `at {} = …`, one for each axis", axis.name)),
+                );
+                return None;
+            };
+            places = places
+                .into_iter()
+                .flat_map(|place| {
+                    values
+                        .iter()
+                        .map(move |value| place.iter().cloned().chain([value.clone()]).collect::<Vec<_>>())
+                })
+                .collect();
+            if places.len() as i64 > MOST_GAUGES {
+                self.diagnostics.push(
+                    Diagnostic::error(
+                        codes_check::NOT_POSITIVE,
+                        span,
+                        format!("more than {MOST_GAUGES} gauges in a line"),
+                    )
+                    .with_remedy("write a field instead, and read the places from its file"),
+                );
+                return None;
+            }
+        }
+        Some(places)
+    }
+}
+
+/// An output in the unit of a field of the same dimension, or in SI.
+fn finish(
+    name: &str,
+    typed: Typed,
+    kind: OutputKind,
+    fields: &Option<Vec<model::Field>>,
+    span: Span,
+) -> Output {
+    let dimension = typed.dimension.unwrap_or_else(Dimension::one);
+    let like = match Checker::plain_field(&typed.value) {
+        Some(id) => fields.as_ref().and_then(|fields| fields.get(id.0)),
+        None => fields.iter().flatten().find(|field| field.dimension == dimension),
+    };
+    let (unit, scale) = match like {
+        Some(field) => (field.unit.clone(), field.scale.clone()),
+        None => (dimension.to_string(), Expression::one()),
+    };
+    Output { name: name.to_owned(), dimension, unit, scale, value: typed.value, kind, every: None, span }
 }

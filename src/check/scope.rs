@@ -10,7 +10,7 @@ use crate::syntax::names::reserved;
 use crate::syntax::tree::{ModelFile, Name};
 
 /// What a name was declared as; indices are places in the lists of the file.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Hash)]
 pub(super) enum Kind {
     Axis(usize),
     Constant(usize),
@@ -34,7 +34,7 @@ impl Kind {
     }
 }
 
-/// An expression in SI with its dimension; no dimension is the literal zero, which takes any.
+/// An expression in SI with its dimension. None is that of the literal zero, which takes any, and of what has a fault elsewhere.
 #[derive(Clone, Debug)]
 pub(super) struct Typed {
     pub(super) value: Expression,
@@ -51,12 +51,12 @@ impl Typed {
 #[derive(Debug, Default)]
 pub(super) struct Scope {
     kinds: HashMap<String, (Kind, Span)>,
-    /// Nothing where a fault hides it: then it agrees with any.
+    /// Nothing where a fault hides it.
     pub(super) axes: Vec<Option<Dimension>>,
     pub(super) fields: Vec<Option<Dimension>>,
-    /// One for each constant and coefficient, once resolved; within, nothing where it has a fault.
-    pub(super) constants: Vec<Option<Option<Typed>>>,
-    pub(super) coefficients: Vec<Option<Option<Typed>>>,
+    /// One for each constant and coefficient, once resolved.
+    pub(super) constants: Vec<Option<Typed>>,
+    pub(super) coefficients: Vec<Option<Typed>>,
 }
 
 impl Scope {
@@ -144,10 +144,12 @@ impl Scope {
         for operator in &file.operators {
             for (index, parameter) in operator.parameters.iter().enumerate() {
                 let twin = operator.parameters[..index].iter().find(|other| other.text == parameter.text);
-                let other = twin.map(|twin| (twin.span, "another parameter".to_owned())).or_else(|| {
-                    self.kinds.get(&parameter.text).map(|(kind, span)| (*span, kind.word().to_owned()))
-                });
-                let Some((first, what)) = other else { continue };
+                let known = self.kinds.get(&parameter.text);
+                let (first, what) = match (twin, known) {
+                    (Some(twin), _) => (twin.span, "another parameter"),
+                    (None, Some((kind, span))) => (*span, kind.word()),
+                    (None, None) => continue,
+                };
                 diagnostics.push(
                     Diagnostic::error(
                         codes_check::DUPLICATE_NAME,
@@ -164,6 +166,11 @@ impl Scope {
 
     pub(super) fn kind(&self, name: &str) -> Option<Kind> {
         self.kinds.get(name).map(|(kind, _)| *kind)
+    }
+
+    /// The unit of length along an axis; nothing where it is not known.
+    pub(super) fn length(&self, axis: AxisId) -> Option<Dimension> {
+        self.axes.get(axis.0).cloned().flatten()
     }
 
     pub(super) fn axis(&self, name: &str) -> Option<AxisId> {
@@ -215,7 +222,7 @@ impl Scope {
                 .with_text("not a name of this model");
         diagnostic = match nearest(name, names) {
             Some(near) => diagnostic.with_remedy(format!("did you mean `{near}`?")),
-            None => diagnostic.with_remedy("declare it in the section where it belongs"),
+            None => diagnostic.with_remedy("declare it, for example under `constants`, or correct the name"),
         };
         diagnostics.push(diagnostic);
     }

@@ -1,5 +1,7 @@
 //! Verification: exact and manufactured solutions and the grids on which they are compared.
 
+use std::collections::BTreeMap;
+
 use super::Checker;
 use super::formula::Place;
 use crate::diagnostic::{Diagnostic, codes_check};
@@ -19,28 +21,40 @@ impl Checker<'_> {
         }
         let mut result = Verification { solutions: Vec::new(), manufactured: false, grids: Vec::new() };
         let mut sound = !self.has_faulty(Section::Verification);
+        let mut first: BTreeMap<FieldId, Span> = BTreeMap::new();
+        let mut grids_at: Option<Span> = None;
         for line in &file.verification {
             match &line.kind {
                 VerificationKind::Exact { field, value }
                 | VerificationKind::Manufactured { field, value } => {
                     result.manufactured |= matches!(line.kind, VerificationKind::Manufactured { .. });
                     match self.solution(field, value) {
-                        Some((id, _)) if result.solutions.iter().any(|(known, _)| *known == id) => {
-                            self.twice(line.span, "this solution");
-                            sound = false;
-                        }
-                        Some(solution) => result.solutions.push(solution),
+                        Some((id, value)) => match first.get(&id) {
+                            Some(first) => {
+                                let what = format!("the solution of `{}`", field.text);
+                                self.stated_twice(line.span, *first, &what);
+                                sound = false;
+                            }
+                            None => {
+                                first.insert(id, line.span);
+                                result.solutions.push((id, value));
+                            }
+                        },
                         None => sound = false,
                     }
                 }
-                VerificationKind::Grids(_) if !result.grids.is_empty() => {
-                    self.twice(line.span, "the list of grids");
-                    sound = false;
+                VerificationKind::Grids(grids) => {
+                    if let Some(first) = grids_at {
+                        self.stated_twice(line.span, first, "the list of grids");
+                        sound = false;
+                        continue;
+                    }
+                    grids_at = Some(line.span);
+                    match self.grids(grids, line.span) {
+                        Some(grids) => result.grids = grids,
+                        None => sound = false,
+                    }
                 }
-                VerificationKind::Grids(grids) => match self.grids(grids, line.span) {
-                    Some(grids) => result.grids = grids,
-                    None => sound = false,
-                },
             }
         }
         sound.then_some(())?;
@@ -61,9 +75,7 @@ impl Checker<'_> {
                 span,
                 "these grids cannot show an order of convergence",
             )
-            .with_text(format!(
-                "expected two or more counts from 2 to {MOST_NODES}, each larger than the last"
-            ))
+            .with_text(format!("expected two or more node counts that increase, from 2 to {MOST_NODES}"))
             .with_remedy("write `grids 17, 33, 65`, say"),
         );
         None
@@ -72,12 +84,10 @@ impl Checker<'_> {
     /// A verification has grids and something to compare with: exact solutions, or a manufactured one of every field.
     fn complete(&mut self, result: &Verification) -> Option<()> {
         let file = self.file;
-        let kinds =
-            |wanted: fn(&VerificationKind) -> bool| file.verification.iter().any(|line| wanted(&line.kind));
-        let exact = kinds(|kind| matches!(kind, VerificationKind::Exact { .. }));
+        let exact = file.verification.iter().any(|line| matches!(line.kind, VerificationKind::Exact { .. }));
         let lacking: Vec<String> = (file.fields.iter().enumerate())
             .filter(|(index, _)| !result.solutions.iter().any(|(id, _)| id.0 == *index))
-            .map(|(_, field)| format!("manufactured {} = …", field.name.text))
+            .map(|(_, field)| format!("`manufactured {} = …`", field.name.text))
             .collect();
         let (message, remedy) = if result.solutions.is_empty() {
             ("there is no solution to compare with", "add a line like `exact T = …`".to_owned())
@@ -85,7 +95,7 @@ impl Checker<'_> {
             ("the grids are not stated", "add a line like `grids 17, 33, 65`".to_owned())
         } else if exact && result.manufactured {
             (
-                "a solution is exact or manufactured, not both",
+                "solutions are exact or manufactured, not both",
                 "write all lines with `manufactured`: sources are then derived for every field".to_owned(),
             )
         } else if result.manufactured && !lacking.is_empty() {
@@ -96,14 +106,9 @@ impl Checker<'_> {
         } else {
             return Some(());
         };
-        self.diagnostics.push(
-            Diagnostic::error(
-                codes_check::VERIFICATION_INCOMPLETE,
-                self.section_span(Section::Verification),
-                message,
-            )
-            .with_remedy(remedy),
-        );
+        let span = self.section_span(Section::Verification);
+        self.diagnostics
+            .push(Diagnostic::error(codes_check::VERIFICATION_INCOMPLETE, span, message).with_remedy(remedy));
         None
     }
 
@@ -111,9 +116,10 @@ impl Checker<'_> {
         let found = self.scope.field(&field.text);
         let id = self.scope.expect(field, "a field", found, &mut self.diagnostics)?;
         let typed = self.formula(value, Place::Data)?;
-        let wanted = self.scope.fields.get(id.0).cloned().flatten()?;
-        if let Some(own) = typed.dimension.as_ref().filter(|own| **own != wanted) {
-            let own = own.clone();
+        let wanted = self.scope.fields.get(id.0).cloned().flatten();
+        if let (Some(own), Some(wanted)) = (typed.dimension.clone(), wanted)
+            && own != wanted
+        {
             self.mismatch(value.span, &own, field.span, &wanted, "a solution and its field");
             return None;
         }

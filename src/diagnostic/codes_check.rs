@@ -31,15 +31,15 @@ code_table! {
     DIVISION_BY_ZERO = "E0218", "a division by zero",
         "What is below the line is exactly zero.",
         wrong "k = 1 / 0", right "k = 1";
-    NO_VALUE = "E0219", "a root, power or logarithm that has no value",
+    FORMULA_TOO_LARGE = "E0219", "a formula that grows too large",
+        "Constants, coefficients and operators may build on each other, but with everything put in a formula has at most 5000 parts, at most 300 deep: each of them is worked through at every node. A chain in which every name holds the one before twice doubles its size with each line.",
+        wrong "a_1(x) = a_0 * a_0\na_2(x) = a_1 * a_1   # … and so on to a_60", right "a_60(x) = exp(2^60 * log(a_0))";
+    NUMBER_OUT_OF_RANGE = "E0220", "a number beyond what a run can hold",
+        "Numbers are exact here, but a run computes with doubles, in SI base units: a number is zero or has a size between about 1e-307 and 1e308.",
+        wrong "L = 1e400 m", right "L = 1e4 m";
+    NO_VALUE = "E0221", "a root, power or logarithm that has no value",
         "Roots and broken powers are taken of numbers that are not negative, logarithms of positive ones. Where a constant shows that there is no value, the model is refused; what depends on place or state is looked at when it runs.",
         wrong "a = sqrt(1 - 2)", right "a = sqrt(2 - 1)";
-    NUMBER_RANGE = "E0220", "a number that is too large, too small or too long",
-        "Constants are exact, and programs compute with doubles, which hold numbers from about 1e-300 to 1e300. An exact number may have some thousand digits on the way, no more.",
-        wrong "a = 1e200\nb = a * a", right "a = 1e20\nb = a * a";
-    TOO_MUCH = "E0221", "formulas that are too large when written out",
-        "Names stand for formulas, which are made of names. Written out, the formulas of a model may have two hundred thousand parts together and be six hundred levels deep; a few lines that each use the line above twice would otherwise ask for more than any computer has.",
-        wrong "a(x) = x + x\nb(x) = a + a\nc(x) = b + b   # and so on, thirty times", right "a(x) = 2 * x\nb(x) = 2 * a";
     UNKNOWN_UNIT = "E0301", "an unknown unit",
         "Units are those of the SI, with prefixes, and min, h, d, °. A unit has no space in it; products are written with `·`, and after `/` stands one factor or a bracket.",
         wrong "3 furlong", right "603.5 m";
@@ -95,7 +95,7 @@ code_table! {
         "Orders go from 1 to 16; with boundaries the offered closures set a lower bound.",
         wrong "order 40", right "order 4";
     STATED_TWICE = "E0602", "something that is stated twice",
-        "The order, the interval, the method, the step and each solution are stated once.",
+        "Properties of an axis, the axes of a field, the arguments of a coefficient, the order, the closures, the interval, the method, the step, the grids and each solution are stated once.",
         wrong "order 2\norder 4", right "order 4";
     UNKNOWN_METHOD = "E0701", "an unknown time method",
         "The methods are euler, ssprk3, rk4, lsrk4 and leapfrog, by their names in the literature.",
@@ -109,6 +109,9 @@ code_table! {
     NOT_POSITIVE = "E0704", "not greater than zero, or out of range",
         "Steps, fractions of the limit and distances between outputs are greater than zero; ranges lead from the first to the last.",
         wrong "step 0 s", right "step 0.9 of limit";
+    TOO_MANY_STEPS = "E0705", "more steps or outputs than a run can make",
+        "A run has at most 10¹² steps, and as many outputs of one line.",
+        wrong "0 s to 1 d\n  step 1e-300 s", right "0 s to 1 d\n  step 0.9 of limit";
     OUTSIDE = "E0801", "a place outside the grid",
         "Gauges stand inside the axes or on their ends.",
         wrong "gauge a: T at x = 2 m   # x: 0 m to 1 m", right "gauge a: T at x = 0.5 m";
@@ -139,4 +142,7 @@ code_table! {
     BOUNDS_ORDER = "E0914", "bounds in the wrong order",
         "`between A and B` has the lower bound first.",
         wrong "between 1 and 0", right "between 0 and 1";
+    DEFAULT_OUTSIDE = "E0915", "a value outside its range",
+        "A free constant has the value of the model when a run gives none, so that value lies in the range that `between` states.",
+        wrong "f = 8, free between 0 and 5", right "f = 8, free between 0 and 50";
 }

@@ -3,6 +3,7 @@
 //! Each order is derived once a process and kept. The derivations are in the submodules; nothing is
 //! tabulated but which orders there are and how many rows they close.
 
+mod biased;
 mod dissipation;
 mod first_derivative;
 mod second_derivative;
@@ -14,8 +15,9 @@ use std::sync::{Arc, OnceLock};
 
 use crate::exact::{Inconsistent, Rational};
 use crate::scheme::{
-    DifferenceOperator, Dissipation, DissipationFault, FormFault, Norm, NormFault, OperatorFault,
-    SecondDerivativeForm, SquaresFault, StaggeredFault, StaggeredPair, SummationByParts, SummationFault,
+    BiasedFault, BiasedPair, DifferenceOperator, Dissipation, DissipationFault, FormFault, Norm, NormFault,
+    OperatorFault, SecondDerivativeForm, SquaresFault, StaggeredFault, StaggeredPair, StencilFault,
+    SummationByParts, SummationFault,
 };
 
 use super::WeightsFault;
@@ -38,6 +40,18 @@ const STAGGERED_RECIPES: [staggered::Recipe; 4] = [
     staggered::Recipe { order: 6, at_nodes: 6, at_halves: 5 },
     staggered::Recipe { order: 8, at_nodes: 9, at_halves: 8 },
 ];
+
+/// The central parts of biased pairs of even order: their interior is one node wider to each side than the
+/// centred one. Tidied as coarsely as keeps the spectral radius (at order 8 multiples of 1/256 break it).
+const BIASED_RECIPES: [Recipe; 4] = [
+    Recipe { order: 2, closed_rows: 2, tidy_denominator: None },
+    Recipe { order: 4, closed_rows: 4, tidy_denominator: None },
+    Recipe { order: 6, closed_rows: 6, tidy_denominator: Some(256) },
+    Recipe { order: 8, closed_rows: 8, tidy_denominator: Some(1 << 14) },
+];
+
+/// The orders of biased pairs.
+const BIASED_ORDERS: [usize; 2 * BIASED_RECIPES.len()] = [1, 2, 3, 4, 5, 6, 7, 8];
 
 /// The closed orders. Order 6 keeps the untidied optimum, which is a published operator (Del Rey Fernández
 /// et al. 2014, Computers & Fluids); from order 8 on the optimum's fractions have 166 to 2300 characters and
@@ -97,6 +111,10 @@ pub enum Impossible {
     Form(FormFault),
     /// The dissipation was refused.
     Dissipation(DissipationFault),
+    /// The biased pair was refused.
+    Biased(BiasedFault),
+    /// The central part of a biased interior was refused.
+    Stencil(StencilFault),
     /// The staggered pair was refused.
     Staggered(StaggeredFault),
 }
@@ -197,6 +215,36 @@ pub fn staggered_orders() -> [usize; STAGGERED_RECIPES.len()] {
     STAGGERED_RECIPES.map(|recipe| recipe.order)
 }
 
+/// The biased pair D± on an axis with two ends. Even interior orders 2p keep the closure order p; odd ones
+/// 2p − 1 cannot have more than p − 1.
+pub fn biased_pair(order: usize) -> Result<&'static BiasedPair, ClosureFault> {
+    static KEPT: [OnceLock<Result<BiasedPair, ClosureFault>>; BIASED_ORDERS.len()] =
+        [const { OnceLock::new() }; BIASED_ORDERS.len()];
+    kept(&KEPT, &BIASED_ORDERS, order, derive_biased_pair)
+}
+
+/// The biased pair on a periodic axis.
+pub fn periodic_biased_pair(order: usize) -> Result<&'static BiasedPair, ClosureFault> {
+    static KEPT: [OnceLock<Result<BiasedPair, ClosureFault>>; BIASED_ORDERS.len()] =
+        [const { OnceLock::new() }; BIASED_ORDERS.len()];
+    kept(&KEPT, &BIASED_ORDERS, order, |order| Ok(biased::periodic(order)?))
+}
+
+/// [`biased_pair`], derived afresh but for the first derivative that an odd order starts from.
+pub fn derive_biased_pair(order: usize) -> Result<BiasedPair, ClosureFault> {
+    if order % 2 == 1 && BIASED_ORDERS.contains(&order) {
+        return Ok(biased::odd(first_derivative(order + 1)?, order)?);
+    }
+    let recipe = BIASED_RECIPES.iter().find(|recipe| recipe.order == order);
+    let not_available = || ClosureFault::NotAvailable { order, available: BIASED_ORDERS.to_vec() };
+    Ok(biased::even(recipe.ok_or_else(not_available)?)?)
+}
+
+/// The orders of biased pairs.
+pub fn biased_orders() -> [usize; BIASED_ORDERS.len()] {
+    BIASED_ORDERS
+}
+
 /// [`first_derivative`], derived afresh.
 pub fn derive_first_derivative(order: usize) -> Result<SummationByParts, ClosureFault> {
     Ok(first_derivative::closed(recipe(order)?)?)
@@ -278,6 +326,8 @@ impl fmt::Display for Impossible {
             Impossible::Form(fault) => fault.fmt(formatter),
             Impossible::Dissipation(fault) => fault.fmt(formatter),
             Impossible::Staggered(fault) => fault.fmt(formatter),
+            Impossible::Biased(fault) => fault.fmt(formatter),
+            Impossible::Stencil(fault) => fault.fmt(formatter),
         }
     }
 }
@@ -312,6 +362,8 @@ carried! {
     FormFault => Form,
     DissipationFault => Dissipation,
     StaggeredFault => Staggered,
+    BiasedFault => Biased,
+    StencilFault => Stencil,
 }
 
 impl From<Inconsistent> for Impossible {

@@ -268,7 +268,7 @@ fn lifetime(context: &Context, routines: &Routines, fills: &[String]) -> String 
     text.line("s->points = (ptrdiff_t)points;");
     text.line(&format!("s->rows = s->points / s->nodes[{fast}];"));
     text.comment("A parallel region costs more than it brings on small grids.");
-    text.line("s->team = s->points <= 20000 || threads < 1 ? 1 : threads > 4096 ? 4096 : threads;");
+    text.line("s->team = s->points <= LEAST_SHARED || threads < 1 ? 1 : threads > 4096 ? 4096 : threads;");
     text.line("s->memory = sizeof *s;");
     text.line("int complete = 1;");
     for member in &context.buffers {
@@ -482,10 +482,7 @@ fn interface(context: &Context, routines: &Routines) -> String {
     function(&mut text, &head, &["s", "time", "step"], &first);
     let head = format!("double {p}_largest_rate({p}_solver *s, double time)");
     function(&mut text, &head, &["s", "time"], &[format!("return {}", routines.largest_rate)]);
-    let mut step = vec!["s->last_step = step".to_owned()];
-    step.extend(routines.step.iter().chain(&swaps).cloned());
-    let head = format!("void {p}_advance({p}_solver *s, double time, double step, double next)");
-    function(&mut text, &head, &["s", "time", "step", "next"], &step);
+    super::wave::steps(context, routines, &swaps).lines().for_each(|line| text.verbatim(line));
 
     let fields: Vec<String> =
         kernel.fields.iter().map(|field| format!("return s->{}", context.buffers[field.buffer.0])).collect();

@@ -57,6 +57,8 @@ swap largest fixed_values axis_list parameter_list field_list output_list quadra
 quadrature_list quadrature_counts model_lines model_text description describe arrays kernel
 f b g c i k stride b_stride high forward b_forward turn from columns column sum entry entries factor term blocks
 block number width weight start result
+passes step_shift ends period arrays periodic near_cache far_cache most_steps pass_shift step_part rotate slab_count
+slab_begins wave_length wave_steps band wave plain least_shared
 ";
 
 /// Names of an axis in program text.
@@ -218,6 +220,36 @@ impl<'a> Context<'a> {
             Operation::Step => "dt".to_owned(),
             _ => entry.hint.clone().unwrap_or_else(|| "c".to_owned()),
         }
+    }
+
+    /// The head of the C function that runs a pass on some rows, from `low` to before `high`.
+    pub fn part_head(&self, name: &str, uses: [bool; 2]) -> String {
+        let whole = self.pass_head(&format!("{name}_part"), uses, false);
+        whole.replace(") {", ", ptrdiff_t low, ptrdiff_t high) {")
+    }
+
+    /// The C function that runs a pass on all rows, shared by the threads.
+    pub fn whole_pass(&self, name: &str, uses: [bool; 2]) -> String {
+        let typed = uses.into_iter().zip([", t", ", dt"]).filter(|(used, _)| *used);
+        let numbers: String = typed.map(|(_, number)| number).collect();
+        let slabs = self.slabs();
+        let head = self.pass_head(name, uses, false);
+        format!(
+            "{head}\n    const ptrdiff_t parts = s->team, rows = {slabs};\n    ROWS_IN_PARALLEL\n    \
+             for (ptrdiff_t part = 0; part < parts; part++) {{\n        \
+             {name}_part(s{numbers}, rows * part / parts{0}, rows * (part + 1) / parts{0});\n    }}\n}}\n",
+            self.slab_rows()
+        )
+    }
+
+    /// What threads and plans share out: indices of the slowest axis.
+    pub fn slabs(&self) -> &'static str {
+        "s->nodes[0]"
+    }
+
+    /// What turns a slab's index into that of its first row (of its node, where there is one axis).
+    pub fn slab_rows(&self) -> &'static str {
+        if self.axes.len() == 3 { " * s->nodes[1]" } else { "" }
     }
 
     /// The head of a function that runs a pass; `uses` tells whether it takes time and step.

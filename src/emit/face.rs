@@ -1,6 +1,7 @@
 //! Face passes as functions: buffers set at the nodes of one face.
 
 use super::context::Context;
+use super::language::Language;
 use super::leaves::Leaves;
 use super::sweep::Routine;
 use super::text::Text;
@@ -8,7 +9,7 @@ use crate::kernel::{BufferId, FaceWrite, Source, ValueId};
 
 /// Prints a face pass.
 pub fn face(context: &Context, pass: &FaceWrite, wish: &str) -> Routine {
-    let name = context.function_name(wish, &[]);
+    let name = context.function_name(wish, &["_part"]);
     let written: Vec<BufferId> = pass.writes.iter().map(|write| write.buffer).collect();
     let values: Vec<ValueId> = pass.writes.iter().map(|write| write.value).collect();
     let mut roots = values.clone();
@@ -34,10 +35,20 @@ pub fn face(context: &Context, pass: &FaceWrite, wish: &str) -> Routine {
     let uses = [function.mentions("t"), function.mentions("dt")];
     let mut text = Text::default();
     text.comment(&format!("Sets what is given at the {side} face of {}.", axis.name));
-    text.open(&context.pass_head(&name, uses, false));
+    text.open(&match context.language {
+        Language::C => context.part_head(&name, uses),
+        Language::Rust => context.pass_head(&name, uses, false),
+    });
     text.append(&function);
     text.close("}");
-    Routine { text: text.into_string(), name, uses_time: uses[0], uses_step: uses[1], scratch_rows: 0 }
+    Routine {
+        text: text.into_string(),
+        whole: (context.language == Language::C).then(|| context.whole_pass(&name, uses)),
+        name,
+        uses_time: uses[0],
+        uses_step: uses[1],
+        scratch_rows: 0,
+    }
 }
 
 /// Opens loops over the outer axes of the face and fixes the index of an outer face. Returns the number of open loops.
@@ -46,12 +57,25 @@ fn open_outer(context: &Context, text: &mut Text, pass: &FaceWrite) -> usize {
     for (axis, names) in context.axes[..context.fast()].iter().enumerate() {
         if axis == pass.on.axis {
             text.line(&context.language.index(&names.index, &on_face(context, pass)));
+            if axis == 0 && context.language == Language::C {
+                text.open(&format!("if ({0} >= low{1} && {0} < high{1}) {{", names.index, slab(context)));
+                opened += 1;
+            }
+        } else if axis == 0 && context.language == Language::C {
+            let (low, high) = (format!("low{}", slab(context)), format!("high{}", slab(context)));
+            text.open(&context.language.count(&names.index, &low, &high));
+            opened += 1;
         } else {
             text.open(&context.language.count(&names.index, "0", &names.count));
             opened += 1;
         }
     }
     opened
+}
+
+/// What turns a row's number into the index of the slowest axis.
+fn slab(context: &Context) -> String {
+    if context.axes.len() == 3 { format!(" / {}", context.axes[1].count) } else { String::new() }
 }
 
 fn on_face(context: &Context, pass: &FaceWrite) -> String {
@@ -93,6 +117,13 @@ fn nodes(context: &Context, leaves: &Leaves, pass: &FaceWrite, values: &[ValueId
     }
     let mut whole = Text::indented(depth);
     whole.line(&language.index(&names.index, &on_face(context, pass)));
+    let guarded = fast == 0 && language == Language::C;
+    if guarded {
+        whole.open(&format!("if ({0} >= low && {0} < high) {{", names.index));
+    }
     whole.append(&text);
+    if guarded {
+        whole.close("}");
+    }
     whole
 }

@@ -20,6 +20,7 @@ mod rust;
 pub mod rust_driver;
 mod sweep;
 mod text;
+mod wave;
 pub mod weights;
 
 pub use language::Language;

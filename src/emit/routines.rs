@@ -3,10 +3,12 @@
 use super::context::{Context, is_literal};
 use super::expression::Met;
 use super::face::face;
+use super::language::Language;
 use super::leaves::Leaves;
 use super::literal;
 use super::sweep::{Job, Routine, Target, sweep};
 use super::text::Text;
+use super::wave::has_wave;
 use crate::exact::Rational;
 use crate::kernel::{Extent, OutputKind, Pass, Stage, Sweep};
 
@@ -18,6 +20,8 @@ pub struct Routines {
     pub start: Vec<String>,
     pub first_step: Vec<String>,
     pub step: Vec<String>,
+    /// In C, calls of the step's passes for the rows from `low` to before `high`.
+    pub step_parts: Vec<String>,
     /// The call that returns the largest rate; it names `time`.
     pub largest_rate: String,
     /// For each output the calls that fill its buffer; they name `time`.
@@ -36,14 +40,27 @@ pub fn routines(context: &Context) -> Routines {
         start: Vec::new(),
         first_step: Vec::new(),
         step: Vec::new(),
+        step_parts: Vec::new(),
         largest_rate: String::new(),
         outputs: Vec::new(),
         begins: Vec::new(),
         scratch_rows: 0,
     };
-    all.start = stages(context, &kernel.start, "start", &mut all);
-    all.first_step = stages(context, &kernel.first_step, "first_step", &mut all);
-    all.step = stages(context, &kernel.step, "advance", &mut all);
+    let passes = |stages: &[Stage], wish: &str, all: &mut Routines| -> Vec<String> {
+        let list = stage_passes(context, stages, wish);
+        list.iter().for_each(|(routine, _)| all.add(routine));
+        list.iter().map(|(routine, time)| routine.call(time, "step")).collect()
+    };
+    all.start = passes(&kernel.start, "start", &mut all);
+    all.first_step = passes(&kernel.first_step, "first_step", &mut all);
+    if context.language == Language::C && has_wave(context) {
+        for (routine, time) in stage_passes(context, &kernel.step, "advance") {
+            all.add_part(&routine);
+            all.step_parts.push(routine.part_call(&time, "step"));
+        }
+    } else {
+        all.step = passes(&kernel.step, "advance", &mut all);
+    }
     all.largest_rate = limit(context, &mut all);
     for output in &kernel.outputs {
         let wish = format!("output_{}", super::namer::legal(&output.name));
@@ -60,30 +77,37 @@ pub fn routines(context: &Context) -> Routines {
 
 impl Routines {
     fn add(&mut self, routine: &Routine) {
+        self.add_part(routine);
+        if let Some(whole) = &routine.whole {
+            self.text.push_str(whole);
+            self.text.push('\n');
+        }
+    }
+
+    fn add_part(&mut self, routine: &Routine) {
         self.text.push_str(&routine.text);
         self.text.push('\n');
         self.scratch_rows = self.scratch_rows.max(routine.scratch_rows);
     }
 }
 
-fn stages(context: &Context, stages: &[Stage], wish: &str, all: &mut Routines) -> Vec<String> {
-    let mut calls = Vec::new();
+/// The passes of stages, each with its time.
+fn stage_passes(context: &Context, stages: &[Stage], wish: &str) -> Vec<(Routine, String)> {
+    let mut list = Vec::new();
     let several = stages.iter().map(|stage| stage.passes.len()).sum::<usize>() > 1;
-    let mut number = 0;
     for stage in stages {
         let time = stage_time(context, &stage.fraction);
         for pass in &stage.passes {
-            number += 1;
+            let number = list.len() + 1;
             let name = if several { format!("{wish}_{number}") } else { format!("{wish}_sweep") };
             let routine = match pass {
                 Pass::Sweep(work) => sweep(context, &Job::of(work, &name)),
                 Pass::Face(work) => face(context, work, &name),
             };
-            all.add(&routine);
-            calls.push(routine.call(&time, "step"));
+            list.push((routine, time.clone()));
         }
     }
-    calls
+    list
 }
 
 /// Calls of an output's sweeps.
@@ -144,8 +168,14 @@ fn limit(context: &Context, all: &mut Routines) -> String {
     text.open(&context.pass_head(&name, uses, true));
     text.append(&body);
     text.close("}");
-    let routine =
-        Routine { text: text.into_string(), name, uses_time: uses[0], uses_step: uses[1], scratch_rows: 0 };
+    let routine = Routine {
+        text: text.into_string(),
+        name,
+        uses_time: uses[0],
+        uses_step: uses[1],
+        whole: None,
+        scratch_rows: 0,
+    };
     all.add(&routine);
     routine.call("time", "0.0")
 }

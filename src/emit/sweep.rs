@@ -51,6 +51,8 @@ impl<'a> Job<'a> {
 #[derive(Clone, Debug)]
 pub struct Routine {
     pub text: String,
+    /// In C, `text` is the function that runs the pass on some rows, and this one runs it on all.
+    pub whole: Option<String>,
     pub name: String,
     pub uses_time: bool,
     pub uses_step: bool,
@@ -70,6 +72,14 @@ impl Routine {
         }
         format!("{}({})", self.name, arguments.join(", "))
     }
+
+    /// A call for the rows from `low` to before `high`.
+    pub fn part_call(&self, time: &str, step: &str) -> String {
+        let whole = self.call(time, step);
+        let arguments = whole.strip_prefix(&self.name).unwrap_or(&whole);
+        let arguments = arguments.strip_suffix(')').unwrap_or(arguments);
+        format!("{}_part{arguments}, low, high)", self.name)
+    }
 }
 
 /// Name of the scratch row that holds results of a `Target::Largest`.
@@ -77,7 +87,7 @@ const RESULT_ROW: &str = "result";
 
 /// Prints a sweep.
 pub fn sweep(context: &Context, job: &Job) -> Routine {
-    let name = context.function_name(&job.wish, &["_point", "_rates", "_inside"]);
+    let name = context.function_name(&job.wish, &["_point", "_rates", "_inside", "_part"]);
     let written = match &job.target {
         Target::Buffers(buffers) => buffers.clone(),
         Target::Largest => Vec::new(),
@@ -136,7 +146,15 @@ impl SweepPrinter<'_> {
         let node = NodeFunctions { rates, point };
         let inside = self.inside(&mut text, &node);
         let (uses_time, uses_step, scratch_rows) = self.schedule(&mut text, &node, &inside);
-        Routine { text: text.into_string(), name: self.name.clone(), uses_time, uses_step, scratch_rows }
+        let parts = self.language() == Language::C && !matches!(self.job.target, Target::Largest);
+        Routine {
+            text: text.into_string(),
+            whole: parts.then(|| self.context.whole_pass(&self.name, [uses_time, uses_step])),
+            name: self.name.clone(),
+            uses_time,
+            uses_step,
+            scratch_rows,
+        }
     }
 
     /// Prints a function from the inputs of one node to `results`.

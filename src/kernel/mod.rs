@@ -35,6 +35,7 @@ pub mod build;
 pub mod interpret;
 pub mod lower;
 pub mod operator;
+pub mod plan;
 pub mod validate;
 
 pub use build::Builder;

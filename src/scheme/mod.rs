@@ -2,6 +2,8 @@
 //!
 //! Nothing here searches for weights; that is [`crate::discretize`]'s task. All weights are for unit spacing.
 
+pub mod biased;
+pub mod certificate;
 pub mod dissipation;
 pub mod norm;
 pub mod operator;
@@ -13,6 +15,8 @@ pub mod stencil;
 pub mod step_rule;
 pub mod summation_by_parts;
 
+pub use biased::{BiasedFault, BiasedPair, Direction};
+pub use certificate::{Certificate, Line};
 pub use dissipation::{ConstantRows, Dissipation, DissipationFault};
 pub use norm::{Norm, NormFault};
 pub use operator::{ClosedRow, DifferenceOperator, EndRows, Extension, OperatorFault, Parity};

@@ -172,9 +172,9 @@ impl StaggeredPair {
                 sums[half.rem_euclid(halves as i64).unsigned_abs() as usize] += &height * weight;
             }
         }
-        for half in 0..halves {
+        let half_rows = (0..halves).map(|half| self.half_row(half, nodes).unwrap_or_default());
+        for (half, (first, weights)) in half_rows.enumerate() {
             let height = self.half_norm.weight(half, halves);
-            let (first, weights) = self.half_row(half, nodes).unwrap_or_default();
             for (node, weight) in (first..).zip(&weights) {
                 sums[node.rem_euclid(nodes as i64).unsigned_abs() as usize][half] += &height * weight;
             }

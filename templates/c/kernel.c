@@ -43,6 +43,11 @@
 #define INLINE static inline
 #endif
 
+/* Grids of no more nodes run on one thread. */
+#ifndef LEAST_SHARED
+#define LEAST_SHARED 20000
+#endif
+
 /* No array has more elements than this. */
 #define LARGEST_ARRAY ((size_t)PTRDIFF_MAX / 4096)
 

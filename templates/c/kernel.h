@@ -82,6 +82,8 @@ typedef struct {
 {{ PREFIX }}_API void {{ prefix }}_first_step({{ prefix }}_solver *s, double time, double step);
 {{ PREFIX }}_API double {{ prefix }}_largest_rate({{ prefix }}_solver *s, double time); /* the step limit is 1 over this */
 {{ PREFIX }}_API void {{ prefix }}_advance({{ prefix }}_solver *s, double time, double step, double next);
+/* The same as count calls of advance, from times[0] to times[count], and faster. */
+{{ PREFIX }}_API void {{ prefix }}_advance_steps({{ prefix }}_solver *s, size_t count, const double *times, double step);
 
 {{ PREFIX }}_API const double *{{ prefix }}_field(const {{ prefix }}_solver *s, size_t field);
 {{ PREFIX }}_API const double *{{ prefix }}_output({{ prefix }}_solver *s, size_t output, double time);

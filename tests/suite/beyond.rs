@@ -1,6 +1,8 @@
 //! Operators beyond the core: high orders, dissipation, one-sided and biased weights, staggered pairs, and the
 //! certificates of all of them. Each kind has its submodule; here is what they share.
 
+mod biased;
+mod certificates;
 mod dissipation;
 mod high_orders;
 mod one_sided;
@@ -41,5 +43,6 @@ fn monomial(nodes: usize, origin: usize, degree: usize) -> Vec<Rational> {
 
 /// A reproducible sequence of small integers, none negative, some of them nought.
 fn coefficients(count: usize, seed: usize) -> Vec<Rational> {
-    (0..count).map(|index| Rational::from(((index + 1) * (seed + 3) * 7919 % 11) as i64)).collect()
+    let mixed = |index: usize| ((index + 1) * (index + 3) * (seed + 3) * 7919 + index * index * index) % 11;
+    (0..count).map(|index| Rational::from(mixed(index) as i64)).collect()
 }

@@ -1,5 +1,6 @@
 //! The one test binary.
 
+mod agreement;
 mod beyond;
 mod c_driver;
 mod check;
@@ -14,8 +15,10 @@ mod in_process;
 mod layering;
 mod limits;
 mod lowering;
+mod mutations;
 mod published;
 mod reference;
 mod rejects;
 mod syntax;
 mod traps;
+mod waves;

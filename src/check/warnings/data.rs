@@ -49,6 +49,8 @@ pub(super) fn starts(model: &Model, diagnostics: &mut Diagnostics) {
     for condition in &model.conditions {
         let Some((field, value)) = given(condition) else { continue };
         let Some(start) = start_of(model, field) else { continue };
+        // A tail of a pulse at a face is no disagreement: differences are measured against the size of the whole field.
+        let size = largest(model, start);
         for point in points_of_face(model, condition.face) {
             if !applies(model, condition, &point) {
                 continue;
@@ -58,8 +60,7 @@ pub(super) fn starts(model: &Model, diagnostics: &mut Diagnostics) {
             else {
                 break;
             };
-            // A tail of a pulse at a face is no disagreement: differences are measured against the size of the whole field.
-            let scale = largest(model, start).max(face.abs());
+            let scale = size.max(face.abs());
             if differ(inside, face) && (inside - face).abs() > NOTICEABLE * scale {
                 let field = &model.fields[field.0];
                 diagnostics.push(

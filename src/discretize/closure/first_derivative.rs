@@ -19,9 +19,10 @@ const LAST_DEGREE_BEYOND_ORDER: usize = 6;
 
 /// Where the unknowns are, and the interior weights.
 struct Layout {
+    /// p: closed rows are exact up to this degree.
     half: usize,
     closed: usize,
-    /// c₁ … c_p.
+    /// c₁, c₂, …
     interior: Vec<Rational>,
 }
 
@@ -32,15 +33,27 @@ struct RowCondition {
 }
 
 pub(super) fn periodic(order: usize) -> Result<SummationByParts, Impossible> {
-    let operator = DifferenceOperator::periodic(interior::centred(1, order)?, order)?;
+    periodic_around(interior::centred(1, order)?, order)
+}
+
+/// Any odd interior on a periodic axis.
+pub(super) fn periodic_around(stencil: Stencil, order: usize) -> Result<SummationByParts, Impossible> {
+    let operator = DifferenceOperator::periodic(stencil, order)?;
     Ok(SummationByParts::new(operator, Norm::periodic())?)
 }
 
 pub(super) fn closed(recipe: &Recipe) -> Result<SummationByParts, Impossible> {
-    let stencil = interior::centred(1, recipe.order)?;
-    let half = recipe.order / 2;
-    let layout =
-        Layout { half, closed: recipe.closed_rows, interior: stencil.weights()[half + 1..].to_vec() };
+    closed_around(interior::centred(1, recipe.order)?, recipe)
+}
+
+/// The closure of any odd interior on nodes −r, …, r of at least the recipe's order.
+pub(super) fn closed_around(stencil: Stencil, recipe: &Recipe) -> Result<SummationByParts, Impossible> {
+    let centre = stencil.weights().len() / 2;
+    let layout = Layout {
+        half: recipe.order / 2,
+        closed: recipe.closed_rows,
+        interior: stencil.weights()[centre + 1..].to_vec(),
+    };
     let family = layout.exact_family()?;
     let mut coordinates = layout.optimum(&family)?;
     if let Some(denominator) = recipe.tidy_denominator {
@@ -56,7 +69,7 @@ pub(super) fn closed(recipe: &Recipe) -> Result<SummationByParts, Impossible> {
 impl Layout {
     /// How many columns the closed rows reach.
     fn width(&self) -> usize {
-        self.closed + self.half
+        self.closed + self.interior.len()
     }
 
     fn unknowns(&self) -> usize {

@@ -100,7 +100,12 @@ impl SweepPrinter<'_> {
         format!("{}_inside({});", self.name, arguments.join(", "))
     }
 
-    /// The function that goes over all rows. Returns whether it needs time and step, and its scratch rows.
+    /// Whether there is a function that goes over some of the rows, so that a plan can choose which and when.
+    fn by_parts(&self) -> bool {
+        self.language() == Language::C && !matches!(self.job.target, Target::Largest)
+    }
+
+    /// The function that goes over rows. Returns whether it needs time and step, and its scratch rows.
     pub(super) fn schedule(
         &self,
         text: &mut Text,
@@ -109,7 +114,8 @@ impl SweepPrinter<'_> {
     ) -> (bool, bool, usize) {
         let language = self.language();
         let largest = matches!(self.job.target, Target::Largest);
-        let depth = 2;
+        let single_part = self.by_parts() && self.context.axes.len() == 1;
+        let depth = if single_part { 1 } else { 2 };
         let mut row = Text::indented(depth);
         let several = self.context.axes.len() > 1;
         let slots = if several {
@@ -143,6 +149,21 @@ impl SweepPrinter<'_> {
         let whole = body.as_str().to_owned();
         let uniform = self.leaves.uniform_declarations(&whole);
         function.lines(&uniform);
+        if self.by_parts() {
+            function.lines(&self.leaves.count_declarations(&whole));
+            if several {
+                function.open("for (ptrdiff_t row = low; row < high; row++) {");
+            }
+            function.append(&body);
+            if several {
+                function.close("}");
+            }
+            let (uses_time, uses_step) = (function.mentions("t"), function.mentions("dt"));
+            text.open(&self.context.part_head(&self.name, [uses_time, uses_step]));
+            text.append(&function);
+            text.close("}");
+            return (uses_time, uses_step, scratch_rows);
+        }
         let rows = if several {
             "s->rows"
         } else if largest {
@@ -313,6 +334,10 @@ impl SweepPrinter<'_> {
         let place =
             language.choose(&format!("end < {edge}"), "end", &format!("{count} - {} + end", 2 * edge));
         text.line(&language.index(index, &place));
+        let guarded = self.by_parts() && self.context.axes.len() == 1;
+        if guarded {
+            text.open(&format!("if ({index} >= low && {index} < high) {{"));
+        }
         for (slot, applied) in self.leaves.applied.values().enumerate() {
             let value = if applied.axis == fast {
                 self.at_any(applied, index)
@@ -328,6 +353,9 @@ impl SweepPrinter<'_> {
             text.line(&language.double(&applied.name, &value));
         }
         self.node(text, node, index, Faces::All);
+        if guarded {
+            text.close("}");
+        }
         text.close("}");
     }
 
@@ -336,6 +364,9 @@ impl SweepPrinter<'_> {
         let language = self.language();
         let count = &self.context.axes[0].count;
         let edge = self.edge(0);
+        if self.by_parts() {
+            return self.part_of_line(text, node, inside, edge);
+        }
         if edge > 0 {
             text.open(&language.when("row == 0"));
             self.ends(text, node, edge, false);
@@ -349,6 +380,24 @@ impl SweepPrinter<'_> {
         text.line(&language.index("first", &format!("{low}{width} * row / parts")));
         text.line(&language.index("last", &format!("{low}{width} * (row + 1) / parts")));
         text.line(&self.inside_call(inside, "first", "last - first"));
+        0
+    }
+
+    /// The nodes of a grid of one axis from `low` to `high`.
+    fn part_of_line(&self, text: &mut Text, node: &NodeFunctions, inside: &Signature, edge: usize) -> usize {
+        let count = &self.context.axes[0].count;
+        if edge == 0 {
+            text.line(&self.inside_call(inside, "low", "high - low"));
+            return 0;
+        }
+        text.open(&format!("if (low < {edge} || high > {count} - {edge}) {{"));
+        self.ends(text, node, edge, false);
+        text.close("}");
+        text.line(&format!("const ptrdiff_t first = low < {edge} ? {edge} : low;"));
+        text.line(&format!("const ptrdiff_t last = high > {count} - {edge} ? {count} - {edge} : high;"));
+        text.open("if (first < last) {");
+        text.line(&self.inside_call(inside, "first", "last - first"));
+        text.close("}");
         0
     }
 }
