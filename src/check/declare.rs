@@ -429,6 +429,7 @@ impl Checker<'_> {
                 Some((spelling, scale)) => (spelling.clone(), scale.factor.clone()),
                 None => (dimension.to_string(), Expression::one()),
             };
+            self.free_sizes.push(size(&typed.value, &self.sizes, &self.free_sizes));
             self.free.push(FreeConstant {
                 name: constant.name.text.clone(),
                 description,
@@ -493,7 +494,7 @@ impl Checker<'_> {
             self.failed.insert(Kind::Coefficient(index));
             return None;
         };
-        self.sizes[index] = size(&typed.value, &self.sizes);
+        self.sizes[index] = size(&typed.value, &self.sizes, &self.free_sizes);
         self.coefficients[index] = model::Coefficient {
             name: coefficient.name.text.clone(),
             dimension: typed.dimension.clone().unwrap_or_else(Dimension::one),

@@ -40,6 +40,10 @@ pub fn check(file: &ModelFile, source: &SourceFile) -> (Option<Model>, Diagnosti
 }
 
 fn check_here(file: &ModelFile, source: &SourceFile) -> (Option<Model>, Diagnostics) {
+    if file.header.is_none() && file.sections.is_empty() && file.faulty.is_empty() {
+        // Nothing could be read, and the parser has said so.
+        return (None, Diagnostics::new());
+    }
     let mut checker = Checker {
         file,
         source,
@@ -52,6 +56,7 @@ fn check_here(file: &ModelFile, source: &SourceFile) -> (Option<Model>, Diagnost
         time_dimension: None,
         whole_time: None,
         sizes: Vec::new(),
+        free_sizes: Vec::new(),
         growth: 0,
         nesting: 0,
         failed: HashSet::new(),
@@ -91,6 +96,8 @@ struct Checker<'a> {
     applied: HashSet<usize>,
     /// One for each coefficient, those it uses put in.
     sizes: Vec<size::Size>,
+    /// The same of the free constants.
+    free_sizes: Vec<size::Size>,
     /// Parts that were put into formulas so far.
     growth: u64,
     /// How deep the formula that is being read stands.

@@ -26,14 +26,16 @@ pub(super) struct Size {
     depth: u32,
 }
 
-/// The size of an expression with every coefficient put in.
-pub(super) fn size(value: &Expression, coefficients: &[Size]) -> Size {
-    if let Expression::Coefficient(id) = value {
-        return coefficients.get(id.0).copied().unwrap_or_default();
-    }
-    let mut whole = Size { nodes: 1, depth: 1 };
+/// The size of an expression with every coefficient and every default of a free constant put in.
+pub(super) fn size(value: &Expression, coefficients: &[Size], free: &[Size]) -> Size {
+    let known = match value {
+        Expression::Coefficient(id) => coefficients.get(id.0).copied().unwrap_or_default(),
+        Expression::Constant(id) => free.get(id.0).copied().unwrap_or_default(),
+        _ => Size::default(),
+    };
+    let mut whole = Size { nodes: known.nodes.max(1), depth: known.depth.saturating_add(1) };
     for part in value.children() {
-        let own = size(part, coefficients);
+        let own = size(part, coefficients, free);
         whole.nodes = whole.nodes.saturating_add(own.nodes);
         whole.depth = whole.depth.max(own.depth + 1);
     }
@@ -53,7 +55,7 @@ pub(super) fn digits(value: &Expression) -> u64 {
 impl Checker<'_> {
     /// The formula, if it is of a size that can be worked with and its numbers are of a kind that doubles hold.
     pub(super) fn bounded(&mut self, typed: Typed, span: Span) -> Option<Typed> {
-        let size = size(&typed.value, &self.sizes);
+        let size = size(&typed.value, &self.sizes, &self.free_sizes);
         if size.nodes > LARGEST || size.depth > DEEPEST {
             self.too_large(span);
             return None;
@@ -78,7 +80,7 @@ impl Checker<'_> {
         if self.growth > LARGEST_GROWTH {
             return None;
         }
-        self.growth += size(&typed.value, &[]).nodes + 1;
+        self.growth += size(&typed.value, &[], &[]).nodes + 1;
         if self.growth > LARGEST_GROWTH {
             self.too_large(span);
             return None;
@@ -132,9 +134,9 @@ mod tests {
         let square =
             Expression::Coefficient(CoefficientId(0)).times(Expression::Coefficient(CoefficientId(0)));
         let mut known = vec![Size { nodes: 3, depth: 2 }];
-        assert_eq!(size(&square, &known), Size { nodes: 7, depth: 3 });
+        assert_eq!(size(&square, &known, &[]), Size { nodes: 7, depth: 4 });
         known[0].nodes = u64::MAX;
-        assert_eq!(size(&square, &known).nodes, u64::MAX);
+        assert_eq!(size(&square, &known, &[]).nodes, u64::MAX);
     }
 
     #[test]

@@ -1,6 +1,6 @@
 //! Units: spelled factors to an exact SI factor and a dimension.
 //!
-//! SI base and derived units with prefixes (BIPM 2019), and min, h, d, °. Units with an offset (°C) were refused by the parser.
+//! SI base and derived units with prefixes (BIPM 2019, prefixes of 2022), and min, h, d, °. Units with an offset (°C) were refused by the parser.
 
 use crate::diagnostic::nearest::nearest;
 use crate::diagnostic::{Diagnostic, Diagnostics, codes_check};
@@ -63,7 +63,7 @@ const UNITS: [Entry; 32] = [
     entry("d", (86400, 1), [0, 0, 1, 0, 0, 0, 0], false),
 ];
 
-const PREFIXES: [(&str, i32); 20] = [
+const PREFIXES: [(&str, i32); 25] = [
     ("da", 1),
     ("h", 2),
     ("k", 3),
@@ -74,6 +74,8 @@ const PREFIXES: [(&str, i32); 20] = [
     ("E", 18),
     ("Z", 21),
     ("Y", 24),
+    ("R", 27),
+    ("Q", 30),
     ("d", -1),
     ("c", -2),
     ("m", -3),
@@ -84,6 +86,27 @@ const PREFIXES: [(&str, i32); 20] = [
     ("f", -15),
     ("a", -18),
     ("z", -21),
+    ("y", -24),
+    ("r", -27),
+    ("q", -30),
+];
+
+/// What people write for a unit of the list.
+const MEANT: [(&str, &str); 14] = [
+    ("sec", "s"),
+    ("secs", "s"),
+    ("hr", "h"),
+    ("hrs", "h"),
+    ("hour", "h"),
+    ("day", "d"),
+    ("days", "d"),
+    ("deg", "°"),
+    ("degree", "°"),
+    ("metre", "m"),
+    ("meter", "m"),
+    ("kelvin", "K"),
+    ("ohm", "Ω"),
+    ("Ohm", "Ω"),
 ];
 
 /// The scale of a unit; unknown symbols are reported, all of them, and give nothing.
@@ -99,7 +122,10 @@ pub fn resolve(unit: &Unit, diagnostics: &mut Diagnostics) -> Option<Scale> {
                 format!("`{}` is no unit that is known here", part.symbol),
             )
             .with_text("expected an SI unit, with or without a prefix, or min, h, d, °");
-            if let Some(near) = nearest(&part.symbol, UNITS.iter().map(|entry| entry.symbol)) {
+            let meant = MEANT.iter().find(|(written, _)| *written == part.symbol).map(|(_, unit)| *unit);
+            if let Some(near) =
+                meant.or_else(|| nearest(&part.symbol, UNITS.iter().map(|entry| entry.symbol)))
+            {
                 diagnostic = diagnostic.with_remedy(format!("did you mean `{near}`?"));
             }
             diagnostics.push(diagnostic);
@@ -143,7 +169,7 @@ fn symbol(text: &str) -> Option<(Rational, [i64; 7], bool)> {
 mod tests {
     use super::*;
 
-    /// BIPM 2019, tables 2, 4 and 8 (from memory).
+    /// BIPM 2019 with the prefixes of 2022 (from memory).
     #[test]
     fn symbols_have_their_values() {
         let value = |text: &str| symbol(text).expect("a unit");
@@ -155,6 +181,40 @@ mod tests {
         assert_eq!(value("Pa").1, [-1, 1, -2, 0, 0, 0, 0]);
         assert_eq!(value("cd").1, [0, 0, 0, 0, 0, 0, 1]);
         assert_eq!(value("mm").0, Rational::ratio(1, 1000));
+        assert_eq!(value("qs").0, Rational::from(10).pow(-30).expect("not zero"));
+        assert_eq!(value("mg").0, Rational::ratio(1, 1_000_000));
+        assert_eq!(value("°"), (Rational::ratio(1, 180), [0; 7], true));
+        assert!(symbol("kkg").is_none() && symbol("mh").is_none() && symbol("dd").is_none());
         assert!(symbol("kmin").is_none() && symbol("furlong").is_none() && symbol("").is_none());
+    }
+    /// Definitions of derived units by others (BIPM 2019, from memory).
+    #[test]
+    fn derived_units_agree_with_their_definitions() {
+        let dimension = |text: &str| Dimension(symbol(text).expect("a unit").1.map(Rational::from));
+        let product = |factors: &[(&str, i64)]| {
+            factors.iter().fold(Dimension::one(), |total, (text, power)| {
+                total.times(&dimension(text).power(&Rational::from(*power)))
+            })
+        };
+        let definitions: [(&str, &[(&str, i64)]); 15] = [
+            ("N", &[("kg", 1), ("m", 1), ("s", -2)]),
+            ("Pa", &[("N", 1), ("m", -2)]),
+            ("J", &[("N", 1), ("m", 1)]),
+            ("W", &[("J", 1), ("s", -1)]),
+            ("C", &[("A", 1), ("s", 1)]),
+            ("V", &[("W", 1), ("A", -1)]),
+            ("F", &[("C", 1), ("V", -1)]),
+            ("Ω", &[("V", 1), ("A", -1)]),
+            ("S", &[("Ω", -1)]),
+            ("Wb", &[("V", 1), ("s", 1)]),
+            ("T", &[("Wb", 1), ("m", -2)]),
+            ("H", &[("Wb", 1), ("A", -1)]),
+            ("lx", &[("lm", 1), ("m", -2)]),
+            ("Gy", &[("J", 1), ("kg", -1)]),
+            ("kat", &[("mol", 1), ("s", -1)]),
+        ];
+        for (unit, factors) in definitions {
+            assert_eq!(dimension(unit), product(factors), "{unit}");
+        }
     }
 }
