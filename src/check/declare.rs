@@ -39,12 +39,14 @@ impl Checker<'_> {
             && !self.has_faulty(Section::Axes)
         {
             let span = file.axes.get(3).map_or_else(|| self.section_span(Section::Axes), |axis| axis.span);
-            self.diagnostics.push(Diagnostic::error(
-                codes_check::AXES_COUNT,
-                span,
-                format!("a model has 1 to 3 axes, this one has {}", file.axes.len()),
-            )
-            .with_text("expected 1 to 3 axes in all"));
+            self.diagnostics.push(
+                Diagnostic::error(
+                    codes_check::AXES_COUNT,
+                    span,
+                    format!("a model has 1 to 3 axes, this one has {}", file.axes.len()),
+                )
+                .with_text("expected 1 to 3 axes in all"),
+            );
         }
         let mut axes = Vec::new();
         for axis in &file.axes {
@@ -54,12 +56,14 @@ impl Checker<'_> {
         let total = axes.iter().fold(1u64, |total, axis| total.saturating_mul(axis.nodes as u64));
         if total > MOST_NODES {
             let span = self.section_span(Section::Axes);
-            self.diagnostics.push(Diagnostic::error(
-                codes_check::GRID_SIZE,
-                span,
-                format!("the grid has {total} nodes; at most {MOST_NODES} are possible"),
-            )
-            .with_remedy("take fewer nodes along each axis"));
+            self.diagnostics.push(
+                Diagnostic::error(
+                    codes_check::GRID_SIZE,
+                    span,
+                    format!("the grid has {total} nodes; at most {MOST_NODES} are possible"),
+                )
+                .with_remedy("take fewer nodes along each axis"),
+            );
             return None;
         }
         (1..=3).contains(&axes.len()).then_some(axes)
@@ -98,9 +102,7 @@ impl Checker<'_> {
             }
         };
         let (a, b) = (self.formula(low, Place::Constant), self.formula(high, Place::Constant));
-        let dimension = [&b, &a]
-            .into_iter()
-            .find_map(|side| side.as_ref()?.dimension.clone());
+        let dimension = [&b, &a].into_iter().find_map(|side| side.as_ref()?.dimension.clone());
         self.scope.axes.push(dimension.clone());
         let (a, b) = (a?, b?);
         let dimension = dimension.unwrap_or_else(Dimension::one);
@@ -183,12 +185,10 @@ impl Checker<'_> {
             && !self.has_faulty(Section::Fields)
         {
             let span = self.section_span(Section::Fields);
-            self.diagnostics.push(Diagnostic::error(
-                codes_check::SECTION_MISSING,
-                span,
-                "the model has no field",
-            )
-            .with_remedy("add a line like `T in K on x`"));
+            self.diagnostics.push(
+                Diagnostic::error(codes_check::SECTION_MISSING, span, "the model has no field")
+                    .with_remedy("add a line like `T in K on x`"),
+            );
         }
         let mut fields = Vec::new();
         for field in &file.fields {
@@ -280,12 +280,14 @@ impl Checker<'_> {
             }
         }
         if matches!(self.sign(&high.value.clone().minus(low.value.clone())), Sign::Negative) {
-            self.diagnostics.push(Diagnostic::error(
-                codes_check::BOUNDS_ORDER,
-                bounds.span,
-                "the lower bound lies above the upper one",
-            )
-            .with_remedy("exchange the two bounds"));
+            self.diagnostics.push(
+                Diagnostic::error(
+                    codes_check::BOUNDS_ORDER,
+                    bounds.span,
+                    "the lower bound lies above the upper one",
+                )
+                .with_remedy("exchange the two bounds"),
+            );
             return None;
         }
         Some((low.value, high.value))

@@ -109,23 +109,27 @@ impl Checker<'_> {
             return None;
         };
         if coefficient.is_zero() {
-            self.diagnostics.push(Diagnostic::error(
-                codes_check::NOT_LINEAR_IN_RATE,
-                one.span,
-                format!("the time derivative of `{name}` cancels out"),
-            )
-            .with_text("what multiplies it is exactly zero"));
+            self.diagnostics.push(
+                Diagnostic::error(
+                    codes_check::NOT_LINEAR_IN_RATE,
+                    one.span,
+                    format!("the time derivative of `{name}` cancels out"),
+                )
+                .with_text("what multiplies it is exactly zero"),
+            );
             return None;
         }
         if coefficient.any(&|node| {
             matches!(node, Expression::Derivative(_) | Expression::Rate(_) | Expression::SecondRate(_))
         }) {
-            self.diagnostics.push(Diagnostic::error(
-                codes_check::NOT_LINEAR_IN_RATE,
-                one.span,
-                format!("what multiplies the time derivative of `{name}` holds another derivative"),
-            )
-            .with_remedy("divide by it on paper, or name the derivative as a field of its own"));
+            self.diagnostics.push(
+                Diagnostic::error(
+                    codes_check::NOT_LINEAR_IN_RATE,
+                    one.span,
+                    format!("what multiplies the time derivative of `{name}` holds another derivative"),
+                )
+                .with_remedy("divide by it on paper, or name the derivative as a field of its own"),
+            );
             return None;
         }
         let foreign = rates(&rest).into_iter().find(|other| !second.contains(other));

@@ -257,8 +257,12 @@ impl Checker<'_> {
             let typed = typed?;
             if factor.operation == Operation::Over && typed.value.is_zero() {
                 self.diagnostics.push(
-                    Diagnostic::error(codes_check::DIVISION_BY_ZERO, factor.value.span, "this divides by zero")
-                        .with_text("this is exactly zero"),
+                    Diagnostic::error(
+                        codes_check::DIVISION_BY_ZERO,
+                        factor.value.span,
+                        "this divides by zero",
+                    )
+                    .with_text("this is exactly zero"),
                 );
                 return None;
             }

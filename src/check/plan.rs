@@ -141,7 +141,8 @@ impl Checker<'_> {
             );
             return None;
         }
-        let per_axis: Option<Vec<AskedOrder>> = per_axis.into_iter().map(|own| own.or(general).map(|(asked, _)| asked)).collect();
+        let per_axis: Option<Vec<AskedOrder>> =
+            per_axis.into_iter().map(|own| own.or(general).map(|(asked, _)| asked)).collect();
         sound.then_some(())?;
         Some(Accuracy {
             span: span.unwrap_or_else(|| self.section_span(Section::Accuracy)),
@@ -235,12 +236,14 @@ impl Checker<'_> {
             self.sign(&b.value.clone().minus(a.value.clone())),
             Sign::Negative | Sign::Zero | Sign::NonPositive
         ) {
-            self.diagnostics.push(Diagnostic::error(
-                codes_check::TIME_DIRECTION,
-                span,
-                "the end of the time interval is not after its start",
-            )
-            .with_remedy("give the earlier time first, like `0 s to 60 s`"));
+            self.diagnostics.push(
+                Diagnostic::error(
+                    codes_check::TIME_DIRECTION,
+                    span,
+                    "the end of the time interval is not after its start",
+                )
+                .with_remedy("give the earlier time first, like `0 s to 60 s`"),
+            );
             return None;
         }
         self.whole_time = Some(b.value.clone().minus(a.value.clone()));
@@ -289,12 +292,14 @@ impl Checker<'_> {
             return None;
         }
         if !matches!(self.sign(&typed.value), Sign::Positive) {
-            self.diagnostics.push(Diagnostic::error(
-                codes_check::NOT_POSITIVE,
-                tree.span,
-                format!("{what} must be greater than zero"),
-            )
-            .with_text("expected a positive time"));
+            self.diagnostics.push(
+                Diagnostic::error(
+                    codes_check::NOT_POSITIVE,
+                    tree.span,
+                    format!("{what} must be greater than zero"),
+                )
+                .with_text("expected a positive time"),
+            );
             return None;
         }
         Some(typed.value)
@@ -425,7 +430,8 @@ impl Checker<'_> {
                     );
                     return None;
                 }
-                let volume = self.scope.axes.iter().flatten().fold(Dimension::one(), |total, axis| total.times(axis));
+                let volume =
+                    self.scope.axes.iter().flatten().fold(Dimension::one(), |total, axis| total.times(axis));
                 let typed =
                     Typed { dimension: typed.dimension.map(|own| own.times(&volume)), value: typed.value };
                 let mut output = finish(&name.text, typed, OutputKind::Integral, &None, span);
@@ -587,12 +593,14 @@ impl Checker<'_> {
                 })
                 .collect();
             if places.len() as i64 > MOST_GAUGES {
-                self.diagnostics.push(Diagnostic::error(
-                    codes_check::NOT_POSITIVE,
-                    span,
-                    format!("more than {MOST_GAUGES} gauges in a line"),
-                )
-                .with_remedy("write a field instead, and read the places from its file"));
+                self.diagnostics.push(
+                    Diagnostic::error(
+                        codes_check::NOT_POSITIVE,
+                        span,
+                        format!("more than {MOST_GAUGES} gauges in a line"),
+                    )
+                    .with_remedy("write a field instead, and read the places from its file"),
+                );
                 return None;
             }
         }
@@ -638,12 +646,14 @@ impl Checker<'_> {
                     grids_at = Some(line.span);
                     result.grids = grids.iter().map(|grid| grid.value as usize).collect();
                     if !result.grids.is_sorted_by(|a, b| a < b) {
-                        self.diagnostics.push(Diagnostic::error(
-                            codes_check::GRIDS_ORDER,
-                            line.span,
-                            "grids grow from one to the next",
-                        )
-                        .with_text("expected node counts that increase, like `grids 17, 33, 65`"));
+                        self.diagnostics.push(
+                            Diagnostic::error(
+                                codes_check::GRIDS_ORDER,
+                                line.span,
+                                "grids grow from one to the next",
+                            )
+                            .with_text("expected node counts that increase, like `grids 17, 33, 65`"),
+                        );
                         sound = false;
                     }
                 }

@@ -129,7 +129,8 @@ mod tests {
 
     #[test]
     fn coefficients_are_looked_through() {
-        let square = Expression::Coefficient(CoefficientId(0)).times(Expression::Coefficient(CoefficientId(0)));
+        let square =
+            Expression::Coefficient(CoefficientId(0)).times(Expression::Coefficient(CoefficientId(0)));
         let mut known = vec![Size { nodes: 3, depth: 2 }];
         assert_eq!(size(&square, &known), Size { nodes: 7, depth: 3 });
         known[0].nodes = u64::MAX;

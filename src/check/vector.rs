@@ -106,12 +106,14 @@ impl Checker<'_> {
             1 => Expression::Rate(field),
             2 if place == Place::Equation => Expression::SecondRate(field),
             _ => {
-                self.diagnostics.push(Diagnostic::error(
-                    codes_check::TIME_ORDER,
-                    span,
-                    "equations are of first or second order in time, conditions and outputs of first",
-                )
-                .with_remedy("introduce the rate as a further field with an equation of its own"));
+                self.diagnostics.push(
+                    Diagnostic::error(
+                        codes_check::TIME_ORDER,
+                        span,
+                        "equations are of first or second order in time, conditions and outputs of first",
+                    )
+                    .with_remedy("introduce the rate as a further field with an equation of its own"),
+                );
                 return None;
             }
         };
@@ -193,7 +195,12 @@ impl Checker<'_> {
     }
 
     /// ∇·(flux): terms with one gradient each.
-    pub(super) fn divergence(&mut self, flux: &tree::Expression, place: Place, bound: &Bound) -> Option<Typed> {
+    pub(super) fn divergence(
+        &mut self,
+        flux: &tree::Expression,
+        place: Place,
+        bound: &Bound,
+    ) -> Option<Typed> {
         self.same_lengths(flux.span)?;
         match &flux.kind {
             ExpressionKind::Sum(terms) => {

@@ -59,7 +59,11 @@ fn made() -> Vec<Rejected> {
     vec![
         make("no_text", [sound.as_slice(), b"# caf\xe9\n"].concat(), &["E0102"]),
         make("too_large", with(format!("# {}\n", "x".repeat(1 << 20))), &["E0103"]),
-        make("too_long", with(format!("\nverification\n  exact u = 1{}\n", " + 1".repeat(20_000))), &["E0109"]),
+        make(
+            "too_long",
+            with(format!("\nverification\n  exact u = 1{}\n", " + 1".repeat(20_000))),
+            &["E0109"],
+        ),
         make("too_many_faults", with(stray), &faults),
     ]
 }
@@ -134,7 +138,9 @@ fn every_code_has_a_model_and_conversely() {
             seen.insert(code.clone(), model.name.clone());
         }
     }
-    let later = |code: &str| ("E0501".."E0520").contains(&code) || ("E0541".."E0550").contains(&code) || code.starts_with("E095");
+    let later = |code: &str| {
+        ("E0501".."E0520").contains(&code) || ("E0541".."E0550").contains(&code) || code.starts_with("E095")
+    };
     let codes = Code::all();
     let lacking: Vec<&str> = codes
         .iter()
@@ -165,7 +171,13 @@ fn every_code_is_explained_with_a_wrong_and_a_right_example() {
 #[test]
 fn no_command_leaves_a_file_behind() {
     let folder_of_models = folder();
-    for name in ["unknown_name.rim", "open_bracket.rim", "equation_units.rim", "too_few_nodes.rim", "order_not_reached.rim"] {
+    for name in [
+        "unknown_name.rim",
+        "open_bracket.rim",
+        "equation_units.rim",
+        "too_few_nodes.rim",
+        "order_not_reached.rim",
+    ] {
         let model = folder_of_models.join(name);
         let model = model.to_str().expect("a path that is text");
         for words in [
