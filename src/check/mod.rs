@@ -143,6 +143,10 @@ impl Checker<'_> {
 
     /// Sections without which there is no model. A section with a faulty statement is not missing.
     fn require_sections(&mut self) {
+        if self.file.header.is_none() && self.file.sections.is_empty() && self.file.faulty.is_empty() {
+            // Nothing could be read, and the parser has said why.
+            return;
+        }
         let needed: [(Section, &str); 6] = [
             (Section::Axes, "x: 0 m to 1 m, 41 nodes"),
             (Section::Fields, "T in K on x"),

@@ -151,7 +151,7 @@ fn damaged(bytes: Vec<u8>, slip: &Slip) -> Vec<u8> {
 }
 
 proptest! {
-    #![proptest_config(ProptestConfig { cases: 400, failure_persistence: None, ..ProptestConfig::default() })]
+    #![proptest_config(ProptestConfig { cases: 1500, failure_persistence: None, ..ProptestConfig::default() })]
 
     #[test]
     fn no_slip_makes_the_compiler_stumble(which in any::<u8>(), slips in proptest::collection::vec(slip(), 1..4)) {
