@@ -203,8 +203,29 @@ impl Checker<'_> {
         &mut self,
         axes: &Option<Vec<model::Axis>>,
         equations: &Option<Vec<Equation>>,
+        outputs: &Option<Vec<model::Output>>,
     ) {
-        let (Some(axes), Some(equations)) = (axes, equations) else { return };
+        let Some(axes) = axes else { return };
+        for output in outputs.iter().flatten() {
+            let mut found: Vec<AxisId> = Vec::new();
+            collect(&output.value, &mut |node| {
+                if let Expression::Derivative(derivative) = node
+                    && let DerivativeKind::Higher { axis, .. } = &derivative.kind
+                {
+                    found.push(*axis);
+                }
+            });
+            found.retain(|axis| !axes[axis.0].periodic);
+            if let Some(axis) = found.first() {
+                let name = axes[axis.0].name.clone();
+                self.not_yet(
+                    output.span,
+                    &format!("a derivative of third or higher order along `{name}`, which has boundaries,"),
+                    "make the axis periodic, or leave the output out",
+                );
+            }
+        }
+        let Some(equations) = equations else { return };
         for equation in equations {
             let mut found: Vec<AxisId> = Vec::new();
             high_derivatives(&equation.right, false, &mut found);

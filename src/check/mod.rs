@@ -118,7 +118,7 @@ impl Checker<'_> {
         let outputs = self.outputs(&axes, &fields);
         let verification = self.verification();
         self.unused_operators();
-        self.bounded_axes(&axes, &equations);
+        self.bounded_axes(&axes, &equations, &outputs);
         let header = self.file.header.as_ref();
         let model = Model {
             name: header.map_or_else(|| "model".to_owned(), |header| header.name.text.clone()),
