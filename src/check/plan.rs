@@ -385,6 +385,24 @@ impl Checker<'_> {
                     sound = false;
                     continue;
                 }
+                let lower = output.name.to_lowercase();
+                let twin = outputs.iter().find(|known| {
+                    is_folder(known) && is_folder(&output) && known.name.to_lowercase() == lower
+                });
+                if let Some(twin) = twin {
+                    self.diagnostics.push(
+                        Diagnostic::error(
+                            codes_check::CASE_TWINS,
+                            line.span,
+                            format!("the outputs `{}` and `{}` differ only in case", twin.name, output.name),
+                        )
+                        .with_text("its folder would be mistaken for the other's")
+                        .with_label(twin.span, "the other")
+                        .with_remedy("rename one of them"),
+                    );
+                    sound = false;
+                    continue;
+                }
                 outputs.push(output);
             }
         }
@@ -675,6 +693,11 @@ impl Checker<'_> {
         }
         Some((id, typed.value))
     }
+}
+
+/// Whether an output has a folder of its own.
+fn is_folder(output: &Output) -> bool {
+    matches!(output.kind, OutputKind::Snapshot | OutputKind::Maximum)
 }
 
 /// An output in the unit of a field of the same dimension, or in SI.

@@ -167,6 +167,38 @@ fn every_code_is_explained_with_a_wrong_and_a_right_example() {
     }
 }
 
+/// What is only a warning does not refuse a model: an argument that a coefficient does not use.
+#[test]
+fn an_unused_argument_is_a_warning() {
+    let path = Path::new(env!("CARGO_MANIFEST_DIR")).join("demo-models/vault_wall.rim");
+    let text = fs::read_to_string(path).expect("a demo");
+    let text = text.replace("\nfields\n", "\ncoefficients\n  q(x, t) = 1 + x / 1 m\n\nfields\n");
+    let source = SourceFile::new("wall.rim", text);
+    let checked = pipeline::check(&source);
+    let warned: Vec<&Diagnostic> =
+        checked.diagnostics.iter().filter(|one| one.code.as_str() == "W0201").collect();
+    assert!(checked.model.is_some() && warned.len() == 1);
+    assert_eq!((source.slice(warned[0].span()), warned[0].severity), ("t", Severity::Warning));
+}
+
+/// Formulas as deep and as wide as is allowed go through every stage.
+#[test]
+fn large_formulas_within_the_bounds_are_compiled() {
+    let path = Path::new(env!("CARGO_MANIFEST_DIR")).join("demo-models/vault_wall.rim");
+    let text = fs::read_to_string(path).expect("a demo");
+    let deep = format!("{}x / 1 m{}", "sin(1 + 2 * ".repeat(70), ")".repeat(70));
+    let wide: Vec<String> = (1..700).map(|index| format!("sin({index} * x / 1 m)")).collect();
+    for formula in [deep, format!("1000 + {}", wide.join(" + "))] {
+        let text = text
+            .replace("\nfields\n", &format!("\ncoefficients\n  q(x) = {formula}\n\nfields\n"))
+            .replace("∂/∂x(k * ∂T/∂x)", "∂/∂x(k * q * ∂T/∂x)");
+        let source = SourceFile::new("wall.rim", text);
+        let checked = pipeline::check(&source);
+        let shown = render(&checked.diagnostics, &source, Colour::Plain);
+        assert!(checked.model.is_some(), "{}", shown.chars().take(2000).collect::<String>());
+    }
+}
+
 /// Through the program, from an empty folder: status 1, words on standard error, and the folder stays empty.
 #[test]
 fn no_command_leaves_a_file_behind() {
