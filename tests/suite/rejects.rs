@@ -127,8 +127,7 @@ fn each_diagnostic_has_a_place_and_says_what_to_do() {
     assert!(wrong.is_empty(), "{}", wrong.into_iter().collect::<Vec<_>>().join("\n"));
 }
 
-/// Each rejected model without its fault is sound: what a test of wrong input shows is the fault and nothing else. Seen from the
-/// other side: every code that the pipeline gives for a model is one of the registry, and every code of the registry has a model.
+/// Every expected code is in the registry, and every error code of the registry has a model, but for those of conditions at faces.
 #[test]
 fn every_code_has_a_model_and_conversely() {
     let mut seen: BTreeMap<String, String> = BTreeMap::new();
