@@ -3,11 +3,13 @@
 //! All faults are reported in one go; a statement with a fault is left out and the rest is checked as if it were not there. Nothing
 //! here derives weights.
 
+mod apply;
 pub mod conditions;
 mod declare;
 mod derive;
 mod equation;
 mod formula;
+mod output;
 mod place;
 mod plan;
 pub mod raw;

@@ -1,7 +1,8 @@
 //! The back ends agree to the last bit: every demo model, in C and in Rust, with one thread and with several, writes equal files.
 //!
-//! What makes that so: the order of operations is fixed in the kernel, no product and sum are contracted into one operation, and
-//! functions that the platforms compute differently are not left to them. The in-process executor joins through [`engines`].
+//! What makes that so: the order of operations is fixed in the kernel, and no product and sum are contracted into one operation.
+//! Elementary functions are those of each back end's own library; here they are seen to agree on the machine of the tests only.
+//! The in-process executor joins through [`engines`].
 
 use std::collections::BTreeMap;
 use std::ffi::OsString;
