@@ -535,6 +535,28 @@ impl Checker<'_> {
         Some(Typed { dimension: typed.dimension.or(unit), value: typed.value })
     }
 
+    /// An argument that the formula does not use may be a slip.
+    fn unused_arguments(&mut self, coefficient: &tree::Coefficient, found: &model::calculus::Dependence) {
+        for argument in &coefficient.arguments {
+            let used = match self.scope.kind(&argument.text) {
+                Some(Kind::Axis(index)) => found.noise || found.coordinates.contains(&model::AxisId(index)),
+                Some(Kind::Field(index)) => found.fields.contains(&model::FieldId(index)),
+                _ => found.time,
+            };
+            if !used {
+                self.diagnostics.push(
+                    Diagnostic::warning(
+                        codes_check::UNUSED_ARGUMENT,
+                        argument.span,
+                        format!("`{}` does not depend on `{}`", coefficient.name.text, argument.text),
+                    )
+                    .with_text("named here, and not used in the formula")
+                    .with_remedy("leave it out, or put it into the formula"),
+                );
+            }
+        }
+    }
+
     /// Arguments are axes, `t` and fields, each once.
     fn arguments(&mut self, coefficient: &tree::Coefficient) -> Option<()> {
         let mut sound = Some(());
@@ -578,6 +600,7 @@ impl Checker<'_> {
             missing.push("t");
         }
         if missing.is_empty() {
+            self.unused_arguments(coefficient, &found);
             return Some(());
         }
         let list = missing.join("`, `");

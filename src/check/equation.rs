@@ -6,7 +6,7 @@ use super::Checker;
 use super::formula::Place;
 use crate::diagnostic::{Diagnostic, codes_check};
 use crate::model::expression::{DerivativeKind, factors, terms};
-use crate::model::{self, AxisId, Equation, Expression, FieldId, Output, TimeOrder};
+use crate::model::{self, AxisId, Equation, Expression, FieldId, TimeOrder};
 use crate::source::Span;
 use crate::syntax::tree::Section;
 
@@ -203,19 +203,37 @@ impl Checker<'_> {
         &mut self,
         axes: &Option<Vec<model::Axis>>,
         equations: &Option<Vec<Equation>>,
-        outputs: &Option<Vec<Output>>,
+        outputs: &Option<Vec<model::Output>>,
     ) {
         let Some(axes) = axes else { return };
-        let of_equations = equations.iter().flatten().map(|equation| (&equation.right, equation.span));
-        let of_outputs = outputs.iter().flatten().map(|output| (&output.value, output.span));
-        for (value, span) in of_equations.chain(of_outputs) {
+        for output in outputs.iter().flatten() {
             let mut found: Vec<AxisId> = Vec::new();
-            high_derivatives(value, false, &mut found);
+            collect(&output.value, &mut |node| {
+                if let Expression::Derivative(derivative) = node
+                    && let DerivativeKind::Higher { axis, .. } = &derivative.kind
+                {
+                    found.push(*axis);
+                }
+            });
             found.retain(|axis| !axes[axis.0].periodic);
             if let Some(axis) = found.first() {
                 let name = axes[axis.0].name.clone();
                 self.not_yet(
-                    span,
+                    output.span,
+                    &format!("a derivative of third or higher order along `{name}`, which has boundaries,"),
+                    "make the axis periodic, or leave the output out",
+                );
+            }
+        }
+        let Some(equations) = equations else { return };
+        for equation in equations {
+            let mut found: Vec<AxisId> = Vec::new();
+            high_derivatives(&equation.right, false, &mut found);
+            found.retain(|axis| !axes[axis.0].periodic);
+            if let Some(axis) = found.first() {
+                let name = axes[axis.0].name.clone();
+                self.not_yet(
+                    equation.span,
                     &format!("a derivative of third or higher order along `{name}`, which has boundaries,"),
                     "make the axis periodic",
                 );
@@ -229,7 +247,7 @@ impl Checker<'_> {
     pub(super) fn rates_in_outputs(
         &mut self,
         equations: &Option<Vec<Equation>>,
-        outputs: &Option<Vec<Output>>,
+        outputs: &Option<Vec<model::Output>>,
     ) {
         let Some(equations) = equations else { return };
         for output in outputs.iter().flatten() {

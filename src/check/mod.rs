@@ -3,11 +3,13 @@
 //! All faults are reported in one go; a statement with a fault is left out and the rest is checked as if it were not there. Nothing
 //! here derives weights.
 
+mod apply;
 pub mod conditions;
 mod declare;
 mod derive;
 mod equation;
 mod formula;
+mod output;
 mod place;
 mod plan;
 pub mod raw;
@@ -152,6 +154,10 @@ impl Checker<'_> {
 
     /// Sections without which there is no model. A section with a faulty statement is not missing.
     fn require_sections(&mut self) {
+        if self.file.header.is_none() && self.file.sections.is_empty() && self.file.faulty.is_empty() {
+            // Nothing could be read, and the parser has said why.
+            return;
+        }
         let needed: [(Section, &str); 6] = [
             (Section::Axes, "x: 0 m to 1 m, 41 nodes"),
             (Section::Fields, "T in K on x"),

@@ -13,8 +13,8 @@ code_table! {
     CYCLE = "E0212", "something that is defined by itself",
         "Constants, coefficients and operators may use each other in any order, but not in a circle.",
         wrong "a = 2 * b\nb = a / 2", right "a = 2\nb = a / 2";
-    CASE_TWINS = "E0213", "fields that differ only in case",
-        "Fields `u` and `U` would be mistaken for each other, in formulas and as folders of results.",
+    CASE_TWINS = "E0213", "fields or outputs that differ only in case",
+        "Fields or written outputs `u` and `U` would be mistaken for each other, in formulas and as folders of results.",
         wrong "fields\n  u on x\n  U on x", right "fields\n  u on x\n  v on x";
     WRONG_KIND = "E0214", "a name of another kind",
         "Here an axis, a field, an operator or a function is expected, and the name was declared as something else.",
@@ -31,6 +31,9 @@ code_table! {
     DIVISION_BY_ZERO = "E0218", "a division by zero",
         "What is below the line is exactly zero.",
         wrong "k = 1 / 0", right "k = 1";
+    UNUSED_ARGUMENT = "W0201", "an argument that a coefficient does not use",
+        "The arguments of a coefficient name what it depends on. One that its formula does not hold may be left over, or the formula may lack something.",
+        wrong "k(x, y) = 1 + x", right "k(x) = 1 + x";
     FORMULA_TOO_LARGE = "E0219", "a formula that grows too large",
         "Constants, coefficients and operators may build on each other, but with everything put in a formula has at most 5000 parts, at most 300 deep: each of them is worked through at every node. A chain in which every name holds the one before twice doubles its size with each line.",
         wrong "a_1(x) = a_0 * a_0\na_2(x) = a_1 * a_1   # … and so on to a_60", right "a_60(x) = exp(2^60 * log(a_0))";

@@ -58,7 +58,7 @@ quadrature_list quadrature_counts model_lines model_text description describe ar
 f b g c i k stride b_stride high forward b_forward turn from columns column sum entry entries factor term blocks
 block number width weight start result
 passes step_shift ends period arrays periodic near_cache far_cache most_steps pass_shift step_part rotate slab_count
-slab_begins wave_length wave_steps band wave plain least_shared
+slab_begin wave_length wave_steps band wave plain least_shared
 ";
 
 /// Names of an axis in program text.

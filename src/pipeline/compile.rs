@@ -63,6 +63,10 @@ pub fn check(source: &SourceFile) -> Checked {
 /// The whole way to a valid kernel. Warnings come with the result, everything comes with a failure.
 pub fn compile(source: &SourceFile, overrides: &Overrides) -> Result<(Compiled, Diagnostics), Diagnostics> {
     let (file, mut diagnostics) = syntax::parse(source);
+    if source.fault().is_some() {
+        // Where there is no text, all sections would be missing.
+        return Err(diagnostics);
+    }
     let (model, more) = check::check(&file, source);
     diagnostics.append(more);
     let Some(mut model) = model.filter(|_| !diagnostics.has_errors()) else { return Err(diagnostics) };

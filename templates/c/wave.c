@@ -35,7 +35,7 @@ static ptrdiff_t slab_count(const {{ prefix }}_solver *s) {
 }
 
 /* The first row of a slab. */
-static ptrdiff_t slab_begins(const {{ prefix }}_solver *s, ptrdiff_t slab, ptrdiff_t slabs) {
+static ptrdiff_t slab_begin(const {{ prefix }}_solver *s, ptrdiff_t slab, ptrdiff_t slabs) {
     if (slab >= slabs) {
         return s->nodes[0]{{ slab_rows }};
     }
@@ -80,7 +80,7 @@ static void band(const {{ prefix }}_solver *views, ptrdiff_t count, const double
                     continue;
                 }
                 const ptrdiff_t real = PERIODIC ? (slab + slabs) % slabs : slab;
-                step_part(&views[k % PERIOD], pass, times[k], step, times[k + 1], slab_begins(views, real, slabs), slab_begins(views, real + 1, slabs));
+                step_part(&views[k % PERIOD], pass, times[k], step, times[k + 1], slab_begin(views, real, slabs), slab_begin(views, real + 1, slabs));
             }
         }
     }

@@ -1,7 +1,8 @@
 //! The back ends agree to the last bit: every demo model, in C and in Rust, with one thread and with several, writes equal files.
 //!
-//! What makes that so: the order of operations is fixed in the kernel, no product and sum are contracted into one operation, and
-//! functions that the platforms compute differently are not left to them. The in-process executor joins through [`engines`].
+//! What makes that so: the order of operations is fixed in the kernel, and no product and sum are contracted into one operation.
+//! Elementary functions are those of each back end's own library; here they are seen to agree on the machine of the tests only.
+//! The in-process executor joins through [`engines`].
 
 use std::collections::BTreeMap;
 use std::ffi::OsString;
@@ -27,7 +28,11 @@ struct Engine {
 /// All of them; the first is what the others are compared with. The in-process executor belongs here as a third entry.
 fn engines() -> Vec<Engine> {
     vec![
-        Engine { name: "C", threads: &[1, 3], build: |compiled, source| program(compiled, source, Language::C) },
+        Engine {
+            name: "C",
+            threads: &[1, 3],
+            build: |compiled, source| program(compiled, source, Language::C),
+        },
         Engine {
             name: "Rust",
             threads: &[1, 2],
@@ -46,7 +51,8 @@ fn program(compiled: &Compiled, source: &SourceFile, language: Language) -> Run 
     let built = compiler.build(&text.files, &text.prefix).expect("compiles");
     Box::new(move |arguments| {
         let folder = std::env::temp_dir();
-        let ended = run::captured(&built.program, arguments, &folder).map_err(|fault| format!("{fault:?}"))?;
+        let ended =
+            run::captured(&built.program, arguments, &folder).map_err(|fault| format!("{fault:?}"))?;
         if ended.ending == Ending::Status(0) { Ok(()) } else { Err(format!("{ended:?}")) }
     })
 }
@@ -100,8 +106,13 @@ fn compare(path: &Path) -> Vec<String> {
     let source = pipeline::read(path).expect("readable");
     let (compiled, _) = pipeline::compile(&source, &pipeline::Overrides::default())
         .unwrap_or_else(|faults| panic!("{}: {faults:?}", path.display()));
-    let built: Vec<(Engine, Run)> =
-        engines().into_iter().map(|engine| { let run = (engine.build)(&compiled, &source); (engine, run) }).collect();
+    let built: Vec<(Engine, Run)> = engines()
+        .into_iter()
+        .map(|engine| {
+            let run = (engine.build)(&compiled, &source);
+            (engine, run)
+        })
+        .collect();
     let scratch = tempfile::tempdir().expect("a folder");
     let mut wrong = Vec::new();
     for (which, nodes) in grids(&compiled).into_iter().enumerate() {
@@ -110,7 +121,8 @@ fn compare(path: &Path) -> Vec<String> {
             for threads in engine.threads {
                 let name = format!("{} with {threads} threads, nodes {nodes:?}", engine.name);
                 let out = scratch.path().join(format!("{which}_{}_{threads}", engine.name));
-                let mut arguments: Vec<OsString> = ["--steps", "7", "--quiet", "--threads"].map(OsString::from).to_vec();
+                let mut arguments: Vec<OsString> =
+                    ["--steps", "7", "--quiet", "--threads"].map(OsString::from).to_vec();
                 arguments.extend([threads.to_string().into(), "--out".into(), out.clone().into()]);
                 for (axis, count) in compiled.model.axes.iter().zip(&nodes) {
                     arguments.extend(["--nodes".into(), format!("{}={count}", axis.name).into()]);
@@ -120,20 +132,32 @@ fn compare(path: &Path) -> Vec<String> {
                     continue;
                 }
                 let found = data(&out);
-                assert!(found.keys().any(|name| name.ends_with(".npy")), "{}: {name}: no data", path.display());
+                assert!(
+                    found.keys().any(|name| name.ends_with(".npy")),
+                    "{}: {name}: no data",
+                    path.display()
+                );
                 let Some((first, files)) = &expected else {
                     expected = Some((name, found));
                     continue;
                 };
                 let names = |files: &BTreeMap<String, Vec<u8>>| files.keys().cloned().collect::<Vec<_>>();
                 if names(files) != names(&found) {
-                    wrong.push(format!("{}: {name} writes {:?}, {first} {:?}", path.display(), names(&found), names(files)));
+                    wrong.push(format!(
+                        "{}: {name} writes {:?}, {first} {:?}",
+                        path.display(),
+                        names(&found),
+                        names(files)
+                    ));
                     continue;
                 }
                 for (file, bytes) in &found {
                     if files[file] != *bytes {
                         let difference = first_difference(&files[file], bytes);
-                        wrong.push(format!("{}: {file} of {name} differs from {first}: {difference}", path.display()));
+                        wrong.push(format!(
+                            "{}: {file} of {name} differs from {first}: {difference}",
+                            path.display()
+                        ));
                     }
                 }
             }

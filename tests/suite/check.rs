@@ -309,8 +309,8 @@ fn formulas_that_double_are_refused() {
         format!("a_{n}(x) = sin(a_{before}) + cos(a_{before})", before = n - 1)
     });
     assert_eq!(Written::wall().with("coefficients", coefficients).codes(), ["E0219"]);
-    let operators = doubling(60, "f_0(u) = ∂²u/∂x²", |n| {
-        format!("f_{n}(u) = f_{before}(sin(u)) + f_{before}(cos(u))", before = n - 1)
+    let operators = doubling(60, "f_0(v) = ∂²v/∂x²", |n| {
+        format!("f_{n}(v) = f_{before}(sin(v)) + f_{before}(cos(v))", before = n - 1)
     });
     let codes = Written::square().with("operators", operators).codes();
     assert!(!codes.is_empty() && codes.iter().all(|code| code == "E0219"), "{codes:?}");

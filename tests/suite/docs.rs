@@ -28,9 +28,13 @@ fn the_model_in_the_readme_is_the_demo_model() {
 #[test]
 fn the_gate_runs_the_commands_of_the_readme() {
     let readme = read("README.md");
-    let commands: Vec<&str> = blocks(&readme, "sh").into_iter().flat_map(str::lines).filter(|line| !line.is_empty()).collect();
+    let commands: Vec<&str> =
+        blocks(&readme, "sh").into_iter().flat_map(str::lines).filter(|line| !line.is_empty()).collect();
     let gate = read(".ci/run").replace(" --locked", "");
-    let run = commands.iter().find(|line| line.contains(" run demo-models/vault_wall.rim")).expect("a command that runs a demo");
+    let run = commands
+        .iter()
+        .find(|line| line.contains(" run demo-models/vault_wall.rim"))
+        .expect("a command that runs a demo");
     assert!(gate.contains(run.split(" --out").next().expect("a command")), "the gate does not run `{run}`");
     let test = commands.iter().find(|line| line.starts_with("cargo test")).expect("a command that tests");
     assert!(gate.lines().any(|line| line.trim() == *test), "the gate does not run `{test}`");

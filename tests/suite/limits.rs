@@ -10,7 +10,9 @@ use rimstone::analysis::closed::{
     dense, diffusion, examine, injected_advection, interior_symbol, varying_diffusion, wave,
 };
 use rimstone::analysis::spectrum::{self, Rows, eigenvalues, energy_growth};
-use rimstone::analysis::stability::{proved_extents as extents, one_step_limit, second_order_growth, second_order_limit};
+use rimstone::analysis::stability::{
+    one_step_limit, proved_extents as extents, second_order_growth, second_order_limit,
+};
 use rimstone::analysis::symbol;
 use rimstone::discretize::{closure, interior};
 use rimstone::exact::{Rational, binomial, round};

@@ -34,9 +34,46 @@ enum Slip {
 }
 
 const WORDS: [&str; 40] = [
-    "0", "-1", "1e300", "1e-300", "1e400", "x", "y", "t", "T", "u", "k", "π", "∂T/∂x", "∂u/∂t", "∂²u/∂x²", "Δ", "∇·(∇T)", "sin(x)",
-    "cases(x < 0: 1, otherwise: 0)", "noise(seed 1)", "δ(x)", "(", ")", "^64", "^(1/2)", "/ 0", "* 0", "2 nodes", "1 cells",
-    "periodic", "free", "between 0 and 1", "low", "start", "order 16", "step 1 s", "leapfrog", "euler", "every", "1e9 nodes",
+    "0",
+    "-1",
+    "1e300",
+    "1e-300",
+    "1e400",
+    "x",
+    "y",
+    "t",
+    "T",
+    "u",
+    "k",
+    "π",
+    "∂T/∂x",
+    "∂u/∂t",
+    "∂²u/∂x²",
+    "Δ",
+    "∇·(∇T)",
+    "sin(x)",
+    "cases(x < 0: 1, otherwise: 0)",
+    "noise(seed 1)",
+    "δ(x)",
+    "(",
+    ")",
+    "^64",
+    "^(1/2)",
+    "/ 0",
+    "* 0",
+    "2 nodes",
+    "1 cells",
+    "periodic",
+    "free",
+    "between 0 and 1",
+    "low",
+    "start",
+    "order 16",
+    "step 1 s",
+    "leapfrog",
+    "euler",
+    "every",
+    "1e9 nodes",
 ];
 
 fn slip() -> impl Strategy<Value = Slip> {
@@ -78,8 +115,7 @@ fn damaged(bytes: Vec<u8>, slip: &Slip) -> Vec<u8> {
     let Ok(text) = String::from_utf8(bytes.clone()) else { return bytes };
     let mut lines: Vec<String> = text.split_inclusive('\n').map(str::to_owned).collect();
     let mut words = pieces(&text);
-    let places: Vec<usize> =
-        (0..words.len()).filter(|index| !words[*index].trim().is_empty()).collect();
+    let places: Vec<usize> = (0..words.len()).filter(|index| !words[*index].trim().is_empty()).collect();
     if places.is_empty() {
         return bytes;
     }
@@ -115,7 +151,7 @@ fn damaged(bytes: Vec<u8>, slip: &Slip) -> Vec<u8> {
 }
 
 proptest! {
-    #![proptest_config(ProptestConfig { cases: 400, failure_persistence: None, ..ProptestConfig::default() })]
+    #![proptest_config(ProptestConfig { cases: 1500, failure_persistence: None, ..ProptestConfig::default() })]
 
     #[test]
     fn no_slip_makes_the_compiler_stumble(which in any::<u8>(), slips in proptest::collection::vec(slip(), 1..4)) {
